@@ -1,0 +1,131 @@
+//! The hot medium: a temperature field, a transport model, path integrals, and effects on branching rates.
+
+/// Everything a medium is made of.
+#[derive(Clone, Debug, PartialEq)]
+pub struct MediumSettings {
+    /// The temperature field.
+    pub field: FieldSettings,
+    /// Where jets are born.
+    pub origin: OriginSettings,
+    /// The transport coefficient.
+    pub transport: TransportSettings,
+    /// The effects, in config order; empty is vacuum to the last bit.
+    pub effects: Vec<EffectSettings>,
+    /// Induced emissions obey z(1-z) t <= min(z, 1-z)^2 E^2.
+    pub limit_to_small_angles: bool,
+    /// A parton below this lab energy in GeV sees no medium.
+    pub min_energy_gev: f64,
+}
+
+/// The temperature field with what all kinds share.
+#[derive(Clone, Debug, PartialEq)]
+pub struct FieldSettings {
+    /// Which field.
+    pub kind: FieldKind,
+    /// Temperature in GeV below which the medium has no effect.
+    pub end_temperature_gev: f64,
+}
+
+/// Which temperature field.
+#[derive(Clone, Debug, PartialEq)]
+pub enum FieldKind {
+    /// Uniform everywhere for lab time 0 to `length_fm`.
+    Brick {
+        /// Temperature in GeV.
+        temperature_gev: f64,
+        /// Duration in fm/c, the path length of a parton born at lab time 0.
+        length_fm: f64,
+    },
+    /// Boost-invariant longitudinal expansion.
+    Longitudinal {
+        /// Temperature in GeV at the start.
+        temperature_gev: f64,
+        /// Proper time of the start in fm/c.
+        start_fm: f64,
+    },
+    /// A field file.
+    Grid {
+        /// The file, its path already resolved against the config's folder.
+        file: std::path::PathBuf,
+    },
+}
+
+/// Where jets are born in the transverse plane.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum OriginSettings {
+    /// Always at the same place.
+    Fixed {
+        /// x in fm.
+        x_fm: f64,
+        /// y in fm.
+        y_fm: f64,
+    },
+}
+
+/// The transport coefficient qhat.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct TransportSettings {
+    /// The model and its number.
+    pub kind: TransportKind,
+    /// Whose qhat the number is.
+    pub stated_for: ColourCharge,
+    /// Multiply by p.u/E where the field has flow.
+    pub flow: bool,
+}
+
+/// Models of qhat.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum TransportKind {
+    /// qhat = coefficient * T^3 in natural units.
+    Cubic {
+        /// Without dimension.
+        coefficient: f64,
+    },
+    /// The same qhat wherever there is a medium.
+    Constant {
+        /// GeV^2 per fm.
+        qhat_gev2_per_fm: f64,
+    },
+}
+
+/// A quark or a gluon, as bearer of colour charge.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum ColourCharge {
+    /// C_F.
+    Quark,
+    /// C_A.
+    Gluon,
+}
+
+/// One effect of the medium with its numbers.
+#[derive(Clone, Debug, PartialEq)]
+pub enum EffectSettings {
+    /// Medium-induced rate of the collinear (higher-twist) expansion.
+    CollinearExpansion {
+        /// The phase factor.
+        phase: PhaseSettings,
+    },
+}
+
+/// Phase factors of the collinear expansion.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum PhaseSettings {
+    /// K_a = 2 - 2 cos phi.
+    Interference,
+    /// K_b = K_a - 2 phi sin phi + 2 phi^2 cos phi, cut at phi = `window`.
+    Rescattering {
+        /// In units of the formation time, at most 1.2417.
+        window: f64,
+    },
+    /// K_c = K_a - 2 phi sin phi.
+    SoftGradient,
+}
+
+impl EffectSettings {
+    /// The name of the effect's kind in a config.
+    pub fn name(&self) -> &'static str {
+        match self {
+            EffectSettings::CollinearExpansion { .. } => "collinear-expansion",
+        }
+    }
+}

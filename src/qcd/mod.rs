@@ -1,0 +1,19 @@
+//! What quantum chromodynamics gives the shower: species and colour factors, the running coupling, splitting kernels.
+
+pub mod coupling;
+pub mod kernels;
+pub mod species;
+
+pub use coupling::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument};
+pub use species::Species;
+
+/// Casimir factor of a quark.
+pub const C_F: f64 = 4.0 / 3.0;
+/// Casimir factor of a gluon.
+pub const C_A: f64 = 3.0;
+/// Normalisation of the fundamental representation.
+pub const T_R: f64 = 0.5;
+/// hbar c in GeV fm (CODATA 2018).
+pub const HBAR_C_GEV_FM: f64 = 0.197_326_980_4;
+/// Mass of the Z boson in GeV, the reference scale of alpha_s (Review of Particle Physics).
+pub const Z_MASS_GEV: f64 = 91.1876;

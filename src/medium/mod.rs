@@ -1,5 +1,7 @@
 //! The hot medium: a temperature field, a transport model, path integrals, and effects on branching rates.
 
+pub mod field;
+
 /// Everything a medium is made of.
 #[derive(Clone, Debug, PartialEq)]
 pub struct MediumSettings {

@@ -1,0 +1,5 @@
+//! Temperature fields.
+
+mod data;
+
+pub use data::FieldData;

@@ -2,11 +2,13 @@
 
 use std::ffi::{CString, c_char, c_int, c_uint, c_void};
 
+use hdf5::H5Type;
 use hdf5::sync::sync;
 use hdf5_sys::h5::{herr_t, hsize_t};
-use hdf5_sys::h5d::H5Dwrite_chunk;
+use hdf5_sys::h5d::{H5Dread, H5Dwrite_chunk};
 use hdf5_sys::h5i::hid_t;
 use hdf5_sys::h5p::H5P_DEFAULT;
+use hdf5_sys::h5s::{H5S_seloper_t, H5Sselect_hyperslab};
 
 unsafe extern "C" {
     fn H5DSset_scale(dataset: hid_t, name: *const c_char) -> herr_t;
@@ -99,6 +101,59 @@ pub(super) fn attached_scales(
         .into_iter()
         .map(|id| unsafe { hdf5::from_id(id) })
         .collect()
+}
+
+/// Reads rows `start..start + count` (along the first axis, all of the others) into `values`, whose content is lost.
+///
+/// The caller has checked that the rows exist, that their number is reasonable, and that the elements are numbers.
+pub(super) fn read_rows<T: H5Type + Copy>(
+    dataset: &hdf5::Dataset,
+    start: usize,
+    count: usize,
+    values: &mut Vec<T>,
+) -> hdf5::Result<()> {
+    values.clear();
+    let mut shape = dataset.shape();
+    let mut offset = vec![0; shape.len()];
+    match (shape.first_mut(), offset.first_mut()) {
+        (Some(length), Some(first)) if start + count <= *length => {
+            *length = count;
+            *first = start as hsize_t;
+        }
+        _ => return Err("rows beyond the end of a dataset".into()),
+    }
+    let elements: usize = shape.iter().product();
+    if elements == 0 {
+        return Ok(());
+    }
+    values.reserve_exact(elements);
+    let file_space = dataset.space()?;
+    let memory_space = hdf5::Dataspace::try_new(&shape[..])?;
+    let memory_type = hdf5::Datatype::from_type::<T>()?;
+    let counts: Vec<hsize_t> = shape.iter().map(|length| *length as hsize_t).collect();
+    // SAFETY: all handles are open, the selection has `elements` elements as has the memory space, and that many of
+    // the memory type fit into the reserved room.
+    sync(|| unsafe {
+        hdf5::h5check(H5Sselect_hyperslab(
+            file_space.id(),
+            H5S_seloper_t::H5S_SELECT_SET,
+            offset.as_ptr(),
+            std::ptr::null(),
+            counts.as_ptr(),
+            std::ptr::null(),
+        ))?;
+        hdf5::h5check(H5Dread(
+            dataset.id(),
+            memory_type.id(),
+            memory_space.id(),
+            file_space.id(),
+            H5P_DEFAULT,
+            values.as_mut_ptr().cast(),
+        ))
+    })?;
+    // SAFETY: HDF5 has written every selected element.
+    unsafe { values.set_len(elements) };
+    Ok(())
 }
 
 /// What HDF5 says, reduced to the system's own message where there is one.

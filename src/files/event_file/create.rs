@@ -5,12 +5,12 @@ use std::str::FromStr;
 use hdf5::types::{FixedAscii, FixedUnicode};
 use hdf5::{Dataset, File, Group, H5Type};
 
-use super::attributes::{put, put_text, put_texts};
 use super::layout::{
     Column, Element, FORMAT_NAME, FORMAT_VERSION, FULL_MANTISSA_BITS, PLACE_COMPONENTS,
     PLACE_SCALE, Table,
 };
 use super::provenance::{FieldEntry, Provenance, history_name};
+use crate::files::attributes::{put, put_text, put_texts};
 use crate::files::hdf5_calls::{attach_scale, set_scale};
 
 /// Attributes up to this many are kept in the object's header, where an update overwrites in place.

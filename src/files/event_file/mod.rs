@@ -3,7 +3,6 @@
 //! Rows are gathered from blocks in memory and packed by any number of workers ([`RowGrouper`], [`Packer`]); one
 //! thread owns the file and appends whole chunks ([`EventFileWriter`]).
 
-mod attributes;
 mod checksum;
 mod create;
 mod error;

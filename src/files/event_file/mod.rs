@@ -11,6 +11,9 @@ mod lock;
 mod pack;
 mod planes;
 mod provenance;
+mod read_attributes;
+mod read_columns;
+mod reader;
 mod row_groups;
 mod writer;
 
@@ -21,5 +24,6 @@ pub use layout::{
 };
 pub use pack::{PackedGroup, Packer};
 pub use provenance::{CrossSection, FieldEntry, Kinematics, Provenance, WeightSums};
+pub use reader::{Blocks, EventFile};
 pub use row_groups::{RowGroup, RowGrouper};
 pub use writer::{EventFileWriter, WriteOptions};

@@ -61,7 +61,12 @@ pub struct Key {
 impl Key {
     /// The key of an event: it depends on the seed and the event's number in the whole sample alone.
     pub const fn event(seed: u64, id: u64) -> Key {
-        Key { high: 0, low: GOLDEN_GAMMA }.absorb(seed).absorb(id)
+        Key {
+            high: 0,
+            low: GOLDEN_GAMMA,
+        }
+        .absorb(seed)
+        .absorb(id)
     }
 
     /// The key of a branch's daughter (0 or 1), or of a hard parton from the event's key.
@@ -80,8 +85,14 @@ impl Key {
 
     #[inline]
     const fn absorb(self, word: u64) -> Key {
-        let high = finalise(self.high.wrapping_add(word.wrapping_add(1).wrapping_mul(GOLDEN_GAMMA)));
-        Key { high, low: (self.low ^ high).wrapping_mul(FOLD_MULTIPLIER) }
+        let high = finalise(
+            self.high
+                .wrapping_add(word.wrapping_add(1).wrapping_mul(GOLDEN_GAMMA)),
+        );
+        Key {
+            high,
+            low: (self.low ^ high).wrapping_mul(FOLD_MULTIPLIER),
+        }
     }
 }
 
@@ -106,7 +117,10 @@ mod tests {
             total += 1.0;
         }
         let expected = total / counts.len() as f64;
-        let chi_square: f64 = counts.iter().map(|&n| (n as f64 - expected).powi(2) / expected).sum();
+        let chi_square: f64 = counts
+            .iter()
+            .map(|&n| (n as f64 - expected).powi(2) / expected)
+            .sum();
         let freedom = (counts.len() - 1) as f64;
         (chi_square - freedom) / (2.0 * freedom).sqrt()
     }
@@ -129,17 +143,26 @@ mod tests {
     #[test]
     fn neighbouring_seeds_daughters_and_purposes_are_independent() {
         let seeds = (0..PAIRS).map(|id| {
-            (first(Key::event(1, id), Purpose::VACUUM), first(Key::event(2, id), Purpose::VACUUM))
+            (
+                first(Key::event(1, id), Purpose::VACUUM),
+                first(Key::event(2, id), Purpose::VACUUM),
+            )
         });
         assert!(pull(seeds).abs() < LARGEST_PULL);
         let daughters = (0..PAIRS).map(|id| {
             let parent = Key::event(1, id);
-            (first(parent.daughter(0), Purpose::VACUUM), first(parent.daughter(1), Purpose::VACUUM))
+            (
+                first(parent.daughter(0), Purpose::VACUUM),
+                first(parent.daughter(1), Purpose::VACUUM),
+            )
         });
         assert!(pull(daughters).abs() < LARGEST_PULL);
         let generations = (0..PAIRS).map(|id| {
             let parent = Key::event(1, id);
-            (first(parent, Purpose::VACUUM), first(parent.daughter(0), Purpose::VACUUM))
+            (
+                first(parent, Purpose::VACUUM),
+                first(parent.daughter(0), Purpose::VACUUM),
+            )
         });
         assert!(pull(generations).abs() < LARGEST_PULL);
         let purposes = (0..PAIRS).map(|id| {
@@ -178,9 +201,14 @@ mod tests {
         let mut keys = vec![Key::event(3, 4)];
         for level in 0..16 {
             let generation = keys[(1 << level) - 1..].to_vec();
-            keys.extend(generation.iter().flat_map(|key| [key.daughter(0), key.daughter(1)]));
+            keys.extend(
+                generation
+                    .iter()
+                    .flat_map(|key| [key.daughter(0), key.daughter(1)]),
+            );
         }
-        let unique: std::collections::HashSet<_> = keys.iter().map(|key| (key.high, key.low)).collect();
+        let unique: std::collections::HashSet<_> =
+            keys.iter().map(|key| (key.high, key.low)).collect();
         assert_eq!(unique.len(), keys.len());
     }
 }

@@ -158,7 +158,11 @@ impl Medium {
             field,
             end_temperature_gev: settings.field.end_temperature_gev,
             transport: Transport::new(&settings.transport),
-            effects: effect_names(&settings.effects).into_iter().zip(&settings.effects).map(build).collect(),
+            effects: effect_names(&settings.effects)
+                .into_iter()
+                .zip(&settings.effects)
+                .map(build)
+                .collect(),
             limit_to_small_angles: settings.limit_to_small_angles,
             min_energy_gev: settings.min_energy_gev,
         }
@@ -174,6 +178,11 @@ impl Medium {
         self.min_energy_gev
     }
 
+    /// Whether induced emissions are limited to small angles.
+    pub fn limits_angles(&self) -> bool {
+        self.limit_to_small_angles
+    }
+
     /// Whether an induced emission is inside the small-angle limit kappa < omega:
     /// z(1-z) t <= min(z, 1-z)^2 E^2 (always true when the limit is off).
     #[inline]
@@ -187,8 +196,15 @@ impl Medium {
 pub fn effect_names(effects: &[EffectSettings]) -> Vec<String> {
     let name = |place: usize| {
         let kind = effects[place].name();
-        let earlier = effects[..place].iter().filter(|other| other.name() == kind).count();
-        if earlier == 0 { kind.to_string() } else { format!("{kind}-{}", earlier + 1) }
+        let earlier = effects[..place]
+            .iter()
+            .filter(|other| other.name() == kind)
+            .count();
+        if earlier == 0 {
+            kind.to_string()
+        } else {
+            format!("{kind}-{}", earlier + 1)
+        }
     };
     (0..effects.len()).map(name).collect()
 }
@@ -196,6 +212,8 @@ pub fn effect_names(effects: &[EffectSettings]) -> Vec<String> {
 /// The registry of effects.
 fn build((name, settings): (String, &EffectSettings)) -> Box<dyn RateEffect> {
     match settings {
-        EffectSettings::CollinearExpansion { phase } => Box::new(CollinearExpansion::new(name, *phase)),
+        EffectSettings::CollinearExpansion { phase } => {
+            Box::new(CollinearExpansion::new(name, *phase))
+        }
     }
 }

@@ -114,7 +114,10 @@ impl Path {
             mean_l_sin += mean * l * sin;
             slope_sin += slope * sin;
             slope_l_cos += slope * l * cos;
-            (sin, cos) = (sin * cos_step + cos * sin_step, cos * cos_step - sin * sin_step);
+            (sin, cos) = (
+                sin * cos_step + cos * sin_step,
+                cos * cos_step - sin * sin_step,
+            );
             l += self.step_fm;
         }
         let x = k_per_fm * half;
@@ -123,10 +126,14 @@ impl Path {
         let cosine = width * j0 * mean_cos - lever * j1 * slope_sin;
         // d j0/dx = -j1, d j1/dx = j0 - 2 j1/x.
         let cosine_slope = k_per_fm
-            * (-width * j0 * mean_l_sin - width * half * j1 * mean_cos
+            * (-width * j0 * mean_l_sin
+                - width * half * j1 * mean_cos
                 - lever * j1 * slope_l_cos
                 - lever * half * (j0 - 2.0 * j1_over_x) * slope_sin);
-        Transform { cosine, cosine_slope }
+        Transform {
+            cosine,
+            cosine_slope,
+        }
     }
 
     /// sum over n of coefficients[n-1] k^(2n) int_0^w l^(2n) qhat dl, w = `window_fm`: for kernels that are even
@@ -177,19 +184,32 @@ impl Path {
         }
         // An induced branching needs a positive rate, so some piece has a positive mass; a path without any has but
         // its end to offer.
-        chosen.unwrap_or(Piece { centre: end_fm, width: 0.0, mean: 1.0, slope: 0.0 })
+        chosen.unwrap_or(Piece {
+            centre: end_fm,
+            width: 0.0,
+            mean: 1.0,
+            slope: 0.0,
+        })
     }
 
     /// The cells, the last one cut at `end_fm`.
     fn pieces(&self, end_fm: f64) -> impl Iterator<Item = Piece> {
         let half = 0.5 * self.step_fm;
-        self.cells.iter().enumerate().map_while(move |(place, &Cell { mean, slope })| {
-            let centre = self.centre(place);
-            let low = centre - half;
-            let width = (end_fm - low).min(self.step_fm);
-            let shift = low + 0.5 * width - centre;
-            (width > 0.0).then_some(Piece { centre: centre + shift, width, mean: mean + slope * shift, slope })
-        })
+        self.cells
+            .iter()
+            .enumerate()
+            .map_while(move |(place, &Cell { mean, slope })| {
+                let centre = self.centre(place);
+                let low = centre - half;
+                let width = (end_fm - low).min(self.step_fm);
+                let shift = low + 0.5 * width - centre;
+                (width > 0.0).then_some(Piece {
+                    centre: centre + shift,
+                    width,
+                    mean: mean + slope * shift,
+                    slope,
+                })
+            })
     }
 }
 
@@ -209,7 +229,8 @@ impl Piece {
 
     fn second_moment(&self) -> f64 {
         let s2 = self.width * self.width / 12.0;
-        (self.mean * (self.centre * self.centre + s2) + self.slope * 2.0 * self.centre * s2) * self.width
+        (self.mean * (self.centre * self.centre + s2) + self.slope * 2.0 * self.centre * s2)
+            * self.width
     }
 
     /// A place with the density qhat times `weight`, which lies in [0, 1].
@@ -263,7 +284,10 @@ mod tests {
         path.restart(0.4, 0.25);
         for place in 0..12 {
             let mean = 1.0 + (place as f64 * 0.7).sin().abs();
-            path.push(Cell { mean, slope: 0.8 * (place as f64).cos() });
+            path.push(Cell {
+                mean,
+                slope: 0.8 * (place as f64).cos(),
+            });
         }
         path.finish();
         path
@@ -276,7 +300,13 @@ mod tests {
         for (place, cell) in path.cells.iter().enumerate() {
             for step in 0..=steps {
                 let s = (step as f64 / steps as f64 - 0.5) * path.step_fm;
-                let rule = if step == 0 || step == steps { 1.0 } else if step % 2 == 1 { 4.0 } else { 2.0 };
+                let rule = if step == 0 || step == steps {
+                    1.0
+                } else if step % 2 == 1 {
+                    4.0
+                } else {
+                    2.0
+                };
                 sum += rule * (cell.mean + cell.slope * s) * weight(path.centre(place) + s);
             }
         }
@@ -293,14 +323,25 @@ mod tests {
             (path.fourth_moment_gev2_fm4(), 4),
         ];
         for (found, power) in moments {
-            assert!((found / integral(&path, |l| l.powi(power)) - 1.0).abs() < 1e-9, "moment {power}");
+            assert!(
+                (found / integral(&path, |l| l.powi(power)) - 1.0).abs() < 1e-9,
+                "moment {power}"
+            );
         }
         for k in [1e-4, 0.01, 0.3, 1.0, 7.0, 40.0_f64] {
             let found = path.transform(k);
             let cosine = integral(&path, |l| (k * l).cos());
             let slope = integral(&path, |l| -k * l * (k * l).sin());
-            assert!((found.cosine - cosine).abs() < 1e-7, "k = {k}: {} against {cosine}", found.cosine);
-            assert!((found.cosine_slope - slope).abs() < 1e-6 * (1.0 + k), "k = {k}: {} against {slope}", found.cosine_slope);
+            assert!(
+                (found.cosine - cosine).abs() < 1e-7,
+                "k = {k}: {} against {cosine}",
+                found.cosine
+            );
+            assert!(
+                (found.cosine_slope - slope).abs() < 1e-6 * (1.0 + k),
+                "k = {k}: {} against {slope}",
+                found.cosine_slope
+            );
         }
     }
 
@@ -311,10 +352,17 @@ mod tests {
         for window in [0.2, 0.9, 1.37, 5.0] {
             let kernel = |l: f64| {
                 let phi2 = (k * l) * (k * l);
-                if l > window { 0.0 } else { phi2 * (1.0 + phi2 * (-0.75 + phi2 * 0.1)) }
+                if l > window {
+                    0.0
+                } else {
+                    phi2 * (1.0 + phi2 * (-0.75 + phi2 * 0.1))
+                }
             };
             let found = path.power_series(k, window, &coefficients);
-            assert!((found - integral(&path, kernel)).abs() < 3e-3 * (1.0 + found.abs()), "{window}: {found}");
+            assert!(
+                (found - integral(&path, kernel)).abs() < 3e-3 * (1.0 + found.abs()),
+                "{window}: {found}"
+            );
         }
     }
 
@@ -326,15 +374,25 @@ mod tests {
         for power in [0, 2] {
             let mut stream = Key::event(9, power).stream(Purpose::INDUCED_VERTEX);
             let mut draws: Vec<f64> = (0..DRAWS)
-                .map(|_| if power == 0 { path.draw_by_qhat(2.9, &mut stream) } else { path.draw_by_qhat_l2(2.9, &mut stream) })
+                .map(|_| {
+                    if power == 0 {
+                        path.draw_by_qhat(2.9, &mut stream)
+                    } else {
+                        path.draw_by_qhat_l2(2.9, &mut stream)
+                    }
+                })
                 .collect();
             draws.sort_by(f64::total_cmp);
             let total = integral(&path, |l| if l < 2.9 { l.powi(power as i32) } else { 0.0 });
             for quantile in [0.05, 0.2, 0.4, 0.6, 0.8, 0.95] {
                 let l = draws[(quantile * DRAWS as f64) as usize];
-                let below = integral(&path, |x| if x < l { x.powi(power as i32) } else { 0.0 }) / total;
+                let below =
+                    integral(&path, |x| if x < l { x.powi(power as i32) } else { 0.0 }) / total;
                 // Simpson's rule across the step at l is off by a part of a sub-cell.
-                assert!((below - quantile).abs() < 0.0085 + 5e-4, "power {power}: {below} against {quantile}");
+                assert!(
+                    (below - quantile).abs() < 0.0085 + 5e-4,
+                    "power {power}: {below} against {quantile}"
+                );
             }
         }
     }

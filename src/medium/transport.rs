@@ -31,10 +31,17 @@ impl Transport {
             ColourCharge::Quark => C_A / C_F,
         };
         let kind = match settings.kind {
-            TransportKind::Cubic { coefficient } => Gluon::Cubic(to_gluon * coefficient / HBAR_C_GEV_FM),
-            TransportKind::Constant { qhat_gev2_per_fm } => Gluon::Constant(to_gluon * qhat_gev2_per_fm),
+            TransportKind::Cubic { coefficient } => {
+                Gluon::Cubic(to_gluon * coefficient / HBAR_C_GEV_FM)
+            }
+            TransportKind::Constant { qhat_gev2_per_fm } => {
+                Gluon::Constant(to_gluon * qhat_gev2_per_fm)
+            }
         };
-        Transport { kind, flow: settings.flow }
+        Transport {
+            kind,
+            flow: settings.flow,
+        }
     }
 
     /// qhat of a gluon at a temperature, GeV^2/fm.

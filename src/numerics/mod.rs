@@ -1,3 +1,4 @@
 //! Small numerical tools that physics modules share.
 
+pub mod elementary;
 pub mod vectors;

@@ -9,7 +9,11 @@ pub fn dot(a: [f64; 3], b: [f64; 3]) -> f64 {
 /// The vector product of two three-vectors.
 #[inline]
 pub fn cross(a: [f64; 3], b: [f64; 3]) -> [f64; 3] {
-    [a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]]
+    [
+        a[1] * b[2] - a[2] * b[1],
+        a[2] * b[0] - a[0] * b[2],
+        a[0] * b[1] - a[1] * b[0],
+    ]
 }
 
 /// The unit vector along `a`, which must not vanish.

@@ -11,6 +11,7 @@ use std::f64::consts::PI;
 use thiserror::Error;
 
 use super::Z_MASS_GEV;
+use crate::numerics::elementary::{exp, ln};
 
 /// Settings of the coupling.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -132,7 +133,11 @@ impl Coupling {
     pub fn new(settings: &CouplingSettings) -> Result<Coupling, CouplingError> {
         let law = match settings.law {
             CouplingLaw::Fixed { alpha_s } => Law::Fixed(alpha_s),
-            CouplingLaw::Running { loops, alpha_s_mz, freeze_gev } => {
+            CouplingLaw::Running {
+                loops,
+                alpha_s_mz,
+                freeze_gev,
+            } => {
                 let running = Running::new(settings.quark_masses_gev, alpha_s_mz, loops);
                 running.check(freeze_gev)?;
                 match loops {
@@ -141,7 +146,10 @@ impl Coupling {
                 }
             }
         };
-        Ok(Coupling { law, argument: settings.argument })
+        Ok(Coupling {
+            law,
+            argument: settings.argument,
+        })
     }
 
     /// alpha_s at mu^2 in GeV^2 (positive). It never grows with mu^2.
@@ -168,16 +176,18 @@ impl OneLoop {
     #[inline]
     fn alpha_s(&self, mu2_gev2: f64) -> f64 {
         let mu2 = mu2_gev2.max(self.freeze_gev2);
-        let heavy = (mu2 >= self.thresholds_gev2[0]) as usize + (mu2 >= self.thresholds_gev2[1]) as usize;
-        1.0 / (self.intercepts[heavy] + self.slopes[heavy] * libm::log(mu2))
+        let heavy =
+            (mu2 >= self.thresholds_gev2[0]) as usize + (mu2 >= self.thresholds_gev2[1]) as usize;
+        1.0 / (self.intercepts[heavy] + self.slopes[heavy] * ln(mu2))
     }
 }
 
 impl Table {
     /// Cubic Hermite interpolation of 1/alpha with exact slopes.
     fn alpha_s(&self, mu2_gev2: f64) -> f64 {
-        let ln_mu2 = libm::log(mu2_gev2.max(self.freeze_gev2));
-        let heavy = (ln_mu2 >= self.thresholds[0]) as usize + (ln_mu2 >= self.thresholds[1]) as usize;
+        let ln_mu2 = ln(mu2_gev2.max(self.freeze_gev2));
+        let heavy =
+            (ln_mu2 >= self.thresholds[0]) as usize + (ln_mu2 >= self.thresholds[1]) as usize;
         let nodes = &self.nodes[heavy];
         let place = (ln_mu2 - self.start) / TABLE_STEP;
         let cell = (place as usize).min(nodes.len() - 2);
@@ -185,7 +195,10 @@ impl Table {
         let [left, left_slope] = nodes[cell];
         let [right, right_slope] = nodes[cell + 1];
         let rise = right - left;
-        let (bend_left, bend_right) = (left_slope * TABLE_STEP - rise, rise - right_slope * TABLE_STEP);
+        let (bend_left, bend_right) = (
+            left_slope * TABLE_STEP - rise,
+            rise - right_slope * TABLE_STEP,
+        );
         1.0 / (left + u * rise + u * (1.0 - u) * ((1.0 - u) * bend_left + u * bend_right))
     }
 }
@@ -200,9 +213,13 @@ struct Running {
 
 impl Running {
     fn new(masses_gev: [f64; 2], alpha_s_mz: f64, loops: Loops) -> Running {
-        let thresholds = masses_gev.map(|mass| libm::log(mass * mass));
-        let at_z = [libm::log(Z_MASS_GEV * Z_MASS_GEV), 1.0 / alpha_s_mz];
-        let mut running = Running { loops, references: [at_z; 3], thresholds };
+        let thresholds = masses_gev.map(|mass| ln(mass * mass));
+        let at_z = [ln(Z_MASS_GEV * Z_MASS_GEV), 1.0 / alpha_s_mz];
+        let mut running = Running {
+            loops,
+            references: [at_z; 3],
+            thresholds,
+        };
         for place in [1, 0] {
             let threshold = thresholds[place];
             running.references[place] = [threshold, running.inverse_within(place + 1, threshold)];
@@ -211,7 +228,10 @@ impl Running {
     }
 
     fn segment(&self, ln_mu2: f64) -> usize {
-        self.thresholds.iter().filter(|threshold| ln_mu2 >= **threshold).count()
+        self.thresholds
+            .iter()
+            .filter(|threshold| ln_mu2 >= **threshold)
+            .count()
     }
 
     fn inverse(&self, ln_mu2: f64) -> f64 {
@@ -230,16 +250,20 @@ impl Running {
     }
 
     fn check(&self, freeze_gev: f64) -> Result<(), CouplingError> {
-        let freeze = libm::log(freeze_gev * freeze_gev);
-        let top = libm::log(Z_MASS_GEV * Z_MASS_GEV).max(freeze);
+        let freeze = ln(freeze_gev * freeze_gev);
+        let top = ln(Z_MASS_GEV * Z_MASS_GEV).max(freeze);
         let steps = ((top - freeze) / TABLE_STEP).ceil().max(1.0);
         // From above, so that the first violation found is the highest and no exact solution is asked below a pole.
         for step in (0..=steps as usize).rev() {
             let ln_mu2 = freeze + (top - freeze) * step as f64 / steps;
             let alpha = 1.0 / self.inverse(ln_mu2);
             if !(alpha > 0.0 && alpha < LARGEST_ALPHA_S) {
-                let scale_gev = libm::exp(0.5 * ln_mu2);
-                return Err(CouplingError::TooStrong { freeze_gev, scale_gev, largest: alpha });
+                let scale_gev = exp(0.5 * ln_mu2);
+                return Err(CouplingError::TooStrong {
+                    freeze_gev,
+                    scale_gev,
+                    largest: alpha,
+                });
             }
         }
         Ok(())
@@ -252,19 +276,30 @@ impl Running {
             inverse - slopes[segment] * reference
         });
         let thresholds_gev2 = self.thresholds.map(libm::exp);
-        OneLoop { intercepts, slopes, thresholds_gev2, freeze_gev2: freeze_gev * freeze_gev }
+        OneLoop {
+            intercepts,
+            slopes,
+            thresholds_gev2,
+            freeze_gev2: freeze_gev * freeze_gev,
+        }
     }
 
     fn table(&self, freeze_gev: f64) -> Table {
-        let start = libm::log(freeze_gev * freeze_gev);
+        let start = ln(freeze_gev * freeze_gev);
         let count = ((TABLE_END - start) / TABLE_STEP).ceil().max(2.0) as usize;
         let node = |segment: usize, place: usize| {
             let inverse = self.inverse_within(segment, start + place as f64 * TABLE_STEP);
             let flavours = segment + 3;
             [inverse, b0(flavours) + b1(flavours) / inverse]
         };
-        let nodes = std::array::from_fn(|segment| (0..=count).map(|place| node(segment, place)).collect());
-        Table { start, nodes, thresholds: self.thresholds, freeze_gev2: freeze_gev * freeze_gev }
+        let nodes =
+            std::array::from_fn(|segment| (0..=count).map(|place| node(segment, place)).collect());
+        Table {
+            start,
+            nodes,
+            thresholds: self.thresholds,
+            freeze_gev2: freeze_gev * freeze_gev,
+        }
     }
 }
 
@@ -272,17 +307,21 @@ impl Running {
 fn two_loop_inverse(inverse: f64, one_loop: f64, c: f64) -> f64 {
     const LARGEST_STEP_COUNT: usize = 60;
     const TOLERANCE: f64 = 1e-15;
-    let target = inverse - c * libm::log(inverse + c) + one_loop;
+    let target = inverse - c * ln(inverse + c) + one_loop;
     let mut y = (inverse + one_loop).max(inverse * 0.5);
     for _ in 0..LARGEST_STEP_COUNT {
-        let step = (y - c * libm::log(y + c) - target) * (y + c) / y;
+        let step = (y - c * ln(y + c) - target) * (y + c) / y;
         y = if step < y { y - step } else { 0.5 * y };
         if step.abs() < TOLERANCE * y {
             return y;
         }
     }
     // No convergence: the target lies below the smallest value that the left side can take, beyond the pole.
-    if (y - c * libm::log(y + c) - target).abs() < 1e-9 { y } else { f64::NAN }
+    if (y - c * ln(y + c) - target).abs() < 1e-9 {
+        y
+    } else {
+        f64::NAN
+    }
 }
 
 #[cfg(test)]
@@ -291,7 +330,11 @@ mod tests {
 
     fn coupling(loops: Loops, freeze_gev: f64) -> Result<Coupling, CouplingError> {
         Coupling::new(&CouplingSettings {
-            law: CouplingLaw::Running { loops, alpha_s_mz: 0.118, freeze_gev },
+            law: CouplingLaw::Running {
+                loops,
+                alpha_s_mz: 0.118,
+                freeze_gev,
+            },
             argument: ScaleArgument::TransverseMomentum,
             quark_masses_gev: [1.5, 4.75],
         })
@@ -302,10 +345,10 @@ mod tests {
     fn two_loops_solve_the_renormalisation_group_equation() {
         let table = coupling(Loops::Two, 1.0).unwrap();
         let beta = |flavours: usize, a: f64| -b0(flavours) * a * a - b1(flavours) * a * a * a;
-        let (mut alpha, mut scale) = (0.118, libm::log(Z_MASS_GEV * Z_MASS_GEV));
+        let (mut alpha, mut scale) = (0.118, ln(Z_MASS_GEV * Z_MASS_GEV));
         for (flavours, end_gev) in [(5, 4.75), (4, 1.5), (3, 1.0_f64)] {
             let steps = 20_000;
-            let h = (libm::log(end_gev * end_gev) - scale) / steps as f64;
+            let h = (ln(end_gev * end_gev) - scale) / steps as f64;
             for _ in 0..steps {
                 let k1 = beta(flavours, alpha);
                 let k2 = beta(flavours, alpha + 0.5 * h * k1);
@@ -313,8 +356,11 @@ mod tests {
                 let k4 = beta(flavours, alpha + h * k3);
                 alpha += h / 6.0 * (k1 + 2.0 * k2 + 2.0 * k3 + k4);
                 scale += h;
-                let off = table.alpha_s(libm::exp(scale)) / alpha - 1.0;
-                assert!(off.abs() < 1e-8, "{flavours} flavours, ln mu^2 = {scale}: off by {off}");
+                let off = table.alpha_s(exp(scale)) / alpha - 1.0;
+                assert!(
+                    off.abs() < 1e-8,
+                    "{flavours} flavours, ln mu^2 = {scale}: off by {off}"
+                );
             }
         }
     }
@@ -325,7 +371,7 @@ mod tests {
             let coupling = coupling(loops, 1.0).unwrap();
             let mut last = f64::INFINITY;
             for step in 0..200_000 {
-                let alpha = coupling.alpha_s(libm::exp(-2.0 + 1e-4 * step as f64));
+                let alpha = coupling.alpha_s(exp(-2.0 + 1e-4 * step as f64));
                 assert!(alpha <= last * (1.0 + 1e-14));
                 last = alpha;
             }

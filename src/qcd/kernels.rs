@@ -54,7 +54,10 @@ mod tests {
             let kernels = [quark_to_quark_gluon, gluon_to_gluons, gluon_to_quarks];
             for (kernel, expected) in kernels.into_iter().zip(closed) {
                 let found = integral(kernel, s);
-                assert!((found / expected - 1.0).abs() < 1e-9, "s = {s}: {found} against {expected}");
+                assert!(
+                    (found / expected - 1.0).abs() < 1e-9,
+                    "s = {s}: {found} against {expected}"
+                );
             }
         }
     }
@@ -72,6 +75,10 @@ mod tests {
             n if n % 2 == 1 => 4.0,
             _ => 2.0,
         };
-        (0..=steps).map(|step| weight(step) * value(step)).sum::<f64>() * (2.0 * end / steps as f64) / 3.0
+        (0..=steps)
+            .map(|step| weight(step) * value(step))
+            .sum::<f64>()
+            * (2.0 * end / steps as f64)
+            / 3.0
     }
 }

@@ -36,8 +36,13 @@ impl Generator {
         let hard = self.source.draw(&mut key.stream(Purpose::SOURCE));
         let origin_fm = self.origin_fm();
         let first_row = block.partons.len();
-        let mut record = Record { rows: &mut block.partons, full_history: self.full_history };
-        let weight = self.shower.shower(walker, &hard, key, origin_fm, &mut record);
+        let mut record = Record {
+            rows: &mut block.partons,
+            full_history: self.full_history,
+        };
+        let weight = self
+            .shower
+            .shower(walker, &hard, key, origin_fm, &mut record);
         block.events.push(EventSummary {
             id,
             source_weight: hard.weight,

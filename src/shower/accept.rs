@@ -20,12 +20,22 @@ pub struct Verdict {
 #[inline]
 pub fn judge(ratio: f64, uniform: f64, weight: &mut f64) -> Verdict {
     if (0.0..=1.0).contains(&ratio) {
-        return Verdict { accepted: uniform < ratio, overshoot: false };
+        return Verdict {
+            accepted: uniform < ratio,
+            overshoot: false,
+        };
     }
     let probability = ratio / (2.0 * ratio - 1.0);
     let accepted = uniform < probability;
-    *weight *= if accepted { ratio / probability } else { (1.0 - ratio) / (1.0 - probability) };
-    Verdict { accepted, overshoot: true }
+    *weight *= if accepted {
+        ratio / probability
+    } else {
+        (1.0 - ratio) / (1.0 - probability)
+    };
+    Verdict {
+        accepted,
+        overshoot: true,
+    }
 }
 
 #[cfg(test)]
@@ -37,7 +47,11 @@ mod tests {
     #[test]
     fn weights_are_exact_in_the_mean() {
         for ratio in [-5.0, -1.0, -1e-3, 0.0, 0.3, 1.0, 1.0 + 1e-9, 1.5, 40.0_f64] {
-            let probability = if (0.0..=1.0).contains(&ratio) { ratio } else { ratio / (2.0 * ratio - 1.0) };
+            let probability = if (0.0..=1.0).contains(&ratio) {
+                ratio
+            } else {
+                ratio / (2.0 * ratio - 1.0)
+            };
             assert!((0.0..=1.0).contains(&probability));
             let (mut accepted, mut rejected) = (1.0, 1.0);
             judge(ratio, probability - 1e-12, &mut accepted);
@@ -50,8 +64,19 @@ mod tests {
     #[test]
     fn a_density_inside_its_envelope_leaves_the_weight() {
         let mut weight = 1.0;
-        for (ratio, uniform, accepted) in [(0.4, 0.39, true), (0.4, 0.41, false), (1.0, 0.999, true), (0.0, 0.0, false)] {
-            assert_eq!(judge(ratio, uniform, &mut weight), Verdict { accepted, overshoot: false });
+        for (ratio, uniform, accepted) in [
+            (0.4, 0.39, true),
+            (0.4, 0.41, false),
+            (1.0, 0.999, true),
+            (0.0, 0.0, false),
+        ] {
+            assert_eq!(
+                judge(ratio, uniform, &mut weight),
+                Verdict {
+                    accepted,
+                    overshoot: false
+                }
+            );
         }
         assert_eq!(weight, 1.0);
     }

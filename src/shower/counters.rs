@@ -2,6 +2,9 @@
 
 use std::ops::AddAssign;
 
+/// Unit of [`ChannelCounters::cut_by_angle_limit`].
+pub const CUT_UNIT: f64 = 1.0 / (1u64 << 20) as f64;
+
 /// Counts of one emission channel.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub struct ChannelCounters {
@@ -11,8 +14,9 @@ pub struct ChannelCounters {
     pub accepted: u64,
     /// Trials whose density lay outside its envelope; the weight carries them.
     pub overshoots: u64,
-    /// Trials vetoed by the limit to small angles.
-    pub vetoed_angles: u64,
+    /// Expected number of branchings that the limit to small angles cut away, taking coupling and phase factor at the
+    /// trials that it left; in units of [`CUT_UNIT`], so that sums do not depend on their order.
+    pub cut_by_angle_limit: u64,
 }
 
 /// Counts of a run; those of parts add up.
@@ -35,18 +39,24 @@ pub struct RunCounters {
 impl RunCounters {
     /// Zero counts for the vacuum and a number of effects.
     pub fn new(effects: usize) -> RunCounters {
-        RunCounters { channels: vec![ChannelCounters::default(); 1 + effects], ..RunCounters::default() }
+        RunCounters {
+            channels: vec![ChannelCounters::default(); 1 + effects],
+            ..RunCounters::default()
+        }
     }
 }
 
 impl AddAssign<&RunCounters> for RunCounters {
     fn add_assign(&mut self, other: &RunCounters) {
-        self.channels.resize(self.channels.len().max(other.channels.len()), ChannelCounters::default());
+        self.channels.resize(
+            self.channels.len().max(other.channels.len()),
+            ChannelCounters::default(),
+        );
         for (sum, part) in self.channels.iter_mut().zip(&other.channels) {
             sum.trials += part.trials;
             sum.accepted += part.accepted;
             sum.overshoots += part.overshoots;
-            sum.vetoed_angles += part.vetoed_angles;
+            sum.cut_by_angle_limit += part.cut_by_angle_limit;
         }
         self.branchings += other.branchings;
         self.legs += other.legs;

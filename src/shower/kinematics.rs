@@ -27,7 +27,10 @@ pub struct Place {
 
 impl Place {
     /// The primary of a jet.
-    pub const PRIMARY: Place = Place { fraction: 1.0, transverse_gev: [0.0, 0.0] };
+    pub const PRIMARY: Place = Place {
+        fraction: 1.0,
+        transverse_gev: [0.0, 0.0],
+    };
 
     /// The two daughters for a fraction z and a relative transverse momentum k.
     #[inline]
@@ -35,7 +38,10 @@ impl Place {
         let [qx, qy] = self.transverse_gev;
         let rest = 1.0 - z;
         [
-            Place { fraction: z * self.fraction, transverse_gev: [z * qx + k_gev[0], z * qy + k_gev[1]] },
+            Place {
+                fraction: z * self.fraction,
+                transverse_gev: [z * qx + k_gev[0], z * qy + k_gev[1]],
+            },
             Place {
                 fraction: rest * self.fraction,
                 transverse_gev: [rest * qx - k_gev[0], rest * qy - k_gev[1]],
@@ -55,9 +61,18 @@ impl Frame {
     /// The frame of a jet along a unit vector with P+ in GeV.
     pub fn new(axis: [f64; 3], plus_gev: f64) -> Frame {
         // The coordinate axis that is farthest from the jet makes a well-conditioned basis.
-        let helper = if axis[2].abs() < 0.8 { [0.0, 0.0, 1.0] } else { [1.0, 0.0, 0.0] };
+        let helper = if axis[2].abs() < 0.8 {
+            [0.0, 0.0, 1.0]
+        } else {
+            [1.0, 0.0, 0.0]
+        };
         let first = unit(cross(helper, axis));
-        Frame { axis, first, second: cross(axis, first), plus_gev }
+        Frame {
+            axis,
+            first,
+            second: cross(axis, first),
+            plus_gev,
+        }
     }
 
     /// The lab four-momentum `[px, py, pz, energy]` (GeV) of a parton of virtuality squared `t_gev2`.
@@ -68,7 +83,12 @@ impl Frame {
         let minus = (t_gev2 + qx * qx + qy * qy) / plus;
         let along = 0.5 * (plus - minus);
         let component = |i: usize| along * self.axis[i] + qx * self.first[i] + qy * self.second[i];
-        [component(0), component(1), component(2), 0.5 * (plus + minus)]
+        [
+            component(0),
+            component(1),
+            component(2),
+            0.5 * (plus + minus),
+        ]
     }
 
     /// The axis of the jet.
@@ -93,14 +113,20 @@ mod tests {
     #[test]
     fn a_branching_conserves_momentum_and_masses() {
         let frame = Frame::new(unit([0.3, -0.5, 0.9]), 180.0);
-        let parent = Place { fraction: 0.4, transverse_gev: [3.0, -1.0] };
+        let parent = Place {
+            fraction: 0.4,
+            transverse_gev: [3.0, -1.0],
+        };
         let (t, z, t12) = (400.0, 0.3, [20.0, 55.0]);
         let k2 = relative_transverse_gev2(t, z, t12);
         assert!(k2 > 0.0);
         let k = [k2.sqrt() * 0.6, k2.sqrt() * 0.8];
         let mother = frame.momentum(&parent, t);
         let daughters = parent.split(z, k);
-        let momenta = [frame.momentum(&daughters[0], t12[0]), frame.momentum(&daughters[1], t12[1])];
+        let momenta = [
+            frame.momentum(&daughters[0], t12[0]),
+            frame.momentum(&daughters[1], t12[1]),
+        ];
         for component in 0..4 {
             let sum = momenta[0][component] + momenta[1][component];
             assert!((sum - mother[component]).abs() < 1e-12 * mother[3]);

@@ -7,9 +7,9 @@
 use rand::RngExt;
 
 use super::accept::judge;
-use super::counters::RunCounters;
+use super::counters::{CUT_UNIT, RunCounters};
 use super::proposal::Trial;
-use super::proposal::induced::InducedEnvelope;
+use super::proposal::induced::{Emitter, InducedEnvelope, InducedTrial};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
 use crate::medium::Medium;
 use crate::medium::effects::Passage;
@@ -74,7 +74,7 @@ struct Channel {
     effect: usize,
     stream: Stream,
     envelope: InducedEnvelope,
-    pending: Option<Trial>,
+    pending: Option<InducedTrial>,
 }
 
 impl Leg {
@@ -94,7 +94,13 @@ impl Leg {
 
     /// Starts the evolution of a parton below `largest_t_gev2`.
     #[inline]
-    pub fn start(&mut self, evolution: &Evolution, species: Species, key: Key, largest_t_gev2: f64) {
+    pub fn start(
+        &mut self,
+        evolution: &Evolution,
+        species: Species,
+        key: Key,
+        largest_t_gev2: f64,
+    ) {
         self.species = species;
         self.in_medium = false;
         self.height = evolution.stairs[species.is_gluon() as usize].height(largest_t_gev2);
@@ -112,12 +118,16 @@ impl Leg {
         (energy_gev, ray): (f64, Ray),
         tally: &mut Tally,
     ) {
-        let Some(medium) = evolution.medium.as_ref().filter(|_| self.height.is_some()) else { return };
+        let Some(medium) = evolution.medium.as_ref().filter(|_| self.height.is_some()) else {
+            return;
+        };
         if energy_gev < medium.min_energy_gev() {
             tally.counters.legs_below_min_energy += 1;
             return;
         }
-        let Outcome::Medium { left_hot } = medium.trace(&ray, &mut self.trace) else { return };
+        let Outcome::Medium { left_hot } = medium.trace(&ray, &mut self.trace) else {
+            return;
+        };
         tally.counters.legs_in_medium += 1;
         tally.counters.paths_left_hot += left_hot as u64;
         self.in_medium = true;
@@ -126,18 +136,41 @@ impl Leg {
         self.pending = self.next_vacuum(evolution, tally);
     }
 
-    fn open_channels(&mut self, evolution: &Evolution, medium: &Medium, key: Key, t_gev2: f64, tally: &mut Tally) {
+    fn open_channels(
+        &mut self,
+        evolution: &Evolution,
+        medium: &Medium,
+        key: Key,
+        t_gev2: f64,
+        tally: &mut Tally,
+    ) {
         self.induced.clear();
-        let passage = Passage { species: self.species, energy_gev: self.energy_gev, path: &self.trace.path };
+        let passage = Passage {
+            species: self.species,
+            energy_gev: self.energy_gev,
+            path: &self.trace.path,
+        };
         for (effect, model) in medium.effects().iter().enumerate() {
             let bound = model.bound(&passage);
-            let is_gluon = self.species.is_gluon();
-            let envelope = InducedEnvelope::new(&evolution.rate, is_gluon, bound, evolution.envelope_factor);
+            let emitter = Emitter {
+                is_gluon: self.species.is_gluon(),
+                start_t_gev2: t_gev2,
+                angle_limit_energy2_gev2: medium
+                    .limits_angles()
+                    .then_some(self.energy_gev * self.energy_gev),
+            };
+            let envelope =
+                InducedEnvelope::new(&evolution.rate, emitter, bound, evolution.envelope_factor);
             if let Some(envelope) = envelope {
                 let mut stream = key.stream(evolution.effect_purposes[effect]);
                 let trials = &mut tally.counters.channels[effect + 1].trials;
                 let pending = envelope.propose(t_gev2, &mut stream, trials);
-                self.induced.push(Channel { effect, stream, envelope, pending });
+                self.induced.push(Channel {
+                    effect,
+                    stream,
+                    envelope,
+                    pending,
+                });
             }
         }
     }
@@ -145,7 +178,11 @@ impl Leg {
     /// The next branching below the present virtuality, `None` when the parton is final.
     #[inline]
     pub fn evolve(&mut self, evolution: &Evolution, tally: &mut Tally) -> Option<Branching> {
-        if self.in_medium { self.evolve_in_medium(evolution, tally) } else { self.evolve_in_vacuum(evolution, tally) }
+        if self.in_medium {
+            self.evolve_in_medium(evolution, tally)
+        } else {
+            self.evolve_in_vacuum(evolution, tally)
+        }
     }
 
     #[inline]
@@ -180,8 +217,8 @@ impl Leg {
     fn leader(&self, vacuum_t: f64) -> (Option<usize>, f64) {
         let mut best = (None, vacuum_t);
         for (place, channel) in self.induced.iter().enumerate() {
-            if let Some(trial) = channel.pending.filter(|trial| trial.t > best.1) {
-                best = (Some(place), trial.t);
+            if let Some(pending) = channel.pending.filter(|pending| pending.trial.t > best.1) {
+                best = (Some(place), pending.trial.t);
             }
         }
         best
@@ -189,50 +226,80 @@ impl Leg {
 
     fn judge_vacuum(&mut self, evolution: &Evolution, tally: &mut Tally) -> Option<Branching> {
         let trial = self.pending.take().expect("the leader has a pending trial");
-        let ratio = evolution.rate.density(&trial) * trial.inverse_envelope * self.thinning(evolution, &trial);
-        let branching = verdict(ratio, &trial, VACUUM, tally).then(|| self.vacuum_branching(evolution, &trial));
+        let ratio = evolution.rate.density(&trial)
+            * trial.inverse_envelope
+            * self.thinning(evolution, &trial);
+        let branching =
+            verdict(ratio, &trial, VACUUM, tally).then(|| self.vacuum_branching(evolution, &trial));
         self.pending = self.next_vacuum(evolution, tally);
         branching
     }
 
     /// 1 + sum over effects of min(R, 0): what is left of the vacuum density.
     fn thinning(&self, evolution: &Evolution, trial: &Trial) -> f64 {
-        let Some(medium) = &evolution.medium else { return 1.0 };
+        let Some(medium) = &evolution.medium else {
+            return 1.0;
+        };
         let open = trial.splitting != Splitting::GluonToQuarks;
         if !open || !medium.allows_angle(trial.t, trial.z, self.energy_gev) {
             return 1.0;
         }
         let passage = self.passage();
         let negative = |change: f64| change.min(0.0);
-        let thinning = medium.effects().iter().filter(|effect| effect.thins_the_vacuum());
-        1.0 + thinning.map(|effect| negative(effect.relative_change(&passage, trial.t, trial.z))).sum::<f64>()
+        let thinning = medium
+            .effects()
+            .iter()
+            .filter(|effect| effect.thins_the_vacuum());
+        1.0 + thinning
+            .map(|effect| negative(effect.relative_change(&passage, trial.t, trial.z)))
+            .sum::<f64>()
     }
 
-    fn judge_induced(&mut self, place: usize, evolution: &Evolution, tally: &mut Tally) -> Option<Branching> {
-        let medium = evolution.medium.as_ref().expect("an induced channel has a medium");
-        let trial = self.induced[place].pending.take().expect("the leader has a pending trial");
+    fn judge_induced(
+        &mut self,
+        place: usize,
+        evolution: &Evolution,
+        tally: &mut Tally,
+    ) -> Option<Branching> {
+        let medium = evolution
+            .medium
+            .as_ref()
+            .expect("an induced channel has a medium");
+        let InducedTrial { trial, cut_away } = self.induced[place]
+            .pending
+            .take()
+            .expect("the leader has a pending trial");
         let number = self.induced[place].effect + 1;
-        let accepted = if medium.allows_angle(trial.t, trial.z, self.energy_gev) {
-            let effect = &medium.effects()[number - 1];
-            let change = effect.relative_change(&self.passage(), trial.t, trial.z).max(0.0);
-            let ratio = evolution.rate.density(&trial) * trial.inverse_envelope * change;
-            verdict(ratio, &trial, number, tally)
-        } else {
-            tally.counters.channels[number].vetoed_angles += 1;
-            false
-        };
+        let effect = &medium.effects()[number - 1];
+        let change = effect
+            .relative_change(&self.passage(), trial.t, trial.z)
+            .max(0.0);
+        let ratio = evolution.rate.density(&trial) * trial.inverse_envelope * change;
+        tally.counters.channels[number].cut_by_angle_limit += (cut_away * ratio / CUT_UNIT) as u64;
+        let accepted = verdict(ratio, &trial, number, tally);
         let channel = &mut self.induced[place];
         let trials = &mut tally.counters.channels[number].trials;
-        channel.pending = channel.envelope.propose(trial.t, &mut channel.stream, trials);
+        channel.pending = channel
+            .envelope
+            .propose(trial.t, &mut channel.stream, trials);
         let daughters = [self.species, Species::GLUON];
-        accepted.then_some(Branching { t: trial.t, z: trial.z, daughters, channel: number })
+        accepted.then_some(Branching {
+            t: trial.t,
+            z: trial.z,
+            daughters,
+            channel: number,
+        })
     }
 
     #[inline]
     fn next_vacuum(&mut self, evolution: &Evolution, tally: &mut Tally) -> Option<Trial> {
         let height = self.height.as_mut()?;
         let stairs = &evolution.stairs[self.species.is_gluon() as usize];
-        let trial = stairs.propose(height, &mut self.vacuum, &mut tally.counters.channels[VACUUM].trials);
+        let trial = stairs.propose(
+            height,
+            &mut self.vacuum,
+            &mut tally.counters.channels[VACUUM].trials,
+        );
         if trial.is_none() {
             self.height = None;
         }
@@ -242,25 +309,44 @@ impl Leg {
     #[inline]
     fn vacuum_branching(&mut self, evolution: &Evolution, trial: &Trial) -> Branching {
         let daughters = match trial.splitting {
-            Splitting::QuarkToQuarkGluon | Splitting::GluonToGluons => [self.species, Species::GLUON],
+            Splitting::QuarkToQuarkGluon | Splitting::GluonToGluons => {
+                [self.species, Species::GLUON]
+            }
             Splitting::GluonToQuarks => {
                 let open = evolution.rate.flavours.open(trial.t);
-                let quark = Species::quark(1 + (self.vacuum.random::<f64>() * f64::from(open)) as u8);
+                let quark =
+                    Species::quark(1 + (self.vacuum.random::<f64>() * f64::from(open)) as u8);
                 [quark, quark.conjugate()]
             }
         };
-        Branching { t: trial.t, z: trial.z, daughters, channel: VACUUM }
+        Branching {
+            t: trial.t,
+            z: trial.z,
+            daughters,
+            channel: VACUUM,
+        }
     }
 
     fn passage(&self) -> Passage<'_> {
-        Passage { species: self.species, energy_gev: self.energy_gev, path: &self.trace.path }
+        Passage {
+            species: self.species,
+            energy_gev: self.energy_gev,
+            path: &self.trace.path,
+        }
     }
 
     /// Where an induced branching of this leg happens, fm along its path from birth.
     pub fn induced_vertex_fm(&self, evolution: &Evolution, branching: &Branching, key: Key) -> f64 {
-        let medium = evolution.medium.as_ref().expect("an induced branching has a medium");
+        let medium = evolution
+            .medium
+            .as_ref()
+            .expect("an induced branching has a medium");
         let effect = &medium.effects()[branching.channel - 1];
-        effect.vertex_fm(&self.passage(), branching.t, &mut key.stream(Purpose::INDUCED_VERTEX))
+        effect.vertex_fm(
+            &self.passage(),
+            branching.t,
+            &mut key.stream(Purpose::INDUCED_VERTEX),
+        )
     }
 }
 

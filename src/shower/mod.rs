@@ -116,19 +116,36 @@ impl Shower {
         let end_t_gev2 = settings.virtuality_cutoff_gev * settings.virtuality_cutoff_gev;
         let rate = VacuumRate {
             coupling: Coupling::new(coupling)?,
-            range: FractionRange { end_t_gev2, kind: settings.z_range },
+            range: FractionRange {
+                end_t_gev2,
+                kind: settings.z_range,
+            },
             flavours: FlavourRule::new(settings, coupling.quark_masses_gev),
         };
         let largest_t = largest_virtuality_gev * largest_virtuality_gev;
-        let stairs = [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));
+        let stairs =
+            [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));
         // Without effects nothing of the medium can act: the vacuum to the last bit.
         let medium = medium.filter(|medium| !medium.effects().is_empty());
         let effect_purposes = match &medium {
-            Some(medium) => medium.effects().iter().map(|effect| Purpose::named(effect.name())).collect(),
+            Some(medium) => medium
+                .effects()
+                .iter()
+                .map(|effect| Purpose::named(effect.name()))
+                .collect(),
             None => Vec::new(),
         };
-        let evolution = Evolution { rate, stairs, medium, effect_purposes, envelope_factor: settings.envelope_factor };
-        Ok(Shower { evolution, settings: settings.clone() })
+        let evolution = Evolution {
+            rate,
+            stairs,
+            medium,
+            effect_purposes,
+            envelope_factor: settings.envelope_factor,
+        };
+        Ok(Shower {
+            evolution,
+            settings: settings.clone(),
+        })
     }
 
     /// Working memory for one worker.
@@ -145,6 +162,15 @@ impl Shower {
         origin_fm: [f64; 4],
         record: &mut Record,
     ) -> f64 {
-        walker.walk(Tools { evolution: &self.evolution, settings: &self.settings }, hard, key, origin_fm, record)
+        walker.walk(
+            Tools {
+                evolution: &self.evolution,
+                settings: &self.settings,
+            },
+            hard,
+            key,
+            origin_fm,
+            record,
+        )
     }
 }

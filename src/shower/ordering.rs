@@ -32,7 +32,9 @@ impl Constraint {
         match *self {
             Constraint::None => true,
             Constraint::Daughters { t, z } => relative_transverse_gev2(t, z, virtualities) >= 0.0,
-            Constraint::TwoBody { sqrt_s_gev } => virtualities[0].sqrt() + virtualities[1].sqrt() <= sqrt_s_gev,
+            Constraint::TwoBody { sqrt_s_gev } => {
+                virtualities[0].sqrt() + virtualities[1].sqrt() <= sqrt_s_gev
+            }
         }
     }
 }
@@ -51,11 +53,13 @@ pub fn settle(
         *branching = leg.evolve(evolution, tally);
     }
     loop {
-        let virtualities = branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
+        let virtualities =
+            branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
         if constraint.fits(virtualities) {
             return branchings;
         }
-        let first_is_larger = virtualities[0] * largest_t_gev2[1] > virtualities[1] * largest_t_gev2[0];
+        let first_is_larger =
+            virtualities[0] * largest_t_gev2[1] > virtualities[1] * largest_t_gev2[0];
         let resumed = if first_is_larger { 0 } else { 1 };
         branchings[resumed] = legs[resumed].evolve(evolution, tally);
     }

@@ -12,6 +12,7 @@ use super::ordering::{Constraint, settle};
 use super::{Lifetime, Ordering, ShowerSettings};
 use crate::event::{CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, NO_PARENT, Parton, Status};
 use crate::medium::field::Ray;
+use crate::numerics::elementary::ln;
 use crate::qcd::kernels::Splitting;
 use crate::qcd::{FIRST_COLOUR_TAG, HBAR_C_GEV_FM, Species};
 use crate::random::{Key, Purpose};
@@ -73,7 +74,10 @@ impl Walker {
             frames: [None; 2],
             next_colour: FIRST_COLOUR_TAG,
             first_row: 0,
-            tally: Tally { weight: 1.0, counters: super::counters::RunCounters::new(effects) },
+            tally: Tally {
+                weight: 1.0,
+                counters: super::counters::RunCounters::new(effects),
+            },
         }
     }
 
@@ -111,17 +115,37 @@ impl Walker {
         for (place, parton) in partons.iter().enumerate() {
             let leg = &mut self.legs[place];
             leg.start(tools.evolution, parton.species, keys[place], largest_t);
-            let ray = Ray { birth_fm: origin_fm, direction: parton.direction };
-            leg.enter_medium(tools.evolution, keys[place], largest_t, (parton.energy_gev, ray), &mut self.tally);
+            let ray = Ray {
+                birth_fm: origin_fm,
+                direction: parton.direction,
+            };
+            leg.enter_medium(
+                tools.evolution,
+                keys[place],
+                largest_t,
+                (parton.energy_gev, ray),
+                &mut self.tally,
+            );
         }
         let constraint = match hard.topology {
             Topology::Single => Constraint::None,
             Topology::Pair { sqrt_s_gev } => Constraint::TwoBody { sqrt_s_gev },
         };
-        let constraint = if tools.settings.ordering == Ordering::Collinear { Constraint::None } else { constraint };
+        let constraint = if tools.settings.ordering == Ordering::Collinear {
+            Constraint::None
+        } else {
+            constraint
+        };
         let legs = &mut self.legs[..partons.len()];
-        let branchings = settle(tools.evolution, legs, [largest_t; 2], constraint, &mut self.tally);
-        let virtualities = branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
+        let branchings = settle(
+            tools.evolution,
+            legs,
+            [largest_t; 2],
+            constraint,
+            &mut self.tally,
+        );
+        let virtualities =
+            branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
         for (jet, parton) in partons.iter().enumerate() {
             let plus_gev = match tools.settings.ordering {
                 Ordering::Collinear => 2.0 * parton.energy_gev,
@@ -144,7 +168,13 @@ impl Walker {
         }
     }
 
-    fn record_hard(&self, hard: &HardProcess, jet: usize, origin_fm: [f64; 4], record: &mut Record) -> i32 {
+    fn record_hard(
+        &self,
+        hard: &HardProcess,
+        jet: usize,
+        origin_fm: [f64; 4],
+        record: &mut Record,
+    ) -> i32 {
         let parton = &hard.partons()[jet];
         let [nx, ny, nz] = parton.direction;
         let e = parton.energy_gev;
@@ -167,14 +197,24 @@ impl Walker {
     /// Makes the daughters of a branched parton.
     fn daughters(&mut self, tools: Tools, node: &Node, record: &mut Record) {
         self.tally.counters.branchings += 1;
-        let Branching { t, z, daughters, channel } = node.branching;
+        let Branching {
+            t,
+            z,
+            daughters,
+            channel,
+        } = node.branching;
         let largest_t = match tools.settings.ordering {
             Ordering::Collinear => [t, t],
             Ordering::Virtuality => [z * t, (1.0 - z) * t],
         };
         let keys = [node.key.daughter(0), node.key.daughter(1)];
         for daughter in 0..2 {
-            self.legs[daughter].start(tools.evolution, daughters[daughter], keys[daughter], largest_t[daughter]);
+            self.legs[daughter].start(
+                tools.evolution,
+                daughters[daughter],
+                keys[daughter],
+                largest_t[daughter],
+            );
         }
         if tools.evolution.medium.is_some() {
             self.enter_medium(tools, node, keys, largest_t);
@@ -183,14 +223,22 @@ impl Walker {
             Ordering::Collinear => Constraint::None,
             Ordering::Virtuality => Constraint::Daughters { t, z },
         };
-        let branchings = settle(tools.evolution, &mut self.legs, largest_t, constraint, &mut self.tally);
+        let branchings = settle(
+            tools.evolution,
+            &mut self.legs,
+            largest_t,
+            constraint,
+            &mut self.tally,
+        );
         let places = match tools.settings.ordering {
             Ordering::Collinear => node.place.split(z, [0.0; 2]),
             Ordering::Virtuality => {
-                let virtualities = branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
+                let virtualities =
+                    branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
                 // The constraint holds to the last bit or the loop would have gone on, so the root exists.
                 let k = relative_transverse_gev2(t, z, virtualities).sqrt();
-                node.place.split(z, node.azimuth.map(|component| component * k))
+                node.place
+                    .split(z, node.azimuth.map(|component| component * k))
             }
         };
         let colours = self.split_colours(node, daughters);
@@ -214,10 +262,15 @@ impl Walker {
     fn enter_medium(&mut self, tools: Tools, node: &Node, keys: [Key; 2], largest_t: [f64; 2]) {
         let Branching { t, z, .. } = node.branching;
         let kappa = (z * (1.0 - z) * t).sqrt();
-        let places = node.place.split(z, node.azimuth.map(|component| component * kappa));
+        let places = node
+            .place
+            .split(z, node.azimuth.map(|component| component * kappa));
         for daughter in 0..2 {
             let momentum = self.frame(node.jet).momentum(&places[daughter], 0.0);
-            let ray = Ray { birth_fm: node.vertex_fm, direction: direction(momentum) };
+            let ray = Ray {
+                birth_fm: node.vertex_fm,
+                direction: direction(momentum),
+            };
             let state = (momentum[3], ray);
             self.legs[daughter].enter_medium(
                 tools.evolution,
@@ -230,7 +283,9 @@ impl Walker {
     }
 
     fn frame(&self, jet: usize) -> &Frame {
-        self.frames[jet].as_ref().expect("a jet has its frame before it has daughters")
+        self.frames[jet]
+            .as_ref()
+            .expect("a jet has its frame before it has daughters")
     }
 
     /// Records a settled parton, and puts it on the stack if it branched.
@@ -263,14 +318,35 @@ impl Walker {
                 parent: parton.parent,
                 colour: parton.colours[0],
                 anticolour: parton.colours[1],
-                status: if is_final { Status::Final } else { Status::Branched },
+                status: if is_final {
+                    Status::Final
+                } else {
+                    Status::Branched
+                },
                 channel: parton.channel,
             });
         }
         if let Some(branching) = branching {
             let (azimuth, vertex_fm) = self.geometry(tools, &parton, &branching, momentum, leg);
-            let Settled { species, key, place, jet, colours, .. } = parton;
-            self.stack.push(Node { species, key, branching, place, jet, vertex_fm, azimuth, colours, row });
+            let Settled {
+                species,
+                key,
+                place,
+                jet,
+                colours,
+                ..
+            } = parton;
+            self.stack.push(Node {
+                species,
+                key,
+                branching,
+                place,
+                jet,
+                vertex_fm,
+                azimuth,
+                colours,
+                row,
+            });
         }
     }
 
@@ -291,14 +367,22 @@ impl Walker {
             self.legs[leg].induced_vertex_fm(tools.evolution, branching, parton.key)
         } else {
             match tools.settings.lifetime {
-                Lifetime::Exponential => -libm::log(uniform) * mean_fm,
+                Lifetime::Exponential => -ln(uniform) * mean_fm,
                 Lifetime::Mean => mean_fm,
             }
         };
         let per_energy = time_fm / momentum[3];
         let [t, x, y, z] = parton.birth_fm;
         let [px, py, pz, _] = momentum;
-        ([cos, sin], [t + time_fm, x + px * per_energy, y + py * per_energy, z + pz * per_energy])
+        (
+            [cos, sin],
+            [
+                t + time_fm,
+                x + px * per_energy,
+                y + py * per_energy,
+                z + pz * per_energy,
+            ],
+        )
     }
 
     /// Leading-colour flow: each splitting into a gluon opens one new line.

@@ -43,13 +43,23 @@ pub struct HardProcess {
 
 impl HardProcess {
     /// One parton without a recoiler: its colour lines stay open.
-    pub fn single(species: Species, energy_gev: f64, direction: [f64; 3], start_virtuality_gev: f64) -> HardProcess {
+    pub fn single(
+        species: Species,
+        energy_gev: f64,
+        direction: [f64; 3],
+        start_virtuality_gev: f64,
+    ) -> HardProcess {
         let colours = match () {
             () if species.is_gluon() => [FIRST_COLOUR_TAG, FIRST_COLOUR_TAG + 1],
             () if species.is_antiquark() => [0, FIRST_COLOUR_TAG],
             () => [FIRST_COLOUR_TAG, 0],
         };
-        let parton = HardParton { species, energy_gev, direction, colours };
+        let parton = HardParton {
+            species,
+            energy_gev,
+            direction,
+            colours,
+        };
         HardProcess {
             partons: [parton; 2],
             topology: Topology::Single,
@@ -60,7 +70,12 @@ impl HardProcess {
     }
 
     /// Two partons back to back, a colour singlet: quark and antiquark, or two gluons.
-    pub fn pair(species: [Species; 2], sqrt_s_gev: f64, direction: [f64; 3], start_virtuality_gev: f64) -> HardProcess {
+    pub fn pair(
+        species: [Species; 2],
+        sqrt_s_gev: f64,
+        direction: [f64; 3],
+        start_virtuality_gev: f64,
+    ) -> HardProcess {
         let (one, two) = (FIRST_COLOUR_TAG, FIRST_COLOUR_TAG + 1);
         let colours = match () {
             () if species[0].is_gluon() => [[one, two], [two, one]],
@@ -74,7 +89,10 @@ impl HardProcess {
             colours: colours[which],
         };
         HardProcess {
-            partons: [parton(0, direction), parton(1, direction.map(|component| -component))],
+            partons: [
+                parton(0, direction),
+                parton(1, direction.map(|component| -component)),
+            ],
             topology: Topology::Pair { sqrt_s_gev },
             start_virtuality_gev,
             hard_scale_gev: start_virtuality_gev,
@@ -93,7 +111,11 @@ impl HardProcess {
 
     /// The first colour tag that is not in use.
     pub fn next_colour(&self) -> i32 {
-        let largest = self.partons().iter().flat_map(|parton| parton.colours).max();
+        let largest = self
+            .partons()
+            .iter()
+            .flat_map(|parton| parton.colours)
+            .max();
         largest.map_or(FIRST_COLOUR_TAG, |tag| tag + 1)
     }
 

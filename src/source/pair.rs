@@ -18,8 +18,18 @@ impl Pair {
 
 impl HardSource for Pair {
     fn draw(&self, stream: &mut Stream) -> HardProcess {
-        let PairSettings { partons, sqrt_s_gev, start_virtuality_gev, direction } = &self.settings;
-        HardProcess::pair(*partons, *sqrt_s_gev, direction.draw(stream), *start_virtuality_gev)
+        let PairSettings {
+            partons,
+            sqrt_s_gev,
+            start_virtuality_gev,
+            direction,
+        } = &self.settings;
+        HardProcess::pair(
+            *partons,
+            *sqrt_s_gev,
+            direction.draw(stream),
+            *start_virtuality_gev,
+        )
     }
 
     fn largest_virtuality_gev(&self) -> f64 {

@@ -18,8 +18,18 @@ impl Single {
 
 impl HardSource for Single {
     fn draw(&self, stream: &mut Stream) -> HardProcess {
-        let SingleSettings { parton, energy_gev, start_virtuality_gev, direction } = &self.settings;
-        HardProcess::single(*parton, *energy_gev, direction.draw(stream), *start_virtuality_gev)
+        let SingleSettings {
+            parton,
+            energy_gev,
+            start_virtuality_gev,
+            direction,
+        } = &self.settings;
+        HardProcess::single(
+            *parton,
+            *energy_gev,
+            direction.draw(stream),
+            *start_virtuality_gev,
+        )
     }
 
     fn largest_virtuality_gev(&self) -> f64 {
@@ -27,6 +37,10 @@ impl HardSource for Single {
     }
 
     fn open_colour_lines(&self) -> u32 {
-        if self.settings.parton.is_gluon() { 2 } else { 1 }
+        if self.settings.parton.is_gluon() {
+            2
+        } else {
+            1
+        }
     }
 }

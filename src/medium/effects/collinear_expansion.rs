@@ -48,7 +48,11 @@ pub struct CollinearExpansion {
 #[derive(Clone, Debug)]
 enum Phase {
     Interference,
-    Rescattering { window: f64, largest: f64, series: [f64; SERIES_TERMS] },
+    Rescattering {
+        window: f64,
+        largest: f64,
+        series: [f64; SERIES_TERMS],
+    },
     SoftGradient,
 }
 
@@ -82,7 +86,9 @@ impl CollinearExpansion {
                 let transform = path.transform(k_per_fm);
                 2.0 * (i0 - transform.cosine + transform.cosine_slope)
             }
-            Phase::Rescattering { window, series, .. } => path.power_series(k_per_fm, window / k_per_fm, series),
+            Phase::Rescattering { window, series, .. } => {
+                path.power_series(k_per_fm, window / k_per_fm, series)
+            }
         }
     }
 
@@ -133,7 +139,9 @@ fn rescattering_coefficient(n: usize) -> f64 {
 /// between two points of the grid K_b rises by at most that slope times a step.
 fn largest_rescattering(window: f64) -> f64 {
     let step = window / MAXIMUM_SEARCH_STEPS as f64;
-    let on_grid = (0..=MAXIMUM_SEARCH_STEPS).map(|place| rescattering(place as f64 * step)).fold(0.0, f64::max);
+    let on_grid = (0..=MAXIMUM_SEARCH_STEPS)
+        .map(|place| rescattering(place as f64 * step))
+        .fold(0.0, f64::max);
     on_grid + 2.0 * window * (1.0 + window) * step
 }
 
@@ -150,7 +158,9 @@ impl RateEffect for CollinearExpansion {
         let law = |coefficient, power| PowerLaw { coefficient, power };
         match self.phase {
             Phase::Interference => RateBound::LeastOf(law(4.0 * flat, -1), law(quadratic, 1)),
-            Phase::Rescattering { largest, .. } => RateBound::LeastOf(law(largest * flat, -1), law(quadratic, 1)),
+            Phase::Rescattering { largest, .. } => {
+                RateBound::LeastOf(law(largest * flat, -1), law(quadratic, 1))
+            }
             Phase::SoftGradient => {
                 let rising = 2.0 * k_at_one * path.first_moment_gev2_fm();
                 RateBound::GreatestOf(law(2.0 * 4.0 * flat, -1), law(2.0 * rising, 0))
@@ -179,7 +189,11 @@ impl RateEffect for CollinearExpansion {
         let short = last_phase < 2.0;
         let largest = self.largest_over_envelope(last_phase);
         loop {
-            let l = if short { path.draw_by_qhat_l2(end_fm, stream) } else { path.draw_by_qhat(end_fm, stream) };
+            let l = if short {
+                path.draw_by_qhat_l2(end_fm, stream)
+            } else {
+                path.draw_by_qhat(end_fm, stream)
+            };
             let phi = k_per_fm * l;
             let envelope = if short { 0.25 * phi * phi } else { 1.0 };
             if stream.random::<f64>() * largest * envelope < self.phase_factor(phi) {

@@ -13,7 +13,10 @@ pub struct Brick {
 impl Brick {
     /// A brick of a temperature (GeV) and a length (fm).
     pub fn new(temperature_gev: f64, length_fm: f64) -> Brick {
-        Brick { temperature_gev, length_fm }
+        Brick {
+            temperature_gev,
+            length_fm,
+        }
     }
 }
 
@@ -21,10 +24,17 @@ impl TemperatureField for Brick {
     fn stretch(&self, ray: &Ray, end_temperature_gev: f64) -> Option<Stretch> {
         let last_fm = self.length_fm - ray.birth_fm[0];
         let hot = self.temperature_gev >= end_temperature_gev;
-        (hot && last_fm > 0.0).then_some(Stretch { first_fm: 0.0, last_fm, cells: 1 })
+        (hot && last_fm > 0.0).then_some(Stretch {
+            first_fm: 0.0,
+            last_fm,
+            cells: 1,
+        })
     }
 
     fn local(&self, _ray: &Ray, _l_fm: f64) -> Local {
-        Local { temperature_gev: self.temperature_gev, flow_factor: 1.0 }
+        Local {
+            temperature_gev: self.temperature_gev,
+            flow_factor: 1.0,
+        }
     }
 }

@@ -13,12 +13,15 @@ pub struct Longitudinal {
 /// Cells a unit of ln tau: the transport coefficient falls as a power of tau, so equal cells must resolve its start.
 const CELLS_PER_FIRST_TAU: f64 = 4.0;
 /// More cells than this bring nothing at the accuracy of a linear piece.
-const MOST_CELLS: f64 = 400.0;
+const MOST_CELLS: f64 = 100.0;
 
 impl Longitudinal {
     /// The solution with a temperature (GeV) at a proper time (fm).
     pub fn new(temperature_gev: f64, start_fm: f64) -> Longitudinal {
-        Longitudinal { temperature_gev, start_fm }
+        Longitudinal {
+            temperature_gev,
+            start_fm,
+        }
     }
 }
 
@@ -33,14 +36,23 @@ impl TemperatureField for Longitudinal {
         }
         let [t, _, _, z] = ray.at(first_fm);
         let first_tau = (t * t - z * z).max(0.0).sqrt().max(self.start_fm);
-        let cells = (CELLS_PER_FIRST_TAU * (last_fm - first_fm) / first_tau).ceil().clamp(1.0, MOST_CELLS);
-        Some(Stretch { first_fm, last_fm, cells: cells as usize })
+        let cells = (CELLS_PER_FIRST_TAU * (last_fm - first_fm) / first_tau)
+            .ceil()
+            .clamp(1.0, MOST_CELLS);
+        Some(Stretch {
+            first_fm,
+            last_fm,
+            cells: cells as usize,
+        })
     }
 
     fn local(&self, ray: &Ray, l_fm: f64) -> Local {
         let [t, _, _, z] = ray.at(l_fm);
         let tau = (t * t - z * z).max(0.0).sqrt().max(self.start_fm);
         let temperature_gev = self.temperature_gev * libm::cbrt(self.start_fm / tau);
-        Local { temperature_gev, flow_factor: (t - ray.direction[2] * z) / tau }
+        Local {
+            temperature_gev,
+            flow_factor: (t - ray.direction[2] * z) / tau,
+        }
     }
 }

@@ -51,7 +51,10 @@ pub struct Local {
 
 impl Local {
     /// No medium.
-    pub const EMPTY: Local = Local { temperature_gev: 0.0, flow_factor: 1.0 };
+    pub const EMPTY: Local = Local {
+        temperature_gev: 0.0,
+        flow_factor: 1.0,
+    };
 }
 
 /// Where along a ray there may be a medium, and how finely it wants to be sampled.
@@ -74,7 +77,14 @@ pub trait TemperatureField: Send + Sync {
     fn local(&self, ray: &Ray, l_fm: f64) -> Local;
 
     /// Fills `samples` with `count` points from `first_fm` on, `step_fm` apart.
-    fn sample(&self, ray: &Ray, first_fm: f64, step_fm: f64, count: usize, samples: &mut Vec<Local>) {
+    fn sample(
+        &self,
+        ray: &Ray,
+        first_fm: f64,
+        step_fm: f64,
+        count: usize,
+        samples: &mut Vec<Local>,
+    ) {
         samples.clear();
         samples.extend((0..count).map(|place| self.local(ray, first_fm + place as f64 * step_fm)));
     }

@@ -11,6 +11,7 @@ use rand::{Rng, RngExt};
 use rand_distr::OpenClosed01;
 
 use super::{FractionRange, Trial};
+use crate::numerics::elementary::{exp, ln};
 use crate::qcd::kernels::Splitting;
 use crate::qcd::{C_A, C_F, Coupling, T_R};
 use crate::random::Stream;
@@ -44,7 +45,11 @@ impl FlavourRule {
     pub fn new(settings: &ShowerSettings, quark_masses_gev: [f64; 2]) -> FlavourRule {
         // A pair of mass m needs t > 4 m^2.
         let thresholds_gev2 = quark_masses_gev.map(|mass| 4.0 * mass * mass);
-        FlavourRule { opening: settings.flavour_opening, flavours: settings.flavours, thresholds_gev2 }
+        FlavourRule {
+            opening: settings.flavour_opening,
+            flavours: settings.flavours,
+            thresholds_gev2,
+        }
     }
 
     /// How many flavours are open at `t`.
@@ -53,7 +58,11 @@ impl FlavourRule {
         match self.opening {
             FlavourOpening::Always => self.flavours,
             FlavourOpening::PairThreshold => {
-                let heavy = self.thresholds_gev2.iter().filter(|threshold| t_gev2 > **threshold).count() as u8;
+                let heavy = self
+                    .thresholds_gev2
+                    .iter()
+                    .filter(|threshold| t_gev2 > **threshold)
+                    .count() as u8;
                 (LIGHT_FLAVOURS + heavy).min(self.flavours)
             }
         }
@@ -140,17 +149,23 @@ impl Staircase {
         largest_t_gev2: f64,
     ) -> Staircase {
         let splittings = splittings(settings, is_gluon);
-        let ln_end_t = libm::log(rate.range.end_t_gev2);
-        let span = (libm::log(largest_t_gev2) - ln_end_t).max(0.0);
+        let ln_end_t = ln(rate.range.end_t_gev2);
+        let span = (ln(largest_t_gev2) - ln_end_t).max(0.0);
         let count = (span / RUNG_HEIGHT) as usize + 1;
         let mut rungs: Vec<Rung> = Vec::with_capacity(count);
         for place in 0..count {
             let ln_t = ln_end_t + place as f64 * RUNG_HEIGHT;
             let mut rung = Rung::new(rate, &splittings, ln_t, settings.envelope_factor);
-            rung.integral_below = rungs.last().map_or(0.0, |below| below.integral_below + below.rate * RUNG_HEIGHT);
+            rung.integral_below = rungs
+                .last()
+                .map_or(0.0, |below| below.integral_below + below.rate * RUNG_HEIGHT);
             rungs.push(rung);
         }
-        Staircase { rungs, ln_end_t, range: rate.range }
+        Staircase {
+            rungs,
+            ln_end_t,
+            range: rate.range,
+        }
     }
 
     /// The height at which an evolution from `t_gev2` starts; `None` at or below the cutoff.
@@ -159,20 +174,29 @@ impl Staircase {
         if t_gev2 <= self.range.end_t_gev2 {
             return None;
         }
-        let ln_t = libm::log(t_gev2);
-        let rung = (((ln_t - self.ln_end_t) * (1.0 / RUNG_HEIGHT)) as usize).min(self.rungs.len() - 1);
+        let ln_t = ln(t_gev2);
+        let rung =
+            (((ln_t - self.ln_end_t) * (1.0 / RUNG_HEIGHT)) as usize).min(self.rungs.len() - 1);
         let step = &self.rungs[rung];
-        Some(Height { integral: step.integral_below + step.rate * (ln_t - step.ln_t), rung })
+        Some(Height {
+            integral: step.integral_below + step.rate * (ln_t - step.ln_t),
+            rung,
+        })
     }
 
     /// The next trial below `height` that lies in the exact range of fractions, `None` when the cutoff is reached.
     /// `height` moves down with it and `trials` counts every proposal.
     #[inline]
-    pub fn propose(&self, height: &mut Height, stream: &mut Stream, trials: &mut u64) -> Option<Trial> {
+    pub fn propose(
+        &self,
+        height: &mut Height,
+        stream: &mut Stream,
+        trials: &mut u64,
+    ) -> Option<Trial> {
         loop {
             *trials += 1;
             let uniform: f64 = stream.sample(OpenClosed01);
-            let integral = height.integral + libm::log(uniform);
+            let integral = height.integral + ln(uniform);
             height.integral = integral;
             if integral <= 0.0 {
                 return None;
@@ -181,13 +205,19 @@ impl Staircase {
                 height.rung -= 1;
             }
             let rung = &self.rungs[height.rung];
-            let t = libm::exp(rung.ln_t + (integral - rung.integral_below) * rung.inverse_rate);
+            let t = exp(rung.ln_t + (integral - rung.integral_below) * rung.inverse_rate);
             let (e, cell) = rung.draw(stream.random());
             let kappa2 = e * (1.0 - e) * t;
             let (z, uniform) = unfold(e, cell.splitting, stream);
             if self.range.allows(z, kappa2) {
                 let inverse_envelope = e * cell.inverse_bound;
-                return Some(Trial { t, z, splitting: cell.splitting, uniform, inverse_envelope });
+                return Some(Trial {
+                    t,
+                    z,
+                    splitting: cell.splitting,
+                    uniform,
+                    inverse_envelope,
+                });
             }
         }
     }
@@ -210,24 +240,41 @@ fn unfold(e: f64, splitting: Splitting, stream: &mut Stream) -> (f64, f64) {
 
 impl Rung {
     fn new(rate: &VacuumRate, splittings: &[Splitting], ln_t: f64, envelope_factor: f64) -> Rung {
-        let (low_t, high_t) = (libm::exp(ln_t), libm::exp(ln_t + RUNG_HEIGHT));
+        let (low_t, high_t) = (exp(ln_t), exp(ln_t + RUNG_HEIGHT));
         let mut cells = Vec::new();
         let mut masses = Vec::new();
         for &splitting in splittings {
             for [low_e, high_e] in cell_edges(&rate.range, splitting, high_t) {
                 let bound = cell_bound(rate, splitting, [low_t, high_t], [low_e, high_e]);
                 let bound = bound * envelope_factor * (1.0 + ROUNDING_MARGIN);
-                let (ln_e, width) = (libm::log(low_e), libm::log(high_e / low_e));
+                let (ln_e, width) = (ln(low_e), ln(high_e / low_e));
                 masses.push(bound / TAU * width);
                 // Half of a folded density lies on each of the two mirror images.
-                let images = if splitting == Splitting::QuarkToQuarkGluon { 1.0 } else { 2.0 };
-                cells.push(Cell { keep: 1.0, alias: 0, ln_e, width, inverse_bound: images / bound, splitting });
+                let images = if splitting == Splitting::QuarkToQuarkGluon {
+                    1.0
+                } else {
+                    2.0
+                };
+                cells.push(Cell {
+                    keep: 1.0,
+                    alias: 0,
+                    ln_e,
+                    width,
+                    inverse_bound: images / bound,
+                    splitting,
+                });
             }
         }
         let rate: f64 = masses.iter().sum();
         alias(&mut cells, &masses);
         // A rung without cells (all splittings off) is never entered from above, as its integral does not grow.
-        Rung { integral_below: 0.0, rate, inverse_rate: 1.0 / rate, ln_t, cells }
+        Rung {
+            integral_below: 0.0,
+            rate,
+            inverse_rate: 1.0 / rate,
+            ln_t,
+            cells,
+        }
     }
 
     #[inline]
@@ -239,9 +286,12 @@ impl Rung {
         let (cell, place) = if place < own.keep {
             (own, place / own.keep)
         } else {
-            (&self.cells[own.alias], (place - own.keep) / (1.0 - own.keep))
+            (
+                &self.cells[own.alias],
+                (place - own.keep) / (1.0 - own.keep),
+            )
         };
-        (libm::exp(cell.ln_e + place * cell.width), cell)
+        (exp(cell.ln_e + place * cell.width), cell)
     }
 }
 
@@ -252,31 +302,50 @@ fn splittings(settings: &ShowerSettings, is_gluon: bool) -> Vec<Splitting> {
         (Splitting::GluonToGluons, kernels.g_gg && is_gluon),
         (Splitting::GluonToQuarks, kernels.g_qq && is_gluon),
     ];
-    known.into_iter().filter(|(_, on)| *on).map(|(splitting, _)| splitting).collect()
+    known
+        .into_iter()
+        .filter(|(_, on)| *on)
+        .map(|(splitting, _)| splitting)
+        .collect()
 }
 
 /// Edges of the cells in e that cover the range at `high_t`, the widest of the rung.
 fn cell_edges(range: &FractionRange, splitting: Splitting, high_t: f64) -> Vec<[f64; 2]> {
     let smallest = range.smallest(high_t);
-    let largest = if splitting == Splitting::QuarkToQuarkGluon { 1.0 - smallest } else { 0.5 };
-    let width = libm::log(largest / smallest);
+    let largest = if splitting == Splitting::QuarkToQuarkGluon {
+        1.0 - smallest
+    } else {
+        0.5
+    };
+    let width = ln(largest / smallest);
     let count = (width / CELL_WIDTH).ceil().max(1.0) as usize;
     let edge = |place: usize| match place {
         0 => smallest,
         last if last == count => largest,
-        place => smallest * libm::exp(width * place as f64 / count as f64),
+        place => smallest * exp(width * place as f64 / count as f64),
     };
-    (0..count).map(|place| [edge(place), edge(place + 1)]).collect()
+    (0..count)
+        .map(|place| [edge(place), edge(place + 1)])
+        .collect()
 }
 
 /// 2 pi times a bound on e times the (folded) density in a cell: the coupling never grows with its scale, and the
 /// kernels' largest values lie at an end of the cell (proven below).
-fn cell_bound(rate: &VacuumRate, splitting: Splitting, [low_t, high_t]: [f64; 2], [low_e, high_e]: [f64; 2]) -> f64 {
+fn cell_bound(
+    rate: &VacuumRate,
+    splitting: Splitting,
+    [low_t, high_t]: [f64; 2],
+    [low_e, high_e]: [f64; 2],
+) -> f64 {
     // e(1-e) is concave, so its least value in the cell lies at an end.
     let soft = (low_e * (1.0 - low_e)).min(high_e * (1.0 - high_e));
     let kappa2 = (soft * low_t).max(rate.range.smallest_kappa2_gev2());
-    let alpha_s = rate.coupling.alpha_s(rate.coupling.scale_gev2(kappa2, low_t));
-    alpha_s * folded_kernel(rate, splitting, high_t, low_e).max(folded_kernel(rate, splitting, high_t, high_e))
+    let alpha_s = rate
+        .coupling
+        .alpha_s(rate.coupling.scale_gev2(kappa2, low_t));
+    alpha_s
+        * folded_kernel(rate, splitting, high_t, low_e)
+            .max(folded_kernel(rate, splitting, high_t, high_e))
 }
 
 /// e times the kernel as a function of the soft fraction e, both mirror images of a gluon's splitting together.
@@ -289,7 +358,9 @@ fn folded_kernel(rate: &VacuumRate, splitting: Splitting, t: f64, e: f64) -> f64
     match splitting {
         Splitting::QuarkToQuarkGluon => C_F * (1.0 + z * z),
         Splitting::GluonToGluons => 2.0 * C_A * (1.0 - e * z) * (1.0 - e * z) / z,
-        Splitting::GluonToQuarks => 2.0 * T_R * f64::from(rate.flavours.open(t)) * e * (e * e + z * z),
+        Splitting::GluonToQuarks => {
+            2.0 * T_R * f64::from(rate.flavours.open(t)) * e * (e * e + z * z)
+        }
     }
 }
 
@@ -297,7 +368,8 @@ fn folded_kernel(rate: &VacuumRate, splitting: Splitting, t: f64, e: f64) -> f64
 fn alias(cells: &mut [Cell], masses: &[f64]) {
     let mean = masses.iter().sum::<f64>() / masses.len() as f64;
     let mut shares: Vec<f64> = masses.iter().map(|mass| mass / mean).collect();
-    let (mut small, mut large): (Vec<usize>, Vec<usize>) = (0..cells.len()).partition(|&cell| shares[cell] < 1.0);
+    let (mut small, mut large): (Vec<usize>, Vec<usize>) =
+        (0..cells.len()).partition(|&cell| shares[cell] < 1.0);
     while let (Some(poor), Some(&rich)) = (small.pop(), large.last()) {
         cells[poor].keep = shares[poor];
         cells[poor].alias = rich;
@@ -322,7 +394,11 @@ mod tests {
             ordering: Ordering::Virtuality,
             z_range,
             lifetime: Lifetime::Exponential,
-            kernels: Kernels { q_qg: true, g_gg: true, g_qq: true },
+            kernels: Kernels {
+                q_qg: true,
+                g_gg: true,
+                g_qq: true,
+            },
             flavours: 5,
             flavour_opening: FlavourOpening::PairThreshold,
             envelope_factor: 1.0,
@@ -337,11 +413,30 @@ mod tests {
                 for loops in [Loops::One, Loops::Two] {
                     let settings = settings(z_range, 1.0);
                     let quark_masses_gev = [1.5, 4.75];
-                    let law = CouplingLaw::Running { loops, alpha_s_mz: 0.118, freeze_gev: 1.0 };
-                    let coupling = Coupling::new(&CouplingSettings { law, argument, quark_masses_gev }).unwrap();
-                    let range = FractionRange { end_t_gev2: 1.0, kind: z_range };
+                    let law = CouplingLaw::Running {
+                        loops,
+                        alpha_s_mz: 0.118,
+                        freeze_gev: 1.0,
+                    };
+                    let coupling = Coupling::new(&CouplingSettings {
+                        law,
+                        argument,
+                        quark_masses_gev,
+                    })
+                    .unwrap();
+                    let range = FractionRange {
+                        end_t_gev2: 1.0,
+                        kind: z_range,
+                    };
                     let flavours = FlavourRule::new(&settings, quark_masses_gev);
-                    rates.push((VacuumRate { coupling, range, flavours }, settings));
+                    rates.push((
+                        VacuumRate {
+                            coupling,
+                            range,
+                            flavours,
+                        },
+                        settings,
+                    ));
                 }
             }
         }
@@ -365,7 +460,11 @@ mod tests {
                         (allowed, sum) = (allowed + 1, sum + ratio);
                     }
                 }
-                assert!(sum / allowed as f64 > 0.6, "efficiency {}", sum / allowed as f64);
+                assert!(
+                    sum / allowed as f64 > 0.6,
+                    "efficiency {}",
+                    sum / allowed as f64
+                );
             }
         }
     }
@@ -382,11 +481,17 @@ mod tests {
         for id in 0..runs {
             let mut stream = Key::event(5, id).stream(Purpose::VACUUM);
             let mut height = stairs.height(100.0).unwrap();
-            while stairs.propose(&mut height, &mut stream, &mut total).is_some() {}
+            while stairs
+                .propose(&mut height, &mut stream, &mut total)
+                .is_some()
+            {}
         }
         // Each evolution's last proposal falls below the cutoff.
         let found = (total - runs) as f64 / runs as f64;
         let error = (expected / runs as f64).sqrt();
-        assert!((found - expected).abs() < 5.0 * error, "{found} against {expected} +- {error}");
+        assert!(
+            (found - expected).abs() < 5.0 * error,
+            "{found} against {expected} +- {error}"
+        );
     }
 }

@@ -49,7 +49,7 @@ pub fn load(path: &Path) -> Result<RunPlan, ConfigErrors> {
 /// # Errors
 /// Everything that is wrong with it, all at once: see [`Problem`].
 pub fn load_with(path: &Path, overrides: &Overrides) -> Result<RunPlan, ConfigErrors> {
-    let text = read(path).map_err(|error| alone(path, error))?;
+    let text = read(path)?;
     load_text(&text, path, overrides)
 }
 
@@ -58,7 +58,7 @@ pub fn load_with(path: &Path, overrides: &Overrides) -> Result<RunPlan, ConfigEr
 /// # Errors
 /// As [`load_with`].
 pub fn load_text(text: &str, path: &Path, overrides: &Overrides) -> Result<RunPlan, ConfigErrors> {
-    let mut root = parse(text).map_err(|error| alone(path, error))?;
+    let mut root = parse(text, path)?;
     add_missing(&mut root, overrides);
     let lines = Lines::of(text);
     let mut report = Report::default();
@@ -99,99 +99,100 @@ fn plan(resolved: Value, folder: &Path, inputs: Vec<InputFile>, warnings: Vec<St
     }
 }
 
-fn alone(path: &Path, error: ConfigError) -> ConfigErrors {
-    ConfigErrors {
-        file: path.to_owned(),
-        errors: vec![error],
-        omitted: 0,
-    }
-}
-
-/// An error of the whole file.
-fn whole(
+/// What is wrong with the file as a whole.
+struct Whole {
     problem: Problem,
     line: Option<usize>,
-    found: impl Into<String>,
-    allowed: impl Into<String>,
-    remedy: impl Into<String>,
-) -> ConfigError {
-    ConfigError {
-        problem,
-        line,
-        path: String::new(),
-        found: found.into(),
-        allowed: allowed.into(),
-        remedy: remedy.into(),
-        nearest: None,
+    found: String,
+    allowed: &'static str,
+    remedy: &'static str,
+}
+
+impl Whole {
+    fn unreadable(found: String, remedy: &'static str) -> Self {
+        Whole {
+            problem: Problem::Unreadable,
+            line: None,
+            found,
+            allowed: "a readable file of JSON",
+            remedy,
+        }
+    }
+
+    fn syntax(line: usize, found: &str, allowed: &'static str, remedy: &'static str) -> Self {
+        Whole {
+            problem: Problem::Syntax,
+            line: Some(line),
+            found: found.to_owned(),
+            allowed,
+            remedy,
+        }
+    }
+
+    fn of(self, path: &Path) -> ConfigErrors {
+        ConfigErrors {
+            file: path.to_owned(),
+            errors: vec![ConfigError {
+                problem: self.problem,
+                line: self.line,
+                path: String::new(),
+                found: self.found,
+                allowed: self.allowed.to_owned(),
+                remedy: self.remedy.to_owned(),
+                nearest: None,
+            }],
+            omitted: 0,
+        }
     }
 }
 
-fn read(path: &Path) -> Result<String, ConfigError> {
-    let unreadable = |found: String, remedy: &str| {
-        whole(
-            Problem::Unreadable,
-            None,
-            found,
-            "a readable file of JSON",
-            remedy,
-        )
-    };
+fn read(path: &Path) -> Result<String, ConfigErrors> {
     let mut bytes = Vec::new();
     File::open(path)
         .and_then(|file| file.take(MAX_CONFIG_BYTES + 1).read_to_end(&mut bytes))
         .map_err(|error| {
-            unreadable(error.to_string(), "check the name and that you may read it")
+            Whole::unreadable(error.to_string(), "check the name and that you may read it").of(path)
         })?;
     if bytes.len() as u64 > MAX_CONFIG_BYTES {
-        return Err(unreadable(
-            format!("more than {MAX_CONFIG_BYTES} bytes"),
-            "check that this is a config: none is as large",
-        ));
+        let found = format!("more than {MAX_CONFIG_BYTES} bytes");
+        let remedy = "check that this is a config: none is as large";
+        return Err(Whole::unreadable(found, remedy).of(path));
     }
-    String::from_utf8(bytes).map_err(|error| not_utf8(&error))
+    String::from_utf8(bytes).map_err(|error| not_utf8(&error).of(path))
 }
 
-fn not_utf8(error: &std::string::FromUtf8Error) -> ConfigError {
+fn not_utf8(error: &std::string::FromUtf8Error) -> Whole {
     let valid = &error.as_bytes()[..error.utf8_error().valid_up_to()];
     let line = 1 + valid.iter().filter(|byte| **byte == b'\n').count();
-    whole(
-        Problem::Syntax,
-        Some(line),
+    Whole::syntax(
+        line,
         "bytes that are no UTF-8",
         "text in UTF-8",
         "save the file as UTF-8",
     )
 }
 
-fn parse(text: &str) -> Result<Node, ConfigError> {
-    let object = "one JSON object, { \"events\": ..., \"source\": { ... } }";
+fn parse(text: &str, path: &Path) -> Result<Node, ConfigErrors> {
     if text.starts_with(BYTE_ORDER_MARK) {
-        return Err(whole(
-            Problem::Syntax,
-            Some(1),
+        return Err(Whole::syntax(
+            1,
             "a byte order mark",
             "text in UTF-8 without a byte order mark",
             "save the file as UTF-8 without a byte order mark",
-        ));
+        )
+        .of(path));
     }
     if text.trim().is_empty() {
-        let remedy = "write a config: `spindrift schema` says what it may hold";
-        return Err(whole(
-            Problem::Syntax,
-            Some(1),
+        return Err(Whole::syntax(
+            1,
             "an empty file",
-            object,
-            remedy,
-        ));
+            "one JSON object, { \"events\": ..., \"source\": { ... } }",
+            "write a config: `spindrift schema` says what it may hold",
+        )
+        .of(path));
     }
     raw::parse(text).map_err(|error| {
-        whole(
-            Problem::Syntax,
-            Some(error.line),
-            error.found,
-            error.allowed,
-            error.remedy,
-        )
+        Whole::syntax(error.line, &error.found, error.allowed, error.remedy).of(path)
     })
 }
 

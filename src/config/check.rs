@@ -103,19 +103,24 @@ impl Checker<'_, '_> {
         let members = self.without_duplicates(path, members);
         // The keys of planned kinds are not all in the table.
         let names_known = !has_planned_kind(section, &members);
+        let mut misspelt = Vec::new();
         for member in &members {
             match section.key(&member.name) {
-                Some(key) => self.usable(path, section, &members, key, member.at),
                 None if names_known => {
-                    self.complain(&path_of(path, &member.name), member.at, || {
-                        unknown_key(section, &members, &member.name)
-                    });
+                    misspelt.extend(self.unknown(path, section, &members, member));
                 }
-                None => {}
+                Some(key) if key.built || names_known => {
+                    self.usable(path, section, &members, key, member.at);
+                }
+                _ => {}
             }
         }
         let mut resolved = Map::new();
         for key in section.built_keys() {
+            let absent = members.iter().all(|member| member.name != key.name);
+            if absent && misspelt.iter().any(|name| name == key.name) {
+                continue;
+            }
             if let Some(value) = self.key(path, section, key, &members, node.at)
                 && !matches!(key.form, Form::SchemaAddress)
             {
@@ -143,6 +148,23 @@ impl Checker<'_, '_> {
             }
         }
         distinct
+    }
+
+    /// Tells of an unknown key; returns the key that was probably meant, whose absence is then no second error.
+    fn unknown(
+        &mut self,
+        path: &str,
+        section: &'static Section,
+        members: &[&Member],
+        member: &Member,
+    ) -> Option<String> {
+        let mut meant = None;
+        self.complain(&path_of(path, &member.name), member.at, || {
+            let complaint = unknown_key(section, members, &member.name);
+            meant.clone_from(&complaint.nearest);
+            complaint
+        });
+        meant
     }
 
     /// Is the key built, and do the chosen kinds use it?

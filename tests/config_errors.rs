@@ -217,6 +217,23 @@ fn input_files() {
     check(FILES);
 }
 
+/// From alpha_s(1 GeV) of an independent evaluation (0.362369 at one loop, 0.454131 at two, with the default masses and
+/// reference value), the closed solutions with three flavours reach alpha_s = 1 at 0.2927 and 0.5411 GeV.
+#[test]
+fn the_coupling_may_freeze_only_where_it_is_below_one() {
+    let coupling = |loops: u8, freeze: f64| {
+        let text = format!(r#""coupling": {{ "loops": {loops}, "freeze_GeV": {freeze} }},"#);
+        with_line(10, &text)
+    };
+    for (loops, refused, accepted) in [(1, 0.2917, 0.2937), (2, 0.5401, 0.5421)] {
+        let errors = errors_of(&coupling(loops, refused));
+        assert_eq!(errors.errors[0].path, "coupling.freeze_GeV");
+        read(&coupling(loops, accepted)).unwrap();
+    }
+    errors_of(&with_line(10, r#""coupling": { "alpha_s_mz": 0.5 },"#));
+    errors_of(&with_line(10, r#""coupling": { "alpha_s_mz": 0.999999999, "loops": 2 },"#));
+}
+
 /// The pair has another shape, so its cases are whole configs.
 #[test]
 fn rules_of_the_pair() {

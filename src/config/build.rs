@@ -150,6 +150,16 @@ pub fn coupling(root: Checked) -> CouplingSettings {
     }
 }
 
+/// The settings of a running coupling, where all of them are there and the masses ascend (before errors are told).
+pub fn running_coupling(root: Checked) -> Option<CouplingSettings> {
+    let section = root.0.get("coupling")?;
+    let keys = ["argument", "loops", "alpha_s_mz", "freeze_GeV"];
+    let masses = root.0.get("quark_masses_GeV")?.as_array()?;
+    let complete = keys.iter().all(|key| section.get(key).is_some());
+    let ascending = masses[0].as_f64()? < masses[1].as_f64()?;
+    (complete && ascending).then(|| coupling(root))
+}
+
 /// The shower's choices.
 pub fn shower(section: Checked) -> ShowerSettings {
     let kernels = section.list("kernels");

@@ -4,7 +4,7 @@
 //! text -> raw (nodes with their places) -> check (against the table of keys) -> rules (across keys) -> plan
 //! ```
 //!
-//! One table ([`keys`]) says what a config may hold. The checker, the suggestions for misspelt keys, the resolved
+//! One table (`keys`) says what a config may hold. The checker, the suggestions for misspelt keys, the resolved
 //! config with every default filled in and the JSON Schema are all made from it.
 
 mod build;

@@ -3,9 +3,11 @@
 
 use serde_json::Value;
 
+use super::build::{self, Checked};
 use super::check::Places;
 use super::error::{ConfigError, Problem, Report};
-use crate::qcd::Species;
+use crate::qcd::coupling::CouplingError;
+use crate::qcd::{Coupling, Species};
 
 /// From here on a temperature is worth a warning.
 const WARM_GEV: f64 = 1.0;
@@ -26,6 +28,7 @@ pub fn check(resolved: &Value, places: &Places, report: &mut Report) -> Vec<Stri
     rules.pair();
     rules.direction();
     rules.quark_masses();
+    rules.coupling();
     rules.kernels();
     rules.collinear_in_medium();
     rules.temperatures();
@@ -151,7 +154,7 @@ impl<'a> Rules<'a, '_> {
         let path = "source.direction";
         let vector: Vec<_> = self.list(path).iter().filter_map(Value::as_f64).collect();
         let [x, y, z] = vector[..] else { return };
-        if super::build::unit_vector([x, y, z]).is_none() {
+        if build::unit_vector([x, y, z]).is_none() {
             self.refuse(
                 path,
                 format!("[{x:?}, {y:?}, {z:?}]"),
@@ -185,6 +188,25 @@ impl<'a> Rules<'a, '_> {
                 "write the smaller mass first",
             );
         }
+    }
+
+    /// The coupling itself refuses to run into its pole.
+    fn coupling(&mut self) {
+        let settings = build::running_coupling(Checked(self.resolved));
+        let Some(Err(error)) = settings.map(|settings| Coupling::new(&settings)) else {
+            return;
+        };
+        let CouplingError::TooStrong {
+            freeze_gev,
+            scale_gev,
+            largest,
+        } = error;
+        self.refuse(
+            "coupling.freeze_GeV",
+            format!("{freeze_gev:?} GeV, with alpha_s = {largest:.3} at {scale_gev:.4} GeV"),
+            "a scale above the Landau pole, where alpha_s is still below 1",
+            "raise freeze_GeV or lower alpha_s_mz",
+        );
     }
 
     fn kernels(&mut self) {

@@ -1,1 +1,3 @@
-//! placeholder
+//! Small numerical tools that physics modules share.
+
+pub mod vectors;

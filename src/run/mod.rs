@@ -1,1 +1,3 @@
-//! placeholder
+//! The run: event numbers in, ordered blocks of events out.
+
+pub mod generator;

@@ -1,9 +1,13 @@
 //! Temperature fields: temperature and flow along a light-like ray.
 
 mod brick;
+mod data;
+mod grid;
 mod longitudinal;
 
 pub use brick::Brick;
+pub use data::FieldData;
+pub use grid::Grid;
 pub use longitudinal::Longitudinal;
 
 /// A light-like ray: place of birth (lab frame, fm) and unit direction.

@@ -231,7 +231,10 @@ fn the_coupling_may_freeze_only_where_it_is_below_one() {
         read(&coupling(loops, accepted)).unwrap();
     }
     errors_of(&with_line(10, r#""coupling": { "alpha_s_mz": 0.5 },"#));
-    errors_of(&with_line(10, r#""coupling": { "alpha_s_mz": 0.999999999, "loops": 2 },"#));
+    errors_of(&with_line(
+        10,
+        r#""coupling": { "alpha_s_mz": 0.999999999, "loops": 2 },"#,
+    ));
 }
 
 /// The pair has another shape, so its cases are whole configs.

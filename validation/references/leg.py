@@ -14,14 +14,14 @@ import numpy as np
 from scipy.interpolate import CubicHermiteSpline
 
 import conventions as qcd
-from quadrature import antiderivative_matrix, gauss, integrate_rows
+from quadrature import antiderivative_matrix, gauss, integrate_rows, thinned
 
 ORDER = 10
 PANELS = 96
 # The integrand's nearest poles in u lie at a distance of pi, segments reach half a length of 6: 1.65^(-2 order).
 INNER_ORDER = 32
-Z_POINTS = 300
-T_POINTS = 300
+Z_PANELS, Z_ORDER = 1600, 2
+T_POINTS = 20000
 CHUNK_ROWS = 64
 
 
@@ -132,6 +132,16 @@ class Leg:
             kinks += self.medium.kinks_in_t_at(u)
         return np.array(kinks).reshape(len(kinks), u.size).T
 
+    def kinks_in_first_z(self, widest):
+        """Values of u at which the distribution of the first z has a kink."""
+        if self.medium is None:
+            return np.zeros(0)
+        # Where the regime's edge meets t_max, and where it meets the edge of the z range.
+        meets = np.array([self.t_max, *self.medium.kinks_in_t(self)])
+        kinks = np.unique(np.array(self.medium.kinks_in_u(meets)).ravel())
+        kinks = kinks[kinks < widest]
+        return np.concatenate([-kinks, kinks])
+
     def panel_edges(self, panels):
         low, high = self.y_range
         # Above a kink the z-integrated density grows like a root: panels shrink towards it.
@@ -189,27 +199,35 @@ class Leg:
         return float(np.exp(-self.exponent))
 
     def first_t(self, points=T_POINTS):
-        """Grid in ln t and P(first t < t), unconditional: survival to t0 is left out, so the last value is 1 - Delta."""
+        """ln t and P(first branching below t), unconditional: it ends at 1 - Delta."""
         y = np.linspace(*self.y_range, points + 1)
         survival = np.exp(-self.survival_spline(y))
-        return np.log(self.t_of(y)), survival - survival[0]
+        return self._thinned(np.log(self.t_of(y)), survival - survival[0])
 
-    def first_z(self, channel, points=Z_POINTS, part="all"):
-        """Grid in u and P(first branching in this channel with u' < u), unconditional."""
-        low, high = self.y_range
-        widest = float(self.widest_u(np.array([high]))[0])
-        grid = np.linspace(-widest, widest, points + 1)
-        nodes, weights = gauss(4)
+    def first_z(self, channel, part="all", panels=Z_PANELS):
+        """u and P(first branching in this channel and below u), unconditional."""
+        widest = float(self.widest_u(np.array([self.y_range[1]]))[0])
+        ends = np.linspace(-widest, widest, panels + 1)
+        grid = np.unique(np.concatenate([ends, self.kinks_in_first_z(widest)]))
+        nodes, weights = gauss(Z_ORDER)
         half = 0.5 * np.diff(grid)
         u = (grid[:-1, None] + half[:, None] * (1.0 + nodes)).ravel()
         chunks = [self._density_in_u(channel, piece, part) for piece in np.array_split(u, max(1, u.size // CHUNK_ROWS))]
         per_panel = half * (np.concatenate(chunks).reshape(-1, nodes.size) @ weights)
-        return grid, np.concatenate([[0.0], np.cumsum(per_panel)])
+        return self._thinned(grid, np.concatenate([[0.0], np.cumsum(per_panel)]))
+
+    def _thinned(self, x, cumulative):
+        """The points to store; keeps the largest error of linear interpolation between them."""
+        few_x, few = thinned(x, cumulative)
+        error = float(np.max(np.abs(np.interp(x, few_x, few) - cumulative)))
+        self.interpolation_error = max(getattr(self, "interpolation_error", 0.0), error)
+        return few_x, few
 
     def _density_in_u(self, channel, u, part):
-        low, high = self.y_range
+        high = self.y_range[1]
         start = self.lowest_y(u)[:, None]
-        common = np.broadcast_to(self.panel_edges(24), (u.size, self.panel_edges(24).size))
+        panels = self.panel_edges(24)
+        common = np.broadcast_to(panels, (u.size, panels.size))
         edges = np.hstack([start, common, self.y_of(self.kinks_in_t_at(u)), np.full_like(start, high)])
         edges = np.sort(np.clip(edges, start, high), axis=1)
         column = u[:, None, None]

@@ -7,6 +7,8 @@ import numpy as np
 
 HERE = pathlib.Path(__file__).resolve().parent
 SIGNIFICANT_DIGITS = 12
+# Long columns are for interpolation, whose own error is larger.
+LONG_COLUMN, COLUMN_DIGITS = 50, 8
 
 
 def gauss(order):
@@ -33,17 +35,36 @@ def antiderivative_matrix(order):
     return np.array(columns).T
 
 
-def short(value):
-    """Plain Python values with floats cut to SIGNIFICANT_DIGITS."""
+def thinned(x, cumulative, tolerance=1e-5):
+    """A subset of the points from which linear interpolation gives all others within tolerance * (their range)."""
+    allowed = tolerance * np.ptp(cumulative)
+    keep, open_segments = {0, len(x) - 1}, [(0, len(x) - 1)]
+    while open_segments:
+        low, high = open_segments.pop()
+        if high - low < 2:
+            continue
+        inside = slice(low + 1, high)
+        line = np.interp(x[inside], x[[low, high]], cumulative[[low, high]])
+        distance = np.abs(cumulative[inside] - line)
+        worst = low + 1 + int(np.argmax(distance))
+        if distance[worst - low - 1] > allowed:
+            keep.add(worst)
+            open_segments += [(low, worst), (worst, high)]
+    chosen = sorted(keep)
+    return x[chosen], cumulative[chosen]
+
+
+def short(value, digits=SIGNIFICANT_DIGITS):
+    """Plain Python values with floats cut to so many significant digits."""
     if isinstance(value, dict):
         return {key: short(item) for key, item in value.items()}
     if isinstance(value, (list, tuple, np.ndarray)):
-        return [short(item) for item in value]
+        return [short(item, COLUMN_DIGITS if len(value) > LONG_COLUMN else digits) for item in value]
     if isinstance(value, (bool, np.bool_, str)) or value is None:
         return bool(value) if isinstance(value, np.bool_) else value
     if isinstance(value, (int, np.integer)):
         return int(value)
-    return float(f"{float(value):.{SIGNIFICANT_DIGITS}g}")
+    return float(f"{float(value):.{digits}g}")
 
 
 def text_of(value, depth=0):

@@ -54,8 +54,16 @@ impl Axis {
             cell as u32
         });
         let guide = guide.collect();
-        let inverse_widths = points.windows(2).map(|pair| 1.0 / (pair[1] - pair[0])).collect();
-        Axis { guide, bins_per_unit: bins as f64 / span, inverse_widths, points }
+        let inverse_widths = points
+            .windows(2)
+            .map(|pair| 1.0 / (pair[1] - pair[0]))
+            .collect();
+        Axis {
+            guide,
+            bins_per_unit: bins as f64 / span,
+            inverse_widths,
+            points,
+        }
     }
 
     fn first(&self) -> f64 {
@@ -79,7 +87,10 @@ impl Axis {
         while cell > 0 && self.points[cell] > inside {
             cell -= 1;
         }
-        (cell, ((inside - self.points[cell]) * self.inverse_widths[cell]) as f32)
+        (
+            cell,
+            ((inside - self.points[cell]) * self.inverse_widths[cell]) as f32,
+        )
     }
 
     /// The stretch of distances in which start + speed * l lies on the axis.
@@ -88,7 +99,10 @@ impl Axis {
             let inside = (self.first()..=self.last()).contains(&start);
             return inside.then_some([0.0, f64::INFINITY]);
         }
-        let ends = [(self.first() - start) / speed, (self.last() - start) / speed];
+        let ends = [
+            (self.first() - start) / speed,
+            (self.last() - start) / speed,
+        ];
         Some([ends[0].min(ends[1]), ends[0].max(ends[1])])
     }
 
@@ -102,13 +116,30 @@ impl Grid {
     pub fn new(data: FieldData) -> Grid {
         let count = data.temperature_gev.len();
         let values = (0..count).map(|place| {
-            let flow = data.flow.as_ref().map_or([0.0; 3], |flow| [flow[0][place], flow[1][place], flow[2][place]]);
+            let flow = data.flow.as_ref().map_or([0.0; 3], |flow| {
+                [flow[0][place], flow[1][place], flow[2][place]]
+            });
             [data.temperature_gev[place], flow[0], flow[1], flow[2]]
         });
         let values = values.collect();
-        let (tau, x, y) = (Axis::new(data.tau_fm), Axis::new(data.x_fm), Axis::new(data.y_fm));
-        let spacing_fm = x.mean_spacing().min(y.mean_spacing()).min(tau.mean_spacing());
-        Grid { tau, x, y, eta: data.eta.map(Axis::new), values, has_flow: data.flow.is_some(), spacing_fm }
+        let (tau, x, y) = (
+            Axis::new(data.tau_fm),
+            Axis::new(data.x_fm),
+            Axis::new(data.y_fm),
+        );
+        let spacing_fm = x
+            .mean_spacing()
+            .min(y.mean_spacing())
+            .min(tau.mean_spacing());
+        Grid {
+            tau,
+            x,
+            y,
+            eta: data.eta.map(Axis::new),
+            values,
+            has_flow: data.flow.is_some(),
+            spacing_fm,
+        }
     }
 
     /// Interpolated values at Milne coordinates; `None` outside the rapidity axis.
@@ -157,9 +188,14 @@ fn trilinear(
 impl TemperatureField for Grid {
     fn stretch(&self, ray: &Ray, _end_temperature_gev: f64) -> Option<Stretch> {
         let mut first_fm = ray.distance_to_proper_time(self.tau.first())?;
-        let mut last_fm = ray.distance_to_proper_time(self.tau.last()).unwrap_or(f64::INFINITY);
+        let mut last_fm = ray
+            .distance_to_proper_time(self.tau.last())
+            .unwrap_or(f64::INFINITY);
         let [_, x, y, _] = ray.birth_fm;
-        for (axis, start, speed) in [(&self.x, x, ray.direction[0]), (&self.y, y, ray.direction[1])] {
+        for (axis, start, speed) in [
+            (&self.x, x, ray.direction[0]),
+            (&self.y, y, ray.direction[1]),
+        ] {
             let [enter, leave] = axis.crossing(start, speed)?;
             first_fm = first_fm.max(enter);
             last_fm = last_fm.min(leave);
@@ -168,7 +204,11 @@ impl TemperatureField for Grid {
             return None;
         }
         let cells = (CELLS_PER_SPACING * (last_fm - first_fm) / self.spacing_fm).ceil();
-        Some(Stretch { first_fm, last_fm, cells: cells.clamp(1.0, MOST_CELLS) as usize })
+        Some(Stretch {
+            first_fm,
+            last_fm,
+            cells: cells.clamp(1.0, MOST_CELLS) as usize,
+        })
     }
 
     #[inline]
@@ -180,13 +220,19 @@ impl TemperatureField for Grid {
             return Local::EMPTY;
         };
         if !self.has_flow {
-            return Local { temperature_gev: temperature, flow_factor: 1.0 };
+            return Local {
+                temperature_gev: temperature,
+                flow_factor: 1.0,
+            };
         }
         let [nx, ny, nz] = ray.direction;
         let utau = (1.0 + ux * ux + uy * uy + ueta * ueta).sqrt();
         // Milne to lab: u^t = u^tau cosh eta + (tau u^eta) sinh eta and u^z likewise, with cosh eta = t/tau.
         let longitudinal = (utau * (t - nz * z) + ueta * (z - nz * t)) / tau;
-        Local { temperature_gev: temperature, flow_factor: longitudinal - nx * ux - ny * uy }
+        Local {
+            temperature_gev: temperature,
+            flow_factor: longitudinal - nx * ux - ny * uy,
+        }
     }
 
     fn has_artificial_edge(&self) -> bool {

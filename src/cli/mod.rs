@@ -2,6 +2,7 @@
 
 pub mod audit;
 pub mod field;
+pub mod schema;
 pub mod show;
 
 /// Exit code of a request that cannot be served.

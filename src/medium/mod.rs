@@ -1,6 +1,15 @@
 //! The hot medium: a temperature field, a transport model, path integrals, and effects on branching rates.
 
+pub mod effects;
 pub mod field;
+pub mod path;
+pub mod trace;
+pub mod transport;
+
+use effects::RateEffect;
+use effects::collinear_expansion::CollinearExpansion;
+use field::TemperatureField;
+use transport::Transport;
 
 /// Everything a medium is made of.
 #[derive(Clone, Debug, PartialEq)]
@@ -128,6 +137,83 @@ impl EffectSettings {
     pub fn name(&self) -> &'static str {
         match self {
             EffectSettings::CollinearExpansion { .. } => "collinear-expansion",
+        }
+    }
+}
+
+/// A medium ready for use: field, transport and effects put together.
+pub struct Medium {
+    field: Box<dyn TemperatureField>,
+    end_temperature_gev: f64,
+    transport: Transport,
+    effects: Vec<Box<dyn RateEffect>>,
+    limit_to_small_angles: bool,
+    min_energy_gev: f64,
+}
+
+impl Medium {
+    /// Puts a medium together around a field that is already in memory.
+    pub fn new(settings: &MediumSettings, field: Box<dyn TemperatureField>) -> Medium {
+        Medium {
+            field,
+            end_temperature_gev: settings.field.end_temperature_gev,
+            transport: Transport::new(&settings.transport),
+            effects: effect_names(&settings.effects)
+                .into_iter()
+                .zip(&settings.effects)
+                .map(build)
+                .collect(),
+            limit_to_small_angles: settings.limit_to_small_angles,
+            min_energy_gev: settings.min_energy_gev,
+        }
+    }
+
+    /// The effects in config order.
+    pub fn effects(&self) -> &[Box<dyn RateEffect>] {
+        &self.effects
+    }
+
+    /// A parton below this lab energy in GeV sees no medium.
+    pub fn min_energy_gev(&self) -> f64 {
+        self.min_energy_gev
+    }
+
+    /// Whether induced emissions are limited to small angles.
+    pub fn limits_angles(&self) -> bool {
+        self.limit_to_small_angles
+    }
+
+    /// Whether an induced emission is inside the small-angle limit kappa < omega:
+    /// z(1-z) t <= min(z, 1-z)^2 E^2 (always true when the limit is off).
+    #[inline]
+    pub fn allows_angle(&self, t_gev2: f64, z: f64, energy_gev: f64) -> bool {
+        let omega = z.min(1.0 - z) * energy_gev;
+        !self.limit_to_small_angles || z * (1.0 - z) * t_gev2 <= omega * omega
+    }
+}
+
+/// Names of the effects' channels: the kind, with a number from the second of the same kind on.
+pub fn effect_names(effects: &[EffectSettings]) -> Vec<String> {
+    let name = |place: usize| {
+        let kind = effects[place].name();
+        let earlier = effects[..place]
+            .iter()
+            .filter(|other| other.name() == kind)
+            .count();
+        if earlier == 0 {
+            kind.to_string()
+        } else {
+            format!("{kind}-{}", earlier + 1)
+        }
+    };
+    (0..effects.len()).map(name).collect()
+}
+
+/// The registry of effects.
+fn build((name, settings): (String, &EffectSettings)) -> Box<dyn RateEffect> {
+    match settings {
+        EffectSettings::CollinearExpansion { phase } => {
+            Box::new(CollinearExpansion::new(name, *phase))
         }
     }
 }

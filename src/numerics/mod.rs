@@ -1,1 +1,4 @@
-//! placeholder
+//! Small numerical tools that physics modules share.
+
+pub mod elementary;
+pub mod vectors;

@@ -1,4 +1,29 @@
-//! The shower.
+//! The parton shower: a Sudakov-veto engine ordered in virtuality.
+//!
+//! A parton evolves down from its largest virtuality with the no-branching probability
+//!
+//! Delta(t_max, t) = exp( - int_t^{t_max} dt'/t' int_{z-}^{z+} dz alpha_s/(2 pi) sum P ),
+//!
+//! drawn by the veto algorithm (leading logarithm; Ellis, Stirling & Webber, "QCD and Collider Physics", chapter 5).
+//! Read in this order: `leg` (one parton), `ordering` (a pair), `tree` (a jet); `proposal` makes trials, `accept`
+//! judges them, `kinematics` turns fractions into momenta.
+
+pub mod accept;
+pub mod counters;
+pub mod kinematics;
+pub mod leg;
+pub mod ordering;
+pub mod proposal;
+pub mod tree;
+
+use crate::medium::Medium;
+use crate::qcd::{Coupling, CouplingError, CouplingSettings};
+use crate::random::{Key, Purpose};
+use crate::source::HardProcess;
+use leg::Evolution;
+use proposal::FractionRange;
+use proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use tree::{Record, Tools, Walker};
 
 /// The shower's choices.
 #[derive(Clone, Debug, PartialEq)]
@@ -69,4 +94,83 @@ pub enum FlavourOpening {
     PairThreshold,
     /// Always.
     Always,
+}
+
+/// A shower ready to run: immutable, shared by all workers.
+pub struct Shower {
+    evolution: Evolution,
+    settings: ShowerSettings,
+}
+
+impl Shower {
+    /// Prepares envelopes for start virtualities (not squared) up to `largest_virtuality_gev`.
+    ///
+    /// # Errors
+    /// [`CouplingError`] where the coupling cannot be had down to its freezing scale.
+    pub fn new(
+        settings: &ShowerSettings,
+        coupling: &CouplingSettings,
+        medium: Option<Medium>,
+        largest_virtuality_gev: f64,
+    ) -> Result<Shower, CouplingError> {
+        let end_t_gev2 = settings.virtuality_cutoff_gev * settings.virtuality_cutoff_gev;
+        let rate = VacuumRate {
+            coupling: Coupling::new(coupling)?,
+            range: FractionRange {
+                end_t_gev2,
+                kind: settings.z_range,
+            },
+            flavours: FlavourRule::new(settings, coupling.quark_masses_gev),
+        };
+        let largest_t = largest_virtuality_gev * largest_virtuality_gev;
+        let stairs =
+            [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));
+        // Without effects nothing of the medium can act: the vacuum to the last bit.
+        let medium = medium.filter(|medium| !medium.effects().is_empty());
+        let effect_purposes = match &medium {
+            Some(medium) => medium
+                .effects()
+                .iter()
+                .map(|effect| Purpose::named(effect.name()))
+                .collect(),
+            None => Vec::new(),
+        };
+        let evolution = Evolution {
+            rate,
+            stairs,
+            medium,
+            effect_purposes,
+            envelope_factor: settings.envelope_factor,
+        };
+        Ok(Shower {
+            evolution,
+            settings: settings.clone(),
+        })
+    }
+
+    /// Working memory for one worker.
+    pub fn walker(&self) -> Walker {
+        Walker::new(self.evolution.effect_purposes.len())
+    }
+
+    /// Showers a hard process born at `origin_fm` (`[t, x, y, z]`); returns the shower's weight.
+    pub fn shower(
+        &self,
+        walker: &mut Walker,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+        record: &mut Record,
+    ) -> f64 {
+        walker.walk(
+            Tools {
+                evolution: &self.evolution,
+                settings: &self.settings,
+            },
+            hard,
+            key,
+            origin_fm,
+            record,
+        )
+    }
 }

@@ -1,6 +1,37 @@
 //! Sources of hard partons.
 
+mod hard_process;
+mod pair;
+mod single;
+
+pub use hard_process::{HardParton, HardProcess, Topology};
+pub use pair::Pair;
+pub use single::Single;
+
+use rand::RngExt;
+
 use crate::qcd::Species;
+use crate::random::Stream;
+
+/// A source of hard processes.
+pub trait HardSource: Send + Sync {
+    /// Draws a hard process from the event's own stream.
+    fn draw(&self, stream: &mut Stream) -> HardProcess;
+
+    /// The largest start virtuality (not squared) that it can give, GeV.
+    fn largest_virtuality_gev(&self) -> f64;
+
+    /// Colour lines that stay open because the source has no recoiler.
+    fn open_colour_lines(&self) -> u32;
+}
+
+/// The registry of sources.
+pub fn build(settings: &SourceSettings) -> Box<dyn HardSource> {
+    match settings {
+        SourceSettings::Single(settings) => Box::new(Single::new(settings.clone())),
+        SourceSettings::Pair(settings) => Box::new(Pair::new(settings.clone())),
+    }
+}
 
 /// Which hard process, with its numbers.
 #[derive(Clone, Debug, PartialEq)]
@@ -44,4 +75,17 @@ pub enum Direction {
     Transverse,
     /// A unit vector.
     Along([f64; 3]),
+}
+
+impl Direction {
+    /// A unit vector: fixed, or with uniform azimuth at rapidity 0.
+    pub fn draw(&self, stream: &mut Stream) -> [f64; 3] {
+        match *self {
+            Direction::Along(vector) => vector,
+            Direction::Transverse => {
+                let (sin, cos) = libm::sincos(std::f64::consts::TAU * stream.random::<f64>());
+                [cos, sin, 0.0]
+            }
+        }
+    }
 }

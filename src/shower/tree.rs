@@ -1,0 +1,419 @@
+//! The tree of branchings, walked depth first: each pair of daughters is settled together, gets its momenta, and is
+//! recorded; daughters that branched wait on a stack.
+
+use rand::RngExt;
+use rand_distr::OpenClosed01;
+
+use std::f64::consts::TAU;
+
+use super::kinematics::{Frame, Place, direction, relative_transverse_gev2};
+use super::leg::{Branching, Evolution, Leg, Tally};
+use super::ordering::{Constraint, settle};
+use super::{Lifetime, Ordering, ShowerSettings};
+use crate::event::{CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, NO_PARENT, Parton, Status};
+use crate::medium::field::Ray;
+use crate::numerics::elementary::ln;
+use crate::qcd::kernels::Splitting;
+use crate::qcd::{FIRST_COLOUR_TAG, HBAR_C_GEV_FM, Species};
+use crate::random::{Key, Purpose};
+use crate::source::{HardProcess, Topology};
+
+/// Where the rows of an event go, and which of them are kept.
+pub struct Record<'a> {
+    /// The rows, those of earlier events first.
+    pub rows: &'a mut Vec<Parton>,
+    /// Keep branched partons too.
+    pub full_history: bool,
+}
+
+/// A parton that branched and whose daughters are not made yet.
+#[derive(Clone, Copy)]
+struct Node {
+    species: Species,
+    key: Key,
+    branching: Branching,
+    place: Place,
+    jet: usize,
+    vertex_fm: [f64; 4],
+    azimuth: [f64; 2],
+    colours: [i32; 2],
+    row: i32,
+}
+
+/// A parton whose virtuality is settled.
+struct Settled {
+    species: Species,
+    key: Key,
+    place: Place,
+    jet: usize,
+    birth_fm: [f64; 4],
+    colours: [i32; 2],
+    parent: i32,
+    splitting_fraction: f64,
+    channel: u8,
+}
+
+/// The working memory of one worker's showers.
+pub struct Walker {
+    legs: [Leg; 2],
+    stack: Vec<Node>,
+    frames: [Option<Frame>; 2],
+    next_colour: i32,
+    /// Row of the event's first parton in the record.
+    first_row: usize,
+    /// What judging changes.
+    pub tally: Tally,
+}
+
+impl Walker {
+    /// A walker for a number of effects.
+    pub fn new(effects: usize) -> Walker {
+        Walker {
+            legs: [Leg::idle(), Leg::idle()],
+            stack: Vec::new(),
+            frames: [None; 2],
+            next_colour: FIRST_COLOUR_TAG,
+            first_row: 0,
+            tally: Tally {
+                weight: 1.0,
+                counters: super::counters::ShowerCounters::new(effects),
+            },
+        }
+    }
+
+    /// Showers one hard process and appends its rows; returns the shower's weight.
+    pub fn walk(
+        &mut self,
+        tools: Tools,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+        record: &mut Record,
+    ) -> f64 {
+        self.tally.weight = 1.0;
+        self.stack.clear();
+        self.first_row = record.rows.len();
+        self.next_colour = hard.next_colour();
+        self.primaries(tools, hard, key, origin_fm, record);
+        while let Some(node) = self.stack.pop() {
+            self.daughters(tools, &node, record);
+        }
+        self.tally.weight
+    }
+
+    fn primaries(
+        &mut self,
+        tools: Tools,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+        record: &mut Record,
+    ) {
+        let partons = hard.partons();
+        let largest_t = hard.start_virtuality_gev * hard.start_virtuality_gev;
+        let keys = [key.daughter(0), key.daughter(1)];
+        for (place, parton) in partons.iter().enumerate() {
+            let leg = &mut self.legs[place];
+            leg.start(tools.evolution, parton.species, keys[place], largest_t);
+            let ray = Ray {
+                birth_fm: origin_fm,
+                direction: parton.direction,
+            };
+            leg.enter_medium(
+                tools.evolution,
+                keys[place],
+                largest_t,
+                (parton.energy_gev, ray),
+                &mut self.tally,
+            );
+        }
+        let constraint = match hard.topology {
+            Topology::Single => Constraint::None,
+            Topology::Pair { sqrt_s_gev } => Constraint::TwoBody { sqrt_s_gev },
+        };
+        let constraint = if tools.settings.ordering == Ordering::Collinear {
+            Constraint::None
+        } else {
+            constraint
+        };
+        let legs = &mut self.legs[..partons.len()];
+        let branchings = settle(
+            tools.evolution,
+            legs,
+            [largest_t; 2],
+            constraint,
+            &mut self.tally,
+        );
+        let virtualities =
+            branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
+        for (jet, parton) in partons.iter().enumerate() {
+            let plus_gev = match tools.settings.ordering {
+                Ordering::Collinear => 2.0 * parton.energy_gev,
+                Ordering::Virtuality => hard.plus_momentum_gev(jet, virtualities),
+            };
+            self.frames[jet] = Some(Frame::new(parton.direction, plus_gev));
+            let row = self.record_hard(hard, jet, origin_fm, record);
+            let settled = Settled {
+                species: parton.species,
+                key: keys[jet],
+                place: Place::PRIMARY,
+                jet,
+                birth_fm: origin_fm,
+                colours: parton.colours,
+                parent: row,
+                splitting_fraction: 1.0,
+                channel: CHANNEL_HARD_PROCESS,
+            };
+            self.settle_one(tools, settled, branchings[jet], jet, record);
+        }
+    }
+
+    fn record_hard(
+        &self,
+        hard: &HardProcess,
+        jet: usize,
+        origin_fm: [f64; 4],
+        record: &mut Record,
+    ) -> i32 {
+        let parton = &hard.partons()[jet];
+        let [nx, ny, nz] = parton.direction;
+        let e = parton.energy_gev;
+        record.rows.push(Parton {
+            momentum_gev: [e * nx, e * ny, e * nz, e],
+            birth_fm: origin_fm.map(|component| component as f32),
+            virtuality_squared_gev2: 0.0,
+            splitting_fraction: 1.0,
+            jet_fraction: 1.0,
+            pdg: parton.species.pdg(),
+            parent: NO_PARENT,
+            colour: parton.colours[0],
+            anticolour: parton.colours[1],
+            status: Status::Hard,
+            channel: CHANNEL_HARD_PROCESS,
+        });
+        (record.rows.len() - 1 - self.first_row) as i32
+    }
+
+    /// Makes the daughters of a branched parton.
+    fn daughters(&mut self, tools: Tools, node: &Node, record: &mut Record) {
+        self.tally.counters.branchings += 1;
+        let Branching {
+            t,
+            z,
+            daughters,
+            channel,
+        } = node.branching;
+        let largest_t = match tools.settings.ordering {
+            Ordering::Collinear => [t, t],
+            Ordering::Virtuality => [z * t, (1.0 - z) * t],
+        };
+        let keys = [node.key.daughter(0), node.key.daughter(1)];
+        for daughter in 0..2 {
+            self.legs[daughter].start(
+                tools.evolution,
+                daughters[daughter],
+                keys[daughter],
+                largest_t[daughter],
+            );
+        }
+        if tools.evolution.medium.is_some() {
+            self.enter_medium(tools, node, keys, largest_t);
+        }
+        let constraint = match tools.settings.ordering {
+            Ordering::Collinear => Constraint::None,
+            Ordering::Virtuality => Constraint::Daughters { t, z },
+        };
+        let branchings = settle(
+            tools.evolution,
+            &mut self.legs,
+            largest_t,
+            constraint,
+            &mut self.tally,
+        );
+        let places = match tools.settings.ordering {
+            Ordering::Collinear => node.place.split(z, [0.0; 2]),
+            Ordering::Virtuality => {
+                let virtualities =
+                    branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
+                // The constraint holds to the last bit or the loop would have gone on, so the root exists.
+                let k = relative_transverse_gev2(t, z, virtualities).sqrt();
+                node.place
+                    .split(z, node.azimuth.map(|component| component * k))
+            }
+        };
+        let colours = self.split_colours(node, daughters);
+        for daughter in 0..2 {
+            let settled = Settled {
+                species: daughters[daughter],
+                key: keys[daughter],
+                place: places[daughter],
+                jet: node.jet,
+                birth_fm: node.vertex_fm,
+                colours: colours[daughter],
+                parent: node.row,
+                splitting_fraction: if daughter == 0 { z } else { 1.0 - z },
+                channel: CHANNEL_VACUUM + channel as u8,
+            };
+            self.settle_one(tools, settled, branchings[daughter], daughter, record);
+        }
+    }
+
+    /// While a pair evolves, energies and directions are those of massless daughters.
+    fn enter_medium(&mut self, tools: Tools, node: &Node, keys: [Key; 2], largest_t: [f64; 2]) {
+        let Branching { t, z, .. } = node.branching;
+        let kappa = (z * (1.0 - z) * t).sqrt();
+        let places = node
+            .place
+            .split(z, node.azimuth.map(|component| component * kappa));
+        for daughter in 0..2 {
+            let momentum = self.frame(node.jet).momentum(&places[daughter], 0.0);
+            let ray = Ray {
+                birth_fm: node.vertex_fm,
+                direction: direction(momentum),
+            };
+            let state = (momentum[3], ray);
+            self.legs[daughter].enter_medium(
+                tools.evolution,
+                keys[daughter],
+                largest_t[daughter],
+                state,
+                &mut self.tally,
+            );
+        }
+    }
+
+    fn frame(&self, jet: usize) -> &Frame {
+        self.frames[jet]
+            .as_ref()
+            .expect("a jet has its frame before it has daughters")
+    }
+
+    /// Records a settled parton, and puts it on the stack if it branched.
+    #[inline]
+    fn settle_one(
+        &mut self,
+        tools: Tools,
+        parton: Settled,
+        branching: Option<Branching>,
+        leg: usize,
+        record: &mut Record,
+    ) {
+        let t = branching.map_or(0.0, |branching| branching.t);
+        let momentum = match tools.settings.ordering {
+            // Fractions only: light-like momenta along the jet.
+            Ordering::Collinear => self.frame(parton.jet).momentum(&parton.place, 0.0),
+            Ordering::Virtuality => self.frame(parton.jet).momentum(&parton.place, t),
+        };
+        let is_final = branching.is_none();
+        let mut row = parton.parent;
+        if is_final || record.full_history {
+            row = (record.rows.len() - self.first_row) as i32;
+            record.rows.push(Parton {
+                momentum_gev: momentum,
+                birth_fm: parton.birth_fm.map(|component| component as f32),
+                virtuality_squared_gev2: t as f32,
+                splitting_fraction: parton.splitting_fraction as f32,
+                jet_fraction: parton.place.fraction as f32,
+                pdg: parton.species.pdg(),
+                parent: parton.parent,
+                colour: parton.colours[0],
+                anticolour: parton.colours[1],
+                status: if is_final {
+                    Status::Final
+                } else {
+                    Status::Branched
+                },
+                channel: parton.channel,
+            });
+        }
+        if let Some(branching) = branching {
+            let (azimuth, vertex_fm) = self.geometry(tools, &parton, &branching, momentum, leg);
+            let Settled {
+                species,
+                key,
+                place,
+                jet,
+                colours,
+                ..
+            } = parton;
+            self.stack.push(Node {
+                species,
+                key,
+                branching,
+                place,
+                jet,
+                vertex_fm,
+                azimuth,
+                colours,
+                row,
+            });
+        }
+    }
+
+    /// Azimuth (cosine and sine) and vertex of a branching.
+    fn geometry(
+        &self,
+        tools: Tools,
+        parton: &Settled,
+        branching: &Branching,
+        momentum: [f64; 4],
+        leg: usize,
+    ) -> ([f64; 2], [f64; 4]) {
+        let mut stream = parton.key.stream(Purpose::GEOMETRY);
+        let (sin, cos) = libm::sincos(TAU * stream.random::<f64>());
+        let uniform: f64 = stream.sample(OpenClosed01);
+        let mean_fm = 2.0 * momentum[3] / branching.t * HBAR_C_GEV_FM;
+        let time_fm = if branching.channel > 0 {
+            self.legs[leg].induced_vertex_fm(tools.evolution, branching, parton.key)
+        } else {
+            match tools.settings.lifetime {
+                Lifetime::Exponential => -ln(uniform) * mean_fm,
+                Lifetime::Mean => mean_fm,
+            }
+        };
+        let per_energy = time_fm / momentum[3];
+        let [t, x, y, z] = parton.birth_fm;
+        let [px, py, pz, _] = momentum;
+        (
+            [cos, sin],
+            [
+                t + time_fm,
+                x + px * per_energy,
+                y + py * per_energy,
+                z + pz * per_energy,
+            ],
+        )
+    }
+
+    /// Leading-colour flow: each splitting into a gluon opens one new line.
+    fn split_colours(&mut self, node: &Node, daughters: [Species; 2]) -> [[i32; 2]; 2] {
+        let [colour, anticolour] = node.colours;
+        if splitting(node.species, daughters) == Splitting::GluonToQuarks {
+            return [[colour, 0], [0, anticolour]];
+        }
+        let new = self.next_colour;
+        self.next_colour += 1;
+        match () {
+            () if node.species.is_gluon() => [[colour, new], [new, anticolour]],
+            () if node.species.is_antiquark() => [[0, new], [new, anticolour]],
+            () => [[new, 0], [colour, new]],
+        }
+    }
+}
+
+fn splitting(parent: Species, daughters: [Species; 2]) -> Splitting {
+    match (parent.is_gluon(), daughters[0].is_gluon()) {
+        (false, _) => Splitting::QuarkToQuarkGluon,
+        (true, true) => Splitting::GluonToGluons,
+        (true, false) => Splitting::GluonToQuarks,
+    }
+}
+
+/// What a walk reads but never changes.
+#[derive(Clone, Copy)]
+pub struct Tools<'a> {
+    /// Rates, envelopes, medium.
+    pub evolution: &'a Evolution,
+    /// The shower's choices.
+    pub settings: &'a ShowerSettings,
+}

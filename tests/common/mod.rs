@@ -2,6 +2,8 @@
 
 #![allow(dead_code)] // each test file uses part of this
 
+pub mod field_maker;
+
 use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64;
 

@@ -146,7 +146,7 @@ fn momenta_are_rounded_as_declared() {
     for (exact, rounded) in exact.partons.iter().zip(&rounded.partons) {
         for (a, b) in exact.momentum_gev.iter().zip(rounded.momentum_gev) {
             assert!((a - b).abs() <= half_step * a.abs());
-            assert_eq!(b.to_bits().trailing_zeros() >= 52 - u32::from(bits), true);
+            assert!(b.to_bits().trailing_zeros() >= 52 - u32::from(bits));
             changed += usize::from(*a != b);
         }
     }

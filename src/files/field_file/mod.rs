@@ -12,7 +12,7 @@ use hdf5::File;
 
 pub use error::{FieldFileError, FieldProblem};
 
-use crate::files::hdf5_calls::reason;
+use crate::files::hdf5_calls::open_to_read;
 use crate::medium::field::FieldData;
 use units::{AREA_DENSITY, LENGTH, NUMBER, Quantity, TEMPERATURE};
 use variable::Variable;
@@ -48,13 +48,13 @@ const FULL_AXES: [&str; 4] = ["tau", "x", "y", "eta"];
 pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
     read_checked(path).map_err(|problem| FieldFileError {
         path: path.to_owned(),
-        problem,
+        problem: Box::new(problem),
     })
 }
 
 fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
     check_signature(path)?;
-    let file = File::open(path).map_err(|error| FieldProblem::Unreadable(reason(&error)))?;
+    let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
     let temperature = require(&file, "temperature", &TEMPERATURE)?;
     let axes: &[&str] = if temperature.axes.iter().any(|axis| axis == "eta") {
         &FULL_AXES

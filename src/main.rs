@@ -12,7 +12,7 @@ fn main() -> ExitCode {
         Ok(Ok(code)) => code,
         Ok(Err(error)) => {
             say(&format!("{error:#}"));
-            exit_code(&error)
+            ExitCode::from(exit_code(&error))
         }
         Err(_) => {
             say("this is a defect in spindrift; please report it with the lines above");

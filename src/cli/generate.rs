@@ -3,22 +3,23 @@
 use std::io::{Write, stdout};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
-use std::sync::atomic::{AtomicBool, Ordering};
+use std::sync::atomic::Ordering;
 use std::time::Instant;
 
-use anyhow::bail;
+use anyhow::{Context, bail};
 
 use super::progress::Teller;
-use super::summary::{Circumstances, Summary};
-use super::words::{bytes, grouped, say, time};
+use super::summary::{SummaryText, forecast_line, stop_message};
+use super::words::say;
 use super::{EXIT_STOPPED, output, signals, threads};
 use crate::config::{Overrides, RunPlan, load_with};
 use crate::files::event_file::{EventFileWriter, WriteOptions};
-use crate::run::assemble::{Assembled, assemble};
+use crate::run::assemble::assemble;
 use crate::run::forecast::Forecast;
 use crate::run::generator::Generator;
 use crate::run::provenance::{describe, event_ids};
-use crate::run::{RunError, Sink, run as run_events};
+use crate::run::summary::{Circumstances, RunSummary};
+use crate::run::{Sink, run as run_events};
 
 /// Showers events as CONFIG says and streams them to an event file.
 #[derive(Clone, Debug, clap::Args)]
@@ -68,30 +69,47 @@ pub struct GenerateArgs {
 pub fn run(args: &GenerateArgs) -> anyhow::Result<ExitCode> {
     refuse_planned(args)?;
     let threads = threads::choose(args.threads)?;
-    let stop = signals::stop_flag()?;
+    let stop = signals::stop_flag().context("cannot listen for signals")?;
     let overrides = Overrides {
         events: args.events,
         seed: args.seed,
     };
     let plan = load_with(&args.config, &overrides)?;
-    let output = checked_output(args, &plan)?;
-    let Assembled {
-        generator,
-        warnings,
-    } = assemble(&plan)?;
-    for warning in plan.warnings.iter().chain(&warnings) {
-        say(&format!("warning: {warning}"));
+    let output = match (args.discard, &args.out) {
+        (true, _) => None,
+        (false, Some(out)) => Some(out.clone()),
+        (false, None) => Some(output::default_for(&args.config)),
+    };
+    if let Some(output) = &output {
+        output::check(output, args.overwrite, &args.config, &plan)?;
     }
+    let assembled = assemble(&plan)?;
+    let input_warnings = [&plan.warnings[..], &assembled.warnings[..]].concat();
+    warn(&input_warnings);
     if stop.load(Ordering::Relaxed) {
         say("stopped by a signal before the start; nothing was written");
         return Ok(ExitCode::from(EXIT_STOPPED));
     }
+    let generator = assembled.generator;
     let sink = open_sink(args, &plan, &generator, output.as_deref())?;
     if !args.quiet {
-        forecast(&plan, &generator, threads, output.as_deref());
+        let cores = threads.min(threads::cores());
+        let record = output.as_ref().map(|_| &plan.record);
+        let forecast = Forecast::measure(&generator, event_ids(&plan), cores, record);
+        say(&forecast_line(plan.events, &forecast, output.as_deref()));
     }
-    let summary = make_events(args, &plan, &generator, threads, output, sink, &stop)?;
-    finish(args, &summary)
+    let teller = Teller::new(plan.events, args.quiet);
+    let start = Instant::now();
+    let totals = run_events(&generator, event_ids(&plan), threads, sink, &teller, &stop);
+    teller.finish();
+    let circumstances = Circumstances {
+        config: args.config.clone(),
+        output,
+        threads,
+        wall_time: start.elapsed(),
+        input_warnings,
+    };
+    close(args, &RunSummary::new(&plan, circumstances, &totals?))
 }
 
 fn refuse_planned(args: &GenerateArgs) -> anyhow::Result<()> {
@@ -101,23 +119,15 @@ fn refuse_planned(args: &GenerateArgs) -> anyhow::Result<()> {
         ("--resume", args.resume),
     ];
     match planned.iter().find(|(_, given)| *given) {
-        Some((option, _)) => {
-            bail!("{option} is not built yet; it comes with a later version of spindrift")
-        }
+        Some((option, _)) => bail!("{option} {}", super::NOT_BUILT),
         None => Ok(()),
     }
 }
 
-fn checked_output(args: &GenerateArgs, plan: &RunPlan) -> anyhow::Result<Option<PathBuf>> {
-    if args.discard {
-        return Ok(None);
+fn warn(warnings: &[String]) {
+    for warning in warnings {
+        say(&format!("warning: {warning}"));
     }
-    let output = args.out.clone();
-    let output = output.unwrap_or_else(|| output::default_for(&args.config));
-    let inputs = plan.inputs.iter().map(|input| input.path.as_path());
-    let inputs = inputs.chain([args.config.as_path()]);
-    output::check(&output, args.overwrite, inputs)?;
-    Ok(Some(output))
 }
 
 fn open_sink(
@@ -136,60 +146,18 @@ fn open_sink(
     Ok(Sink::File(writer))
 }
 
-fn forecast(plan: &RunPlan, generator: &Generator, threads: usize, output: Option<&Path>) {
-    let record = output.map(|_| &plan.record);
-    let cores = threads.min(threads::cores());
-    let forecast = Forecast::measure(generator, event_ids(plan), cores, record);
-    let size = match output {
-        Some(path) => format!("{} in {}", bytes(forecast.bytes), path.display()),
-        None => "nothing written".to_owned(),
-    };
-    say(&format!(
-        "forecast: {} events, about {}, {size} (measured on the first {})",
-        grouped(plan.events),
-        time(forecast.seconds),
-        grouped(forecast.events_sampled),
-    ));
-}
-
-fn make_events(
-    args: &GenerateArgs,
-    plan: &RunPlan,
-    generator: &Generator,
-    threads: usize,
-    output: Option<PathBuf>,
-    sink: Sink,
-    stop: &AtomicBool,
-) -> Result<Summary, RunError> {
-    let teller = Teller::new(plan.events, args.quiet);
-    let start = Instant::now();
-    let totals = run_events(generator, event_ids(plan), threads, sink, &teller, stop);
-    teller.finish();
-    let circumstances = Circumstances {
-        config: args.config.clone(),
-        output,
-        threads,
-        wall_time: start.elapsed(),
-    };
-    Ok(Summary::new(plan, circumstances, &totals?))
-}
-
-/// Prints the summary; the exit code says whether the run came to its end.
-fn finish(args: &GenerateArgs, summary: &Summary) -> anyhow::Result<ExitCode> {
+/// Prints what a run came to; the exit code says whether it reached its end.
+fn close(args: &GenerateArgs, summary: &RunSummary) -> anyhow::Result<ExitCode> {
     if !args.quiet {
-        say(&summary.to_string());
+        say(&SummaryText(summary).to_string());
     }
-    for warning in &summary.warnings {
-        say(&format!("warning: {warning}"));
-    }
+    warn(&summary.warnings);
     if !summary.complete {
-        say(&summary.stop_message());
+        say(&stop_message(summary));
     }
     if args.json {
-        let mut stdout = stdout().lock();
-        serde_json::to_writer_pretty(&mut stdout, summary).map_err(std::io::Error::from)?;
-        writeln!(stdout)?;
-        stdout.flush()?;
+        let json = serde_json::to_string_pretty(summary)?;
+        writeln!(stdout(), "{json}").context("cannot print the summary; the events are safe")?;
     }
     Ok(if summary.complete {
         ExitCode::SUCCESS

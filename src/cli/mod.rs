@@ -9,7 +9,6 @@ pub mod schema;
 pub mod show;
 mod signals;
 mod summary;
-mod summary_text;
 mod threads;
 mod words;
 
@@ -29,6 +28,9 @@ pub const EXIT_STOPPED: u8 = 3;
 /// Exit code where the machine failed: disk full, input or output error.
 pub const EXIT_MACHINE: u8 = 4;
 
+/// What is said of verbs and options that interface and help name already.
+const NOT_BUILT: &str = "is not built yet; it comes with a later version of spindrift";
+
 /// The command line.
 #[derive(Debug, clap::Parser)]
 #[command(version, about = ABOUT, after_help = EXIT_CODES, arg_required_else_help = true)]
@@ -39,16 +41,21 @@ pub struct Cli {
 }
 
 const ABOUT: &str = "\
-Turns a hard quark or gluon into a jet of partons, in vacuum or inside a hot medium: a Monte Carlo parton shower
-ordered in virtuality, for jets in heavy-ion collisions. A medium is any temperature field on a grid, or an analytic
-one; it changes the branching probabilities along each parton's path. Events are streamed to an HDF5 file with where
-and when every branching happened; the same config and seed give the same events on any number of threads. Leading
-logarithm, parton level: no hadronization, no underlying event.";
+Turns a hard quark or gluon into a jet of partons, in vacuum or inside a hot
+medium: a Monte Carlo parton shower ordered in virtuality, for jets in heavy-ion
+collisions. The medium is a temperature field, yours on a grid or an analytic
+one; it changes the branching probabilities along each parton's path. Events go
+to an HDF5 file that says how it was made; the same config and seed give the
+same events on any number of threads. Parton level, leading logarithm: no
+hadronization, no underlying event.";
 
 const EXIT_CODES: &str = "\
-Exit codes: 0 done; 1 a defect of the program; 2 the request cannot be served (arguments, config, input file) and
-nothing was written; 3 stopped early by a signal, what is committed is safe; 4 the machine failed (disk full, input
-or output error), what was committed before is intact.";
+Exit codes:
+  0  done
+  1  a defect of the program
+  2  the request cannot be served (arguments, config, input); nothing written
+  3  stopped early by a signal; what is committed is safe
+  4  the machine failed (disk full, I/O error); what was committed is intact";
 
 /// The verbs.
 #[derive(Debug, clap::Subcommand)]
@@ -66,7 +73,7 @@ pub enum Verb {
     /// Makes one event file of shards (in a later version)
     #[command(disable_help_flag = true)]
     Join(LaterArgs),
-    /// Compares jets of samples with those of a reference (in a later version)
+    /// Compares jets of samples with a reference (in a later version)
     #[command(disable_help_flag = true)]
     Contrast(LaterArgs),
     /// Hands events to other programs (in a later version)
@@ -104,15 +111,52 @@ impl Verb {
 }
 
 fn later(what: &str) -> anyhow::Result<ExitCode> {
-    anyhow::bail!("{what} is not built yet; it comes with a later version of spindrift")
+    anyhow::bail!("{what} {NOT_BUILT}")
 }
 
 /// The exit code of an error.
-pub fn exit_code(error: &anyhow::Error) -> ExitCode {
-    ExitCode::from(match error.downcast_ref::<RunError>() {
+pub fn exit_code(error: &anyhow::Error) -> u8 {
+    match error.downcast_ref::<RunError>() {
         Some(RunError::Defect(_)) => EXIT_DEFECT,
-        Some(RunError::Output(output)) if output.is_machine_failure() => EXIT_MACHINE,
+        Some(RunError::Output(_)) => EXIT_MACHINE,
         None if error.is::<std::io::Error>() => EXIT_MACHINE,
-        Some(RunError::Output(_)) | None => EXIT_BAD_REQUEST,
-    })
+        None => EXIT_BAD_REQUEST,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::files::event_file::EventFileError;
+
+    #[test]
+    fn the_command_line_is_well_formed() {
+        <Cli as clap::CommandFactory>::command().debug_assert();
+    }
+
+    #[test]
+    fn exit_codes_tell_who_failed() {
+        let path = || "x.h5".into();
+        let full = EventFileError::Write {
+            path: path(),
+            what: "partons".into(),
+            reason: "no space left".into(),
+        };
+        let cases: [(anyhow::Error, u8); 5] = [
+            (RunError::Defect("a panic".into()).into(), EXIT_DEFECT),
+            (RunError::Output(full).into(), EXIT_MACHINE),
+            (
+                EventFileError::Exists { path: path() }.into(),
+                EXIT_BAD_REQUEST,
+            ),
+            (anyhow::anyhow!("not built yet"), EXIT_BAD_REQUEST),
+            (
+                anyhow::Error::from(std::io::Error::other("gone")).context("cannot print"),
+                EXIT_MACHINE,
+            ),
+        ];
+        for (error, code) in cases {
+            assert_eq!(exit_code(&error), code, "{error:#}");
+        }
+    }
 }

@@ -5,6 +5,7 @@ use std::path::{Path, PathBuf};
 
 use anyhow::bail;
 
+use crate::config::RunPlan;
 use crate::files::event_file::EventFileError;
 
 /// The output that a config has by default: its stem with `.h5`, in the working directory.
@@ -18,10 +19,11 @@ pub(super) fn default_for(config: &Path) -> PathBuf {
 ///
 /// # Errors
 /// Its folder is none, it exists and must not be replaced, or it is one of the run's own inputs.
-pub(super) fn check<'a>(
+pub(super) fn check(
     output: &Path,
     overwrite: bool,
-    mut inputs: impl Iterator<Item = &'a Path>,
+    config: &Path,
+    plan: &RunPlan,
 ) -> anyhow::Result<()> {
     let path = || output.to_owned();
     if output.symlink_metadata().is_ok() {
@@ -34,6 +36,11 @@ pub(super) fn check<'a>(
                 output.display()
             );
         }
+        let mut inputs = plan
+            .inputs
+            .iter()
+            .map(|input| input.path.as_path())
+            .chain([config]);
         if let Some(input) = inputs.find(|input| is_same(input, output)) {
             bail!(
                 "{} is an input of this run ({}); give another --out",

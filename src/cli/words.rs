@@ -6,8 +6,14 @@ use std::time::Duration;
 
 const SECONDS_A_MINUTE: u64 = 60;
 const SECONDS_AN_HOUR: u64 = 3600;
-/// Below this many seconds, tenths are shown.
-const SECONDS_WITH_TENTHS: f64 = 10.0;
+/// Below this many seconds, hundredths are shown.
+const SECONDS_WITH_HUNDREDTHS: f64 = 10.0;
+/// The shortest time that is told.
+const SHORTEST_SECONDS: f64 = 0.01;
+/// Decimals of a number without an error.
+const USUAL_DECIMALS: i32 = 4;
+/// Most decimals of a number with an error.
+const MOST_DECIMALS: i32 = 9;
 
 /// Prints lines on stderr. That nobody listens is no reason to stop a run, so failures are ignored.
 pub fn say(lines: &str) {
@@ -45,10 +51,10 @@ pub(super) fn bytes(size: f64) -> String {
     format!("{value:.decimals$} {}", UNITS[unit])
 }
 
-/// A time as a person says it: `0.4 s`, `37 s`, `12 min 05 s`, `3 h 07 min`.
+/// A time as a person says it: `0.42 s`, `37 s`, `12 min 05 s`, `3 h 07 min`.
 pub(super) fn time(seconds: f64) -> String {
-    if seconds < SECONDS_WITH_TENTHS {
-        return format!("{:.1} s", seconds.max(0.1));
+    if seconds < SECONDS_WITH_HUNDREDTHS {
+        return format!("{:.2} s", seconds.max(SHORTEST_SECONDS));
     }
     let whole = Duration::try_from_secs_f64(seconds).map_or(u64::MAX, |time| time.as_secs());
     if whole < SECONDS_A_MINUTE {
@@ -74,6 +80,20 @@ pub(super) fn percent(share: f64) -> String {
         _ => 1,
     };
     format!("{percent:.decimals$} %")
+}
+
+/// A mean with its standard error, to two digits of the error: `7.749 +- 0.026`.
+pub(super) fn with_error(mean: Option<f64>, error: Option<f64>) -> String {
+    let decimals = match error {
+        Some(error) if error > 0.0 => (1 - error.log10().floor() as i32).clamp(0, MOST_DECIMALS),
+        _ => USUAL_DECIMALS,
+    } as usize;
+    let text = |value: f64| format!("{value:.decimals$}");
+    format!(
+        "{} +- {}",
+        or_dash(mean.map(text)),
+        or_dash(error.map(text))
+    )
 }
 
 /// Something that may not exist, such as a mean of nothing.
@@ -113,8 +133,8 @@ mod tests {
     #[test]
     fn times_have_two_parts_at_most() {
         for (seconds, text) in [
-            (0.0, "0.1 s"),
-            (3.14, "3.1 s"),
+            (0.0, "0.01 s"),
+            (4.25, "4.25 s"),
             (59.9, "59 s"),
             (725.0, "12 min 05 s"),
             (11_263.0, "3 h 07 min"),
@@ -122,6 +142,18 @@ mod tests {
             assert_eq!(time(seconds), text);
         }
         assert!(time(f64::INFINITY).ends_with("min"));
+    }
+
+    #[test]
+    fn errors_have_two_digits() {
+        for (mean, error, text) in [
+            (7.74870, 0.02564, "7.749 +- 0.026"),
+            (1234.5, 21.0, "1234 +- 21"),
+            (1.0, 0.0, "1.0000 +- 0.0000"),
+        ] {
+            assert_eq!(with_error(Some(mean), Some(error)), text);
+        }
+        assert_eq!(with_error(None, None), "- +- -");
     }
 
     #[test]

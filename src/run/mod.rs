@@ -12,6 +12,7 @@ pub mod generator;
 mod parallel;
 pub mod provenance;
 mod serial;
+pub mod summary;
 
 use std::ops::Range;
 use std::sync::atomic::AtomicBool;

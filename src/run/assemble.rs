@@ -6,7 +6,7 @@ use super::generator::Generator;
 use crate::config::{History, RunPlan};
 use crate::files::field_file::{FieldFileError, read_field};
 use crate::medium::field::{Brick, Grid, Longitudinal, TemperatureField};
-use crate::medium::{FieldKind, Medium};
+use crate::medium::{FieldKind, FieldSettings, Medium};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
@@ -41,7 +41,7 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
         None => None,
         Some(settings) => Some(Medium::new(
             settings,
-            field(&settings.field.kind, &mut warnings)?,
+            field(&settings.field, &mut warnings)?,
         )),
     };
     let shower = Shower::new(
@@ -64,10 +64,10 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
 }
 
 fn field(
-    kind: &FieldKind,
+    settings: &FieldSettings,
     warnings: &mut Vec<String>,
 ) -> Result<Box<dyn TemperatureField>, FieldFileError> {
-    Ok(match kind {
+    Ok(match &settings.kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
@@ -79,7 +79,7 @@ fn field(
         FieldKind::Grid { file } => {
             let mut data = read_field(file)?;
             warnings.append(&mut data.warnings);
-            Box::new(Grid::new(data))
+            Box::new(Grid::new(data, settings.end_temperature_gev))
         }
     })
 }

@@ -9,39 +9,18 @@ import argparse
 import pathlib
 import sys
 import tempfile
-import time
-import traceback
 
 import numpy as np
 
 import reading_example
 from checks import configs, event_file, fields, history, twins
 from checks.program import Program, changed
+from checks.tally import Tally
 
 HERE = pathlib.Path(__file__).resolve().parent
 SAMPLE_EVENTS = 1500
 # audit's complaint, or a refusal to read on.
 AUDIT_FAILED, REFUSED = 1, 2
-
-
-class Tally:
-    """Runs checks, prints one line each, counts."""
-
-    def __init__(self):
-        self.passed, self.failed = 0, 0
-
-    def run(self, name, check, *arguments):
-        start = time.perf_counter()
-        try:
-            check(*arguments)
-        except Exception as error:  # a check may fail in any way; the next one still runs
-            self.failed += 1
-            print(f"FAILED  {name}: {error}", flush=True)
-            if not isinstance(error, AssertionError):
-                traceback.print_exc()
-            return
-        self.passed += 1
-        print(f"ok      {name} ({time.perf_counter() - start:.1f} s)", flush=True)
 
 
 def check_one_file(tally, label, path, work):
@@ -115,8 +94,7 @@ def main():
         for module in (configs, twins, fields):
             for name in [name for name in vars(module) if name.startswith("check_")]:
                 tally.run(name.removeprefix("check_").replace("_", " "), getattr(module, name), program)
-    print(f"{tally.passed} passed, {tally.failed} failed")
-    return 0 if tally.failed == 0 and tally.passed > 0 else 1
+    return tally.close()
 
 
 if __name__ == "__main__":

@@ -182,13 +182,17 @@ def check_first_branching(program, case):
 
 
 def check_bias_is_seen(program):
-    """The comparison fails for a coupling 4 % too large."""
-    case = table("first_branching")["cases"][0]
-    assert case["coupling"] == {"argument": "fixed", "alpha_s": 0.15}
-    biased = changed(config_of(case), coupling__alpha_s=0.156)
-    first = FirstBranchings(program.generate("physics-biased", biased, EVENTS))
-    failed = [what for what, size, limit in compare_first_branchings(first, case) if not size < limit]
-    assert failed, "a coupling 4 % too large went unnoticed"
+    """The comparison fails for a coupling 6 % too large, and for a transport coefficient 10 % too large."""
+    vacuum, medium = table("first_branching")["cases"][0], table("medium")["cases"][0]
+    assert vacuum["coupling"]["alpha_s"] == 0.15 and medium["medium"]["gluon_qhat_GeV2_per_fm"] == 1.0
+    biased = {
+        "coupling": (vacuum, changed(config_of(vacuum), coupling__alpha_s=0.159)),
+        "transport coefficient": (medium, changed(config_of(medium), medium__transport__qhat_GeV2_per_fm=1.1)),
+    }
+    for name, (case, config) in biased.items():
+        first = FirstBranchings(program.generate("physics-biased", config, EVENTS))
+        failed = [what for what, size, limit in compare_first_branchings(first, case) if not size < limit]
+        assert failed, f"a biased {name} went unnoticed"
 
 
 def multiplicity_checks(program):

@@ -2,6 +2,7 @@ use spindrift::event::*;
 use spindrift::medium::field::*;
 use spindrift::medium::*;
 use spindrift::qcd::*;
+use spindrift::run::EventGenerator;
 use spindrift::run::generator::Generator;
 use spindrift::shower::*;
 use spindrift::source::*;
@@ -52,7 +53,7 @@ fn run(
         origin: None,
         full_history: false,
     };
-    let mut w = g.walker();
+    let mut w = g.worker();
     let mut b = EventBlock::default();
     let t0 = std::time::Instant::now();
     let mut parts = 0u64;
@@ -81,7 +82,7 @@ fn run(
             .map(|c| (
                 c.trials as f64 / n as f64,
                 c.accepted as f64 / n as f64,
-                c.cut_by_angle_limit as f64 / 1048576.0 / n as f64,
+                c.cut_by_angle_limit() as f64 / n as f64,
                 c.overshoots
             ))
             .collect::<Vec<_>>(),

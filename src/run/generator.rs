@@ -1,9 +1,11 @@
 //! Makes one event from its number: source, origin and shower put together.
 
+use super::{EventGenerator, RunCounters};
 use crate::event::{EventBlock, EventSummary};
 use crate::medium::OriginSettings;
 use crate::random::{Key, Purpose};
 use crate::shower::Shower;
+use crate::shower::counters::ShowerCounters;
 use crate::shower::tree::{Record, Walker};
 use crate::source::HardSource;
 
@@ -24,14 +26,15 @@ pub struct Generator {
     pub full_history: bool,
 }
 
-impl Generator {
-    /// Working memory for one worker.
-    pub fn walker(&self) -> Walker {
+impl EventGenerator for Generator {
+    type Worker = Walker;
+    type Counters = ShowerCounters;
+
+    fn worker(&self) -> Walker {
         self.shower.walker()
     }
 
-    /// Makes event `id` and appends it to `block`.
-    pub fn generate(&self, walker: &mut Walker, id: i64, block: &mut EventBlock) {
+    fn generate(&self, walker: &mut Walker, id: i64, block: &mut EventBlock) {
         let key = Key::event(self.seed, id as u64);
         let hard = self.source.draw(&mut key.stream(Purpose::SOURCE));
         let origin_fm = self.origin_fm();
@@ -54,6 +57,39 @@ impl Generator {
         });
     }
 
+    fn counters(&self, walker: &Walker) -> ShowerCounters {
+        walker.tally.counters.clone()
+    }
+}
+
+impl RunCounters for ShowerCounters {
+    fn merge(&mut self, other: &Self) {
+        *self += other;
+    }
+
+    fn named(&self) -> Vec<(String, u64)> {
+        let mut named = vec![
+            ("branchings".to_string(), self.branchings),
+            ("partons_in_medium".to_string(), self.legs_in_medium),
+            (
+                "partons_below_min_energy".to_string(),
+                self.legs_below_min_energy,
+            ),
+            ("paths_left_hot".to_string(), self.paths_left_hot),
+        ];
+        // Channels are numbered as in the record: 1 is the vacuum.
+        for (place, channel) in self.channels.iter().enumerate() {
+            let name = |count: &str| format!("channel_{}_{count}", place + 1);
+            named.push((name("trials"), channel.trials));
+            named.push((name("accepted"), channel.accepted));
+            named.push((name("overshoots"), channel.overshoots));
+            named.push((name("cut_by_angle_limit"), channel.cut_by_angle_limit()));
+        }
+        named
+    }
+}
+
+impl Generator {
     fn origin_fm(&self) -> [f64; 4] {
         match self.origin {
             None => [0.0; 4],

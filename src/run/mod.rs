@@ -3,6 +3,7 @@
 //! The content of the output depends on the generator and the event numbers alone: blocks hold a fixed number of
 //! events, and everything that is added up over events is added in ascending event number.
 
+pub mod assemble;
 mod block;
 pub mod generator;
 mod parallel;
@@ -40,13 +41,13 @@ pub trait RunCounters: Default + Send {
     fn merge(&mut self, other: &Self);
 
     /// Name and value of each count, in a fixed order; the names become attributes of the event file.
-    fn named(&self) -> Vec<(&'static str, u64)>;
+    fn named(&self) -> Vec<(String, u64)>;
 }
 
 impl RunCounters for () {
     fn merge(&mut self, (): &()) {}
 
-    fn named(&self) -> Vec<(&'static str, u64)> {
+    fn named(&self) -> Vec<(String, u64)> {
         Vec::new()
     }
 }
@@ -131,7 +132,12 @@ fn close<C: RunCounters>(sink: Sink, totals: &mut RunTotals<C>) -> Result<(), Ev
     };
     if totals.completed {
         totals.committed_events = totals.events;
-        writer.finish(&totals.sums, &totals.counters.named())
+        let counters = totals.counters.named();
+        let counters: Vec<(&str, u64)> = counters
+            .iter()
+            .map(|(name, value)| (name.as_str(), *value))
+            .collect();
+        writer.finish(&totals.sums, &counters)
     } else {
         writer.commit()?;
         totals.committed_events = writer.committed_events().unsigned_abs();

@@ -2,7 +2,7 @@
 
 use std::ops::AddAssign;
 
-/// Unit of [`ChannelCounters::cut_by_angle_limit`].
+/// Unit of [`ChannelCounters::cut_units`].
 pub const CUT_UNIT: f64 = 1.0 / (1u64 << 20) as f64;
 
 /// Counts of one emission channel.
@@ -16,12 +16,19 @@ pub struct ChannelCounters {
     pub overshoots: u64,
     /// Expected number of branchings that the limit to small angles cut away, taking coupling and phase factor at the
     /// trials that it left; in units of [`CUT_UNIT`], so that sums do not depend on their order.
-    pub cut_by_angle_limit: u64,
+    pub cut_units: u64,
+}
+
+impl ChannelCounters {
+    /// Expected number of branchings that the limit to small angles cut away, rounded.
+    pub fn cut_by_angle_limit(&self) -> u64 {
+        (self.cut_units as f64 * CUT_UNIT).round() as u64
+    }
 }
 
 /// Counts of a run; those of parts add up.
 #[derive(Clone, Debug, Default, PartialEq, Eq)]
-pub struct RunCounters {
+pub struct ShowerCounters {
     /// Vacuum first, then the effects in config order.
     pub channels: Vec<ChannelCounters>,
     /// Branchings in the final trees.
@@ -36,18 +43,18 @@ pub struct RunCounters {
     pub paths_left_hot: u64,
 }
 
-impl RunCounters {
+impl ShowerCounters {
     /// Zero counts for the vacuum and a number of effects.
-    pub fn new(effects: usize) -> RunCounters {
-        RunCounters {
+    pub fn new(effects: usize) -> ShowerCounters {
+        ShowerCounters {
             channels: vec![ChannelCounters::default(); 1 + effects],
-            ..RunCounters::default()
+            ..ShowerCounters::default()
         }
     }
 }
 
-impl AddAssign<&RunCounters> for RunCounters {
-    fn add_assign(&mut self, other: &RunCounters) {
+impl AddAssign<&ShowerCounters> for ShowerCounters {
+    fn add_assign(&mut self, other: &ShowerCounters) {
         self.channels.resize(
             self.channels.len().max(other.channels.len()),
             ChannelCounters::default(),
@@ -56,7 +63,7 @@ impl AddAssign<&RunCounters> for RunCounters {
             sum.trials += part.trials;
             sum.accepted += part.accepted;
             sum.overshoots += part.overshoots;
-            sum.cut_by_angle_limit += part.cut_by_angle_limit;
+            sum.cut_units += part.cut_units;
         }
         self.branchings += other.branchings;
         self.legs += other.legs;

@@ -7,7 +7,7 @@
 use rand::RngExt;
 
 use super::accept::judge;
-use super::counters::{CUT_UNIT, RunCounters};
+use super::counters::{CUT_UNIT, ShowerCounters};
 use super::proposal::Trial;
 use super::proposal::induced::{Emitter, InducedEnvelope, InducedTrial};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
@@ -41,7 +41,7 @@ pub struct Tally {
     /// The shower's weight of the event.
     pub weight: f64,
     /// Counts of this worker.
-    pub counters: RunCounters,
+    pub counters: ShowerCounters,
 }
 
 /// What all legs of a shower share.
@@ -275,7 +275,7 @@ impl Leg {
             .relative_change(&self.passage(), trial.t, trial.z)
             .max(0.0);
         let ratio = evolution.rate.density(&trial) * trial.inverse_envelope * change;
-        tally.counters.channels[number].cut_by_angle_limit += (cut_away * ratio / CUT_UNIT) as u64;
+        tally.counters.channels[number].cut_units += (cut_away * ratio / CUT_UNIT) as u64;
         let accepted = verdict(ratio, &trial, number, tally);
         let channel = &mut self.induced[place];
         let trials = &mut tally.counters.channels[number].trials;

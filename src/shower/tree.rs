@@ -76,7 +76,7 @@ impl Walker {
             first_row: 0,
             tally: Tally {
                 weight: 1.0,
-                counters: super::counters::RunCounters::new(effects),
+                counters: super::counters::ShowerCounters::new(effects),
             },
         }
     }

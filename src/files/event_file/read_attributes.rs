@@ -69,7 +69,11 @@ pub(super) fn read_provenance(
         momentum_bits: (kept_bits < FULL_MANTISSA_BITS).then_some(kept_bits),
         effects,
         fields,
-        counters: state.counters.iter().map(|(name, _)| name.clone()).collect(),
+        counters: state
+            .counters
+            .iter()
+            .map(|(name, _)| name.clone())
+            .collect(),
     };
     Ok((provenance, state))
 }

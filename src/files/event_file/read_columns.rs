@@ -153,7 +153,11 @@ impl TableReader {
         name: &str,
         (first, count): (usize, usize),
     ) -> Result<Vec<T>, EventFileError> {
-        let place = self.table.columns().iter().position(|column| column.name == name);
+        let place = self
+            .table
+            .columns()
+            .iter()
+            .position(|column| column.name == name);
         let dataset = &self.columns[place.expect("a column of this table")];
         let mut values = Vec::new();
         read_rows(dataset, first, count, &mut values).map_err(|error| {
@@ -191,7 +195,10 @@ fn check_column(dataset: &Dataset, column: &Column, rows: usize) -> Result<(), S
         _ => false,
     };
     if !fits {
-        return Err(format!("has shape {shape:?}, must have {} wide rows", column.width));
+        return Err(format!(
+            "has shape {shape:?}, must have {} wide rows",
+            column.width
+        ));
     }
     if shape[0] < rows {
         return Err(format!("holds {} rows, {rows} are declared", shape[0]));

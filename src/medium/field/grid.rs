@@ -25,6 +25,15 @@ pub struct Grid {
     values: Vec<[f32; VALUES]>,
     has_flow: bool,
     spacing_fm: f64,
+    hot: HotBox,
+}
+
+/// The smallest box of grid planes outside of which the temperature nowhere reaches the end temperature.
+#[derive(Clone, Copy, Debug)]
+struct HotBox {
+    tau_fm: [f64; 2],
+    x_fm: [f64; 2],
+    y_fm: [f64; 2],
 }
 
 /// A strictly increasing axis with a table that leads to the cell of any coordinate.
@@ -32,9 +41,22 @@ pub struct Grid {
 struct Axis {
     points: Vec<f64>,
     inverse_widths: Vec<f64>,
+    /// One over the spacing of an even axis.
+    even: Option<f64>,
     /// The cell of the left edge of each of equal bins over the whole axis.
     guide: Vec<u32>,
     bins_per_unit: f64,
+}
+
+/// An axis is even when its points lie this close (in units of its spacing) to even ones: the rounding of single
+/// precision coordinates must pass.
+const EVENNESS: f64 = 1e-4;
+
+fn is_even(points: &[f64]) -> bool {
+    let (first, cells) = (points[0], points.len() - 1);
+    let spacing = (points[cells] - first) / cells as f64;
+    let off = |(place, point): (usize, &f64)| (point - first - spacing * place as f64).abs();
+    points.iter().enumerate().map(off).all(|off| off < EVENNESS * spacing)
 }
 
 /// Bins of the guide a cell of the axis.
@@ -54,8 +76,18 @@ impl Axis {
             cell as u32
         });
         let guide = guide.collect();
-        let inverse_widths = points.windows(2).map(|pair| 1.0 / (pair[1] - pair[0])).collect();
-        Axis { guide, bins_per_unit: bins as f64 / span, inverse_widths, points }
+        let inverse_widths = points
+            .windows(2)
+            .map(|pair| 1.0 / (pair[1] - pair[0]))
+            .collect();
+        let even = is_even(&points).then_some(cells as f64 / span);
+        Axis {
+            even,
+            guide,
+            bins_per_unit: bins as f64 / span,
+            inverse_widths,
+            points,
+        }
     }
 
     fn first(&self) -> f64 {
@@ -67,8 +99,16 @@ impl Axis {
     }
 
     /// Cell and place in it (0 to 1) of a coordinate; beyond an end, the end itself.
-    #[inline]
+    #[inline(always)]
     fn locate(&self, coordinate: f64) -> (usize, f32) {
+        let Some(inverse_width) = self.even else { return self.locate_by_guide(coordinate) };
+        // The cast takes numbers below 0 to 0.
+        let scaled = (coordinate - self.points[0]) * inverse_width;
+        let cell = (scaled as usize).min(self.points.len() - 2);
+        (cell, (scaled - cell as f64).clamp(0.0, 1.0) as f32)
+    }
+
+    fn locate_by_guide(&self, coordinate: f64) -> (usize, f32) {
         let inside = coordinate.clamp(self.first(), self.last());
         let bin = ((inside - self.first()) * self.bins_per_unit) as usize;
         let mut cell = self.guide[bin.min(self.guide.len() - 1)] as usize;
@@ -79,17 +119,10 @@ impl Axis {
         while cell > 0 && self.points[cell] > inside {
             cell -= 1;
         }
-        (cell, ((inside - self.points[cell]) * self.inverse_widths[cell]) as f32)
-    }
-
-    /// The stretch of distances in which start + speed * l lies on the axis.
-    fn crossing(&self, start: f64, speed: f64) -> Option<[f64; 2]> {
-        if speed == 0.0 {
-            let inside = (self.first()..=self.last()).contains(&start);
-            return inside.then_some([0.0, f64::INFINITY]);
-        }
-        let ends = [(self.first() - start) / speed, (self.last() - start) / speed];
-        Some([ends[0].min(ends[1]), ends[0].max(ends[1])])
+        (
+            cell,
+            ((inside - self.points[cell]) * self.inverse_widths[cell]) as f32,
+        )
     }
 
     fn mean_spacing(&self) -> f64 {
@@ -98,30 +131,50 @@ impl Axis {
 }
 
 impl Grid {
-    /// The field of some data, which must obey what [`FieldData`] promises of its axes and lengths.
-    pub fn new(data: FieldData) -> Grid {
+    /// The field of some data, which must obey what [`FieldData`] promises of its axes and lengths; places colder than
+    /// the end temperature (GeV) are not looked at.
+    pub fn new(data: FieldData, end_temperature_gev: f64) -> Grid {
+        let hot = HotBox::new(&data, end_temperature_gev);
         let count = data.temperature_gev.len();
         let values = (0..count).map(|place| {
-            let flow = data.flow.as_ref().map_or([0.0; 3], |flow| [flow[0][place], flow[1][place], flow[2][place]]);
+            let flow = data.flow.as_ref().map_or([0.0; 3], |flow| {
+                [flow[0][place], flow[1][place], flow[2][place]]
+            });
             [data.temperature_gev[place], flow[0], flow[1], flow[2]]
         });
         let values = values.collect();
-        let (tau, x, y) = (Axis::new(data.tau_fm), Axis::new(data.x_fm), Axis::new(data.y_fm));
-        let spacing_fm = x.mean_spacing().min(y.mean_spacing()).min(tau.mean_spacing());
-        Grid { tau, x, y, eta: data.eta.map(Axis::new), values, has_flow: data.flow.is_some(), spacing_fm }
+        let (tau, x, y) = (
+            Axis::new(data.tau_fm),
+            Axis::new(data.x_fm),
+            Axis::new(data.y_fm),
+        );
+        let spacing_fm = x
+            .mean_spacing()
+            .min(y.mean_spacing())
+            .min(tau.mean_spacing());
+        Grid {
+            tau,
+            x,
+            y,
+            eta: data.eta.map(Axis::new),
+            values,
+            has_flow: data.flow.is_some(),
+            spacing_fm,
+            hot,
+        }
     }
 
     /// Interpolated values at Milne coordinates; `None` outside the rapidity axis.
-    #[inline]
+    #[inline(always)]
     fn values_at(&self, tau: f64, x: f64, y: f64, eta: impl Fn() -> f64) -> Option<[f32; VALUES]> {
         let (i, u) = self.tau.locate(tau);
         let (j, v) = self.x.locate(x);
         let (k, w) = self.y.locate(y);
         let (columns, rows) = (self.x.points.len(), self.y.points.len());
         let corner = (i * columns + j) * rows + k;
+        let strides = [columns * rows, rows, 1];
         let Some(eta_axis) = &self.eta else {
-            let at = |point: usize| self.values[point];
-            return Some(trilinear(at, corner, [columns * rows, rows, 1], [u, v, w]));
+            return Some(trilinear(&self.values, corner, strides, [u, v, w]));
         };
         let eta = eta();
         if !(eta_axis.first()..=eta_axis.last()).contains(&eta) {
@@ -129,38 +182,88 @@ impl Grid {
         }
         let (m, s) = eta_axis.locate(eta);
         let depth = eta_axis.points.len();
-        let at = |point: usize| {
-            let place = point * depth + m;
-            mix(&self.values[place], &self.values[place + 1], s)
-        };
-        Some(trilinear(at, corner, [columns * rows, rows, 1], [u, v, w]))
+        let strides = strides.map(|stride| stride * depth);
+        let low = trilinear(&self.values, corner * depth + m, strides, [u, v, w]);
+        let high = trilinear(&self.values, corner * depth + m + 1, strides, [u, v, w]);
+        let mut sum = [0.0; VALUES];
+        add_scaled(&mut sum, &low, 1.0 - s);
+        add_scaled(&mut sum, &high, s);
+        Some(sum)
     }
 }
 
-#[inline]
-fn mix(left: &[f32; VALUES], right: &[f32; VALUES], place: f32) -> [f32; VALUES] {
-    std::array::from_fn(|i| left[i] + (right[i] - left[i]) * place)
+#[inline(always)]
+fn add_scaled(sum: &mut [f32; VALUES], values: &[f32; VALUES], weight: f32) {
+    for (sum, value) in sum.iter_mut().zip(values) {
+        *sum += weight * value;
+    }
 }
 
-#[inline]
+/// The eight corners of a cell from `corner` on, `strides` apart, weighted by the place in the cell.
+#[inline(always)]
 fn trilinear(
-    at: impl Fn(usize) -> [f32; VALUES],
+    values: &[[f32; VALUES]],
     corner: usize,
     strides: [usize; 3],
-    places: [f32; 3],
+    [u, v, w]: [f32; 3],
 ) -> [f32; VALUES] {
-    let edge = |point: usize| mix(&at(point), &at(point + strides[2]), places[2]);
-    let face = |point: usize| mix(&edge(point), &edge(point + strides[1]), places[1]);
-    mix(&face(corner), &face(corner + strides[0]), places[0])
+    let mut sum = [0.0; VALUES];
+    let faces = [(corner, 1.0 - u), (corner + strides[0], u)];
+    for (face, face_weight) in faces {
+        let edges = [(face, face_weight * (1.0 - v)), (face + strides[1], face_weight * v)];
+        for (edge, edge_weight) in edges {
+            add_scaled(&mut sum, &values[edge], edge_weight * (1.0 - w));
+            add_scaled(&mut sum, &values[edge + strides[2]], edge_weight * w);
+        }
+    }
+    sum
+}
+
+/// The stretch of distances in which start + speed * l lies between two ends.
+fn crossing(ends: [f64; 2], start: f64, speed: f64) -> Option<[f64; 2]> {
+    if speed == 0.0 {
+        let inside = (ends[0]..=ends[1]).contains(&start);
+        return inside.then_some([0.0, f64::INFINITY]);
+    }
+    let [one, other] = ends.map(|end| (end - start) / speed);
+    Some([one.min(other), one.max(other)])
+}
+
+impl HotBox {
+    fn new(data: &FieldData, end_temperature_gev: f64) -> HotBox {
+        let [_, columns, rows, depth] = data.shape();
+        // First and last hot plane of each axis; none yet.
+        let mut planes = [[usize::MAX, 0]; 3];
+        for (place, temperature) in data.temperature_gev.iter().enumerate() {
+            if f64::from(*temperature) >= end_temperature_gev {
+                let point = place / depth;
+                let indices = [point / (columns * rows), point / rows % columns, point % rows];
+                for (plane, index) in planes.iter_mut().zip(indices) {
+                    *plane = [plane[0].min(index), plane[1].max(index)];
+                }
+            }
+        }
+        // Between a hot plane and a cold one the medium reaches into the cell, so each side grows by one plane.
+        let ends = |points: &[f64], [first, last]: [usize; 2]| match first {
+            usize::MAX => [f64::INFINITY, f64::NEG_INFINITY],
+            _ => [points[first.saturating_sub(1)], points[(last + 1).min(points.len() - 1)]],
+        };
+        HotBox {
+            tau_fm: ends(&data.tau_fm, planes[0]),
+            x_fm: ends(&data.x_fm, planes[1]),
+            y_fm: ends(&data.y_fm, planes[2]),
+        }
+    }
 }
 
 impl TemperatureField for Grid {
     fn stretch(&self, ray: &Ray, _end_temperature_gev: f64) -> Option<Stretch> {
-        let mut first_fm = ray.distance_to_proper_time(self.tau.first())?;
-        let mut last_fm = ray.distance_to_proper_time(self.tau.last()).unwrap_or(f64::INFINITY);
+        let [first_tau, last_tau] = self.hot.tau_fm;
+        let mut first_fm = ray.distance_to_proper_time(first_tau)?;
+        let mut last_fm = ray.distance_to_proper_time(last_tau).unwrap_or(f64::INFINITY);
         let [_, x, y, _] = ray.birth_fm;
-        for (axis, start, speed) in [(&self.x, x, ray.direction[0]), (&self.y, y, ray.direction[1])] {
-            let [enter, leave] = axis.crossing(start, speed)?;
+        for (ends, start, speed) in [(self.hot.x_fm, x, ray.direction[0]), (self.hot.y_fm, y, ray.direction[1])] {
+            let [enter, leave] = crossing(ends, start, speed)?;
             first_fm = first_fm.max(enter);
             last_fm = last_fm.min(leave);
         }
@@ -180,13 +283,19 @@ impl TemperatureField for Grid {
             return Local::EMPTY;
         };
         if !self.has_flow {
-            return Local { temperature_gev: temperature, flow_factor: 1.0 };
+            return Local {
+                temperature_gev: temperature,
+                flow_factor: 1.0,
+            };
         }
         let [nx, ny, nz] = ray.direction;
         let utau = (1.0 + ux * ux + uy * uy + ueta * ueta).sqrt();
         // Milne to lab: u^t = u^tau cosh eta + (tau u^eta) sinh eta and u^z likewise, with cosh eta = t/tau.
         let longitudinal = (utau * (t - nz * z) + ueta * (z - nz * t)) / tau;
-        Local { temperature_gev: temperature, flow_factor: longitudinal - nx * ux - ny * uy }
+        Local {
+            temperature_gev: temperature,
+            flow_factor: longitudinal - nx * ux - ny * uy,
+        }
     }
 
     fn has_artificial_edge(&self) -> bool {

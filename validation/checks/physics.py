@@ -198,7 +198,9 @@ def check_bias_is_seen(program):
 def multiplicity_checks(program):
     """One check a case of the second Monte Carlo."""
     for case in table("virtuality_shower")["cases"]:
-        if "joint" in case["daughters_start_at"]:
+        # A pair's start virtuality may not exceed the energy of either parton; the table goes beyond.
+        allowed = case["source"].get("sqrt_s_GeV", math.inf) / 2.0
+        if "joint" in case["daughters_start_at"] and case["start_virtuality_GeV"] <= allowed:
             yield f"multiplicity, {case['source']['kind']} {label(case)}", check_multiplicity, program, case
 
 

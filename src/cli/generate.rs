@@ -143,7 +143,7 @@ fn open_sink(
         overwrite: args.overwrite,
     };
     let writer = EventFileWriter::create(path, &describe(plan, generator), options)?;
-    Ok(Sink::File(writer))
+    Ok(Sink::File(Box::new(writer)))
 }
 
 /// Prints what a run came to; the exit code says whether it reached its end.

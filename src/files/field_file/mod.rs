@@ -48,7 +48,7 @@ const FULL_AXES: [&str; 4] = ["tau", "x", "y", "eta"];
 pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
     read_checked(path).map_err(|problem| FieldFileError {
         path: path.to_owned(),
-        problem,
+        problem: Box::new(problem),
     })
 }
 

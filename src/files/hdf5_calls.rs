@@ -85,10 +85,10 @@ pub(super) fn attached_scales(
         found.push(scale);
         0
     }
-    // Iterating over no scales is an error to HDF5.
     // SAFETY: the dataset is open; HDF5 checks the axis.
-    let count = sync(|| hdf5::h5check(unsafe { H5DSget_num_scales(dataset.id(), axis) }))?;
+    let count = sync(|| unsafe { hdf5::h5check(H5DSget_num_scales(dataset.id(), axis)) })?;
     if count == 0 {
+        // visiting none would be an error
         return Ok(Vec::new());
     }
     let mut found: Vec<hid_t> = Vec::new();

@@ -19,6 +19,7 @@ pub mod medium;
 pub mod numerics;
 pub mod qcd;
 pub mod random;
+pub mod report;
 pub mod run;
 pub mod shower;
 pub mod source;

@@ -2,7 +2,10 @@
 
 mod checks;
 
-pub use checks::{Imbalance, check_colour, check_momentum};
+pub use checks::{
+    CheckRules, Imbalance, check_colour, check_event, check_fractions, check_mass_shell,
+    check_momentum, check_structure,
+};
 
 /// What a row of the record stands for (the event file's `status` column).
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

@@ -43,8 +43,8 @@ impl RunCounters for FakeCounters {
         self.trials += other.trials;
     }
 
-    fn named(&self) -> Vec<(&'static str, u64)> {
-        vec![("trials", self.trials)]
+    fn named(&self) -> Vec<(String, u64)> {
+        vec![("trials".to_owned(), self.trials)]
     }
 }
 

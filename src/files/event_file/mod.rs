@@ -3,8 +3,10 @@
 //! Rows are gathered from blocks in memory and packed by any number of workers ([`RowGrouper`], [`Packer`]); one
 //! thread owns the file and appends whole chunks ([`EventFileWriter`]).
 
+mod audit;
 mod checksum;
 mod create;
+mod digest;
 mod error;
 mod layout;
 mod lock;
@@ -17,6 +19,8 @@ mod reader;
 mod row_groups;
 mod writer;
 
+pub use audit::{AuditReport, Finding, audit};
+pub use digest::ContentDigest;
 pub use error::EventFileError;
 pub use layout::{
     Column, EVENT_CHUNK_ROWS, EVENT_COLUMNS, Element, FORMAT_NAME, FORMAT_VERSION,

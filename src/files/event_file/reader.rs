@@ -9,7 +9,7 @@ use super::layout::Table;
 use super::provenance::{Provenance, WeightSums};
 use super::read_attributes::{SampleState, read_provenance};
 use super::read_columns::{EventRows, TableReader};
-use crate::event::EventBlock;
+use crate::event::{EventBlock, EventSummary};
 use crate::files::hdf5_calls::reason;
 
 /// Events whose columns are read at once.
@@ -107,6 +107,20 @@ impl EventFile {
             taken: 0,
             failed: false,
         }
+    }
+
+    /// The summaries of all events in order, without their rows, some at a time.
+    pub fn summaries(
+        &self,
+    ) -> impl Iterator<Item = Result<Vec<EventSummary>, EventFileError>> + '_ {
+        (0..self.event_count())
+            .step_by(EVENTS_AT_ONCE)
+            .map(|first| {
+                let mut batch = EventRows::default();
+                let count = EVENTS_AT_ONCE.min(self.event_count() - first);
+                self.events.read_events(first, count, &mut batch)?;
+                Ok(batch.events)
+            })
     }
 
     /// The one event of number `id`, `None` where the file does not hold it.

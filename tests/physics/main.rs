@@ -6,5 +6,6 @@
 
 mod collinear;
 mod first_branching;
+mod medium;
 mod no_branching;
 mod support;

@@ -7,5 +7,6 @@
 mod collinear;
 mod first_branching;
 mod medium;
+mod medium_sign;
 mod no_branching;
 mod support;

@@ -6,8 +6,10 @@
 mod audit;
 mod checksum;
 mod create;
+mod deflate;
 mod digest;
 mod error;
+mod huffman;
 mod layout;
 mod lock;
 mod pack;

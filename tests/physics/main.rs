@@ -9,4 +9,5 @@ mod first_branching;
 mod medium;
 mod medium_sign;
 mod no_branching;
+mod paths;
 mod support;

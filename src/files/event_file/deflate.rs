@@ -55,7 +55,8 @@ impl<'a> BitWriter<'a> {
         self.pending |= bits << self.count;
         self.count += count;
         if self.count >= u32::BITS {
-            self.bytes.extend_from_slice(&(self.pending as u32).to_le_bytes());
+            self.bytes
+                .extend_from_slice(&(self.pending as u32).to_le_bytes());
             self.pending >>= u32::BITS;
             self.count -= u32::BITS;
         }
@@ -162,7 +163,10 @@ fn for_each_run(bytes: &[u8], mut visit: impl FnMut(u8, usize)) {
     let mut rest = bytes;
     while let [byte, after @ ..] = rest {
         let eight = [*byte; 8];
-        let octets = after.chunks_exact(8).take_while(|octet| **octet == eight).count();
+        let octets = after
+            .chunks_exact(8)
+            .take_while(|octet| **octet == eight)
+            .count();
         let tail = &after[8 * octets..];
         let repeats = 8 * octets + tail.iter().take_while(|next| *next == byte).count();
         visit(*byte, repeats);
@@ -224,7 +228,9 @@ impl BlockCode {
         }
         let lengths = code_lengths(&frequencies, LONGEST_LENGTH_CODE);
         let codes = codes(&lengths);
-        let last_sent = LENGTH_CODE_ORDER.iter().rposition(|symbol| lengths[*symbol] > 0);
+        let last_sent = LENGTH_CODE_ORDER
+            .iter()
+            .rposition(|symbol| lengths[*symbol] > 0);
         let count = (last_sent.expect("some length was sent") + 1).max(FEWEST_LENGTH_CODES);
         writer.put((count - FEWEST_LENGTH_CODES) as u64, LENGTH_CODE_COUNT_BITS);
         for symbol in &LENGTH_CODE_ORDER[..count] {

@@ -104,11 +104,15 @@ mod tests {
         // Fibonacci frequencies make the deepest tree
         let mut frequencies = vec![1u32, 1];
         while frequencies.len() < 25 {
-            frequencies.push(frequencies[frequencies.len() - 1] + frequencies[frequencies.len() - 2]);
+            frequencies
+                .push(frequencies[frequencies.len() - 1] + frequencies[frequencies.len() - 2]);
         }
         for longest in [7, 15] {
             let lengths = code_lengths(&frequencies, longest);
-            let space: f64 = lengths.iter().map(|length| 0.5f64.powi(i32::from(*length))).sum();
+            let space: f64 = lengths
+                .iter()
+                .map(|length| 0.5f64.powi(i32::from(*length)))
+                .sum();
             assert_eq!(space, 1.0);
             assert!(lengths.iter().all(|length| (1..=longest).contains(length)));
         }

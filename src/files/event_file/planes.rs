@@ -46,7 +46,9 @@ impl PlaneEncoder {
         let length = planes.len() / count;
         let textures: Vec<Texture> = planes.chunks_exact(length).map(texture).collect();
         let matched = if self.level > RUNS_ONLY {
-            let last_noise = textures.iter().rposition(|texture| *texture == Texture::Noise);
+            let last_noise = textures
+                .iter()
+                .rposition(|texture| *texture == Texture::Noise);
             last_noise.map_or(0, |place| place + 1)
         } else {
             count

@@ -56,7 +56,11 @@ fn is_even(points: &[f64]) -> bool {
     let (first, cells) = (points[0], points.len() - 1);
     let spacing = (points[cells] - first) / cells as f64;
     let off = |(place, point): (usize, &f64)| (point - first - spacing * place as f64).abs();
-    points.iter().enumerate().map(off).all(|off| off < EVENNESS * spacing)
+    points
+        .iter()
+        .enumerate()
+        .map(off)
+        .all(|off| off < EVENNESS * spacing)
 }
 
 /// Bins of the guide a cell of the axis.
@@ -101,7 +105,9 @@ impl Axis {
     /// Cell and place in it (0 to 1) of a coordinate; beyond an end, the end itself.
     #[inline(always)]
     fn locate(&self, coordinate: f64) -> (usize, f32) {
-        let Some(inverse_width) = self.even else { return self.locate_by_guide(coordinate) };
+        let Some(inverse_width) = self.even else {
+            return self.locate_by_guide(coordinate);
+        };
         // The cast takes numbers below 0 to 0.
         let scaled = (coordinate - self.points[0]) * inverse_width;
         let cell = (scaled as usize).min(self.points.len() - 2);
@@ -210,7 +216,10 @@ fn trilinear(
     let mut sum = [0.0; VALUES];
     let faces = [(corner, 1.0 - u), (corner + strides[0], u)];
     for (face, face_weight) in faces {
-        let edges = [(face, face_weight * (1.0 - v)), (face + strides[1], face_weight * v)];
+        let edges = [
+            (face, face_weight * (1.0 - v)),
+            (face + strides[1], face_weight * v),
+        ];
         for (edge, edge_weight) in edges {
             add_scaled(&mut sum, &values[edge], edge_weight * (1.0 - w));
             add_scaled(&mut sum, &values[edge + strides[2]], edge_weight * w);
@@ -237,7 +246,11 @@ impl HotBox {
         for (place, temperature) in data.temperature_gev.iter().enumerate() {
             if f64::from(*temperature) >= end_temperature_gev {
                 let point = place / depth;
-                let indices = [point / (columns * rows), point / rows % columns, point % rows];
+                let indices = [
+                    point / (columns * rows),
+                    point / rows % columns,
+                    point % rows,
+                ];
                 for (plane, index) in planes.iter_mut().zip(indices) {
                     *plane = [plane[0].min(index), plane[1].max(index)];
                 }
@@ -246,7 +259,10 @@ impl HotBox {
         // Between a hot plane and a cold one the medium reaches into the cell, so each side grows by one plane.
         let ends = |points: &[f64], [first, last]: [usize; 2]| match first {
             usize::MAX => [f64::INFINITY, f64::NEG_INFINITY],
-            _ => [points[first.saturating_sub(1)], points[(last + 1).min(points.len() - 1)]],
+            _ => [
+                points[first.saturating_sub(1)],
+                points[(last + 1).min(points.len() - 1)],
+            ],
         };
         HotBox {
             tau_fm: ends(&data.tau_fm, planes[0]),
@@ -260,9 +276,14 @@ impl TemperatureField for Grid {
     fn stretch(&self, ray: &Ray, _end_temperature_gev: f64) -> Option<Stretch> {
         let [first_tau, last_tau] = self.hot.tau_fm;
         let mut first_fm = ray.distance_to_proper_time(first_tau)?;
-        let mut last_fm = ray.distance_to_proper_time(last_tau).unwrap_or(f64::INFINITY);
+        let mut last_fm = ray
+            .distance_to_proper_time(last_tau)
+            .unwrap_or(f64::INFINITY);
         let [_, x, y, _] = ray.birth_fm;
-        for (ends, start, speed) in [(self.hot.x_fm, x, ray.direction[0]), (self.hot.y_fm, y, ray.direction[1])] {
+        for (ends, start, speed) in [
+            (self.hot.x_fm, x, ray.direction[0]),
+            (self.hot.y_fm, y, ray.direction[1]),
+        ] {
             let [enter, leave] = crossing(ends, start, speed)?;
             first_fm = first_fm.max(enter);
             last_fm = last_fm.min(leave);
@@ -271,7 +292,11 @@ impl TemperatureField for Grid {
             return None;
         }
         let cells = (CELLS_PER_SPACING * (last_fm - first_fm) / self.spacing_fm).ceil();
-        Some(Stretch { first_fm, last_fm, cells: cells.clamp(1.0, MOST_CELLS) as usize })
+        Some(Stretch {
+            first_fm,
+            last_fm,
+            cells: cells.clamp(1.0, MOST_CELLS) as usize,
+        })
     }
 
     #[inline]

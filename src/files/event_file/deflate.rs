@@ -62,6 +62,39 @@ impl<'a> BitWriter<'a> {
         }
     }
 
+    /// Appends the codes of literals; the inner loop of packing, hence three literals for every store.
+    fn put_literals(&mut self, bytes: &[u8], code: &BlockCode) {
+        const WORD: usize = size_of::<u64>();
+        let literals: [(u32, u8); RUN_TOKEN] = std::array::from_fn(|literal| code.tokens[literal]);
+        let mut place = self.bytes.len();
+        self.bytes.resize(place + code.literal_bytes + 3 * WORD, 0);
+        let (mut pending, mut count) = (self.pending, self.count);
+        let mut store = |pending: &mut u64, count: &mut u32| {
+            self.bytes[place..place + WORD].copy_from_slice(&pending.to_le_bytes());
+            place += (*count / u8::BITS) as usize;
+            *pending >>= *count & !(u8::BITS - 1);
+            *count &= u8::BITS - 1;
+        };
+        store(&mut pending, &mut count);
+        let triples = bytes.chunks_exact(3);
+        for triple in triples.clone() {
+            for byte in triple {
+                let (bits, length) = literals[usize::from(*byte)];
+                pending |= u64::from(bits) << count;
+                count += u32::from(length);
+            }
+            store(&mut pending, &mut count);
+        }
+        for byte in triples.remainder() {
+            let (bits, length) = literals[usize::from(*byte)];
+            pending |= u64::from(bits) << count;
+            count += u32::from(length);
+        }
+        store(&mut pending, &mut count);
+        self.bytes.truncate(place);
+        (self.pending, self.count) = (pending, count);
+    }
+
     /// Fills up the last byte with zeros.
     pub(super) fn align(&mut self) {
         while self.count > 0 {
@@ -126,10 +159,7 @@ pub(super) fn put_huffman(writer: &mut BitWriter, bytes: &[u8], last: bool) {
     }
     let code = BlockCode::new(&mut frequencies);
     code.put_header(writer, last);
-    for byte in bytes {
-        let (bits, count) = code.tokens[usize::from(*byte)];
-        writer.put(bits.into(), count.into());
-    }
+    writer.put_literals(bytes, &code);
     code.put_end(writer);
 }
 
@@ -158,6 +188,40 @@ pub(super) fn put_runs(writer: &mut BitWriter, bytes: &[u8], tokens: &mut Vec<u1
     code.put_end(writer);
 }
 
+/// The farthest that a match may lie back.
+pub(super) const WINDOW: usize = 32_768;
+
+/// Appends, once more, the `WINDOW` bytes that came last, in matches over the whole window.
+pub(super) fn put_window_again(writer: &mut BitWriter, last: bool) {
+    // the fixed code (RFC 1951, section 3.2.6): lengths from 280 on have 8 bits from 0xc0 on, others are not needed
+    const FIXED_BLOCK: u64 = 0b01;
+    const FIRST_SYMBOL: usize = 280;
+    const FIRST_CODE: u8 = 0xc0;
+    // the last distance code reaches from 24577 to 32768 with 13 extra bits, here all set
+    const FARTHEST: (u8, u32) = (29, 5);
+    const FARTHEST_EXTRA: (u64, u32) = (0x1fff, 13);
+    const END: (u64, u32) = (0, 7);
+    writer.header(FIXED_BLOCK, last);
+    let distance = FARTHEST.0.reverse_bits() >> (u8::BITS - FARTHEST.1);
+    let mut left = WINDOW;
+    while left > 0 {
+        // the last two matches share what is left, so that neither is too short
+        let length = match left {
+            left if left >= 2 * MATCH.end() => *MATCH.end(),
+            left if left > *MATCH.end() => left / 2,
+            left => left,
+        };
+        let symbol = length_symbol(length);
+        let code = (FIRST_CODE + (symbol.symbol - FIRST_SYMBOL) as u8).reverse_bits();
+        writer.put(code.into(), u8::BITS);
+        writer.put(symbol.extra.into(), symbol.extra_bits.into());
+        writer.put(distance.into(), FARTHEST.1);
+        writer.put(FARTHEST_EXTRA.0, FARTHEST_EXTRA.1);
+        left -= length;
+    }
+    writer.put(END.0, END.1);
+}
+
 /// Visits each byte that differs from the one before it, with the number of repeats that follow it.
 fn for_each_run(bytes: &[u8], mut visit: impl FnMut(u8, usize)) {
     let mut rest = bytes;
@@ -179,6 +243,8 @@ struct BlockCode {
     lengths: Vec<u8>,
     tokens: Vec<(u32, u8)>,
     end: (u32, u8),
+    /// Bytes that the counted literals take.
+    literal_bytes: usize,
 }
 
 impl BlockCode {
@@ -196,7 +262,13 @@ impl BlockCode {
             let bits_with_distance = bits + place.extra_bits + 1;
             tokens.push((code | place.extra << bits, bits_with_distance));
         }
+        let literal_bits: usize = frequencies[..RUN_TOKEN]
+            .iter()
+            .zip(&lengths)
+            .map(|(frequency, length)| *frequency as usize * usize::from(*length))
+            .sum();
         BlockCode {
+            literal_bytes: literal_bits.div_ceil(u8::BITS as usize),
             end: symbol(END_OF_BLOCK),
             tokens,
             lengths,
@@ -358,6 +430,19 @@ mod tests {
                 assert_eq!(inflate(&stream, bytes.len()), bytes, "kind {kind}");
             }
         }
+    }
+
+    #[test]
+    fn a_window_is_repeated() {
+        let plane = noisy(WINDOW, 256);
+        let mut stream = Vec::new();
+        let mut writer = BitWriter::new(&mut stream);
+        put_stored(&mut writer, &plane, false);
+        put_window_again(&mut writer, false);
+        put_window_again(&mut writer, true);
+        writer.align();
+        assert!(stream.len() < WINDOW + 1000);
+        assert_eq!(inflate(&stream, 3 * WINDOW), [&plane[..]; 3].concat());
     }
 
     #[test]

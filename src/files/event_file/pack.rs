@@ -1,17 +1,20 @@
 //! Packing: rows in memory to finished chunks, as HDF5's shuffle, deflate and fletcher32 filters would make them.
 
 use std::ops::Range;
-use std::sync::Arc;
 
 use super::checksum::fletcher32;
-use super::layout::{Column, Element, FULL_MANTISSA_BITS, Table};
+use super::layout::{
+    EVENT_COLUMNS, Element, FULL_MANTISSA_BITS, PARTON_COLUMNS, PLACE_COMPONENTS, Table,
+};
 use super::planes::PlaneEncoder;
 use super::row_groups::RowGroup;
 use crate::config::RecordSettings;
-use crate::event::{EventBlock, EventSummary, Parton};
+use crate::event::{EventSummary, Parton};
 
-/// Values gathered before they are scattered to byte planes: few enough to stay in the first-level cache.
-const TILE_VALUES: usize = 512;
+/// Rows of which all columns are gathered before the next ones are looked at: few enough to stay in the cache.
+const TILE_ROWS: usize = 256;
+/// Words that are transposed at once.
+const TRANSPOSED: usize = size_of::<u64>();
 
 /// The finished chunks of one row group, one a column.
 #[derive(Debug, Default)]
@@ -60,6 +63,7 @@ impl PackedGroup {
 pub struct Packer {
     encoder: Option<PlaneEncoder>,
     momentum_bits: Option<u8>,
+    /// Byte planes of all columns of a group, one column after another.
     planes: Vec<u8>,
 }
 
@@ -76,147 +80,199 @@ impl Packer {
     /// Packs a group into `packed`, whose memory is reused and whose content is lost.
     pub fn pack(&mut self, group: &RowGroup, packed: &mut PackedGroup) {
         packed.restart(group);
-        if group.table == Table::Events {
-            let mut end = group.first_parton_row;
-            for (block, rows) in &group.segments {
-                for event in &block.events[rows.clone()] {
-                    end += i64::from(event.partons_count);
-                    packed.parton_row_ends.push(end);
-                }
-            }
-        }
-        for column in group.table.columns() {
+        let columns = group.table.columns();
+        let lengths = columns.iter().map(|column| column.chunk_bytes(group.table));
+        let total = lengths.clone().sum();
+        if group.rows < group.table.chunk_rows() {
             self.planes.clear();
-            self.planes.resize(column.chunk_bytes(group.table), 0);
-            match group.table {
-                Table::Events => self.gather_event_column(column, group),
-                Table::Partons => self.gather_parton_column(column, group),
-            }
-            self.append_chunk(column.element, packed);
+        }
+        self.planes.resize(total, 0);
+        match group.table {
+            Table::Events => self.gather_events(group, packed),
+            Table::Partons => self.gather_partons(group),
+        }
+        let mut start = 0;
+        for (column, length) in columns.iter().zip(lengths) {
+            self.append_chunk(start..start + length, column.element, packed);
+            start += length;
         }
     }
 
-    fn append_chunk(&mut self, element: Element, packed: &mut PackedGroup) {
+    fn append_chunk(&mut self, planes: Range<usize>, element: Element, packed: &mut PackedGroup) {
         let start = packed.bytes.len();
+        let planes = &self.planes[planes];
         match &mut self.encoder {
-            Some(encoder) => encoder.encode(&self.planes, element.bytes(), &mut packed.bytes),
-            None => packed.bytes.extend_from_slice(&self.planes),
+            Some(encoder) => encoder.encode(planes, element.bytes(), &mut packed.bytes),
+            None => packed.bytes.extend_from_slice(planes),
         }
         let checksum = fletcher32(&packed.bytes[start..]);
         packed.bytes.extend_from_slice(&checksum.to_le_bytes());
         packed.chunk_ends.push(packed.bytes.len());
     }
 
-    fn gather_event_column(&mut self, column: &Column, group: &RowGroup) {
-        let mut sink = ColumnSink::new(group, &mut self.planes);
-        match column.name {
-            "id" => sink.events(|event| [event.id.to_le_bytes()]),
-            "source_weight" => sink.events(|event| [event.source_weight.to_le_bytes()]),
-            "weight" => sink.events(|event| [event.weight.to_le_bytes()]),
-            "partons_start" => {
-                let mut next = group.first_parton_row;
-                sink.events(|event| {
-                    let start = next;
-                    next += i64::from(event.partons_count);
-                    [start.to_le_bytes()]
-                });
-            }
-            "partons_count" => sink.events(|event| [event.partons_count.to_le_bytes()]),
-            "hard_scale" => sink.events(|event| [event.hard_scale_gev.to_le_bytes()]),
-            "origin" => sink.events(|event| event.origin_fm.map(f32::to_le_bytes)),
-            "field" => sink.events(|event| [event.field.to_le_bytes()]),
-            name => unreachable!("no rule to gather event column {name}"),
-        }
-    }
-
-    fn gather_parton_column(&mut self, column: &Column, group: &RowGroup) {
-        let mut sink = ColumnSink::new(group, &mut self.planes);
-        match column.name {
-            "pdg" => sink.partons(|parton| [parton.pdg.to_le_bytes()]),
-            "status" => sink.partons(|parton| [(parton.status as i8).to_le_bytes()]),
-            "parent" => sink.partons(|parton| [parton.parent.to_le_bytes()]),
-            "colour" => sink.partons(|parton| [parton.colour.to_le_bytes()]),
-            "anticolour" => sink.partons(|parton| [parton.anticolour.to_le_bytes()]),
-            "px" => sink.momentum(0, self.momentum_bits),
-            "py" => sink.momentum(1, self.momentum_bits),
-            "pz" => sink.momentum(2, self.momentum_bits),
-            "energy" => sink.momentum(3, self.momentum_bits),
-            "virtuality_squared" => {
-                sink.partons(|parton| [parton.virtuality_squared_gev2.to_le_bytes()])
-            }
-            "splitting_fraction" => {
-                sink.partons(|parton| [parton.splitting_fraction.to_le_bytes()])
-            }
-            "jet_fraction" => sink.partons(|parton| [parton.jet_fraction.to_le_bytes()]),
-            "birth_t" => sink.partons(|parton| [parton.birth_fm[0].to_le_bytes()]),
-            "birth_x" => sink.partons(|parton| [parton.birth_fm[1].to_le_bytes()]),
-            "birth_y" => sink.partons(|parton| [parton.birth_fm[2].to_le_bytes()]),
-            "birth_z" => sink.partons(|parton| [parton.birth_fm[3].to_le_bytes()]),
-            "channel" => sink.partons(|parton| [[parton.channel]]),
-            name => unreachable!("no rule to gather parton column {name}"),
-        }
-    }
-}
-
-/// Takes one column of a group apart into byte planes: all lowest bytes first, the highest last (HDF5's shuffle).
-struct ColumnSink<'a> {
-    segments: &'a [(Arc<EventBlock>, Range<usize>)],
-    planes: &'a mut [u8],
-    filled: usize,
-}
-
-impl<'a> ColumnSink<'a> {
-    fn new(group: &'a RowGroup, planes: &'a mut [u8]) -> Self {
-        ColumnSink {
-            segments: &group.segments,
-            planes,
-            filled: 0,
-        }
-    }
-
-    fn events<const N: usize, const W: usize>(
-        &mut self,
-        mut value: impl FnMut(&EventSummary) -> [[u8; N]; W],
-    ) {
-        for (block, rows) in self.segments {
-            self.append(&block.events[rows.clone()], &mut value);
-        }
-    }
-
-    fn partons<const N: usize>(&mut self, mut value: impl FnMut(&Parton) -> [[u8; N]; 1]) {
-        for (block, rows) in self.segments {
-            self.append(&block.partons[rows.clone()], &mut value);
-        }
-    }
-
-    fn momentum(&mut self, component: usize, kept_bits: Option<u8>) {
-        match kept_bits {
-            None => self.partons(|parton| [parton.momentum_gev[component].to_le_bytes()]),
-            Some(bits) => self.partons(|parton| {
-                [round_mantissa(parton.momentum_gev[component], bits).to_le_bytes()]
-            }),
-        }
-    }
-
-    fn append<R, const N: usize, const W: usize>(
-        &mut self,
-        rows: &[R],
-        mut value: impl FnMut(&R) -> [[u8; N]; W],
-    ) {
-        let stride = self.planes.len() / N;
-        let mut tile = [[0; N]; TILE_VALUES];
-        for rows in rows.chunks(TILE_VALUES / W) {
-            for (place, row) in tile.chunks_exact_mut(W).zip(rows) {
-                place.copy_from_slice(&value(row));
-            }
-            let count = rows.len() * W;
-            for (byte, plane) in self.planes.chunks_exact_mut(stride).enumerate() {
-                let targets = &mut plane[self.filled..self.filled + count];
-                for (target, value) in targets.iter_mut().zip(&tile) {
-                    *target = value[byte];
+    fn gather_events(&mut self, group: &RowGroup, packed: &mut PackedGroup) {
+        let mut first_parton_row = group.first_parton_row;
+        let mut filled = 0;
+        for (block, rows) in &group.segments {
+            for tile in block.events[rows.clone()].chunks(TILE_ROWS) {
+                let mut planes = &mut self.planes[..];
+                for column in &EVENT_COLUMNS {
+                    let (own, others) = planes.split_at_mut(column.chunk_bytes(Table::Events));
+                    planes = others;
+                    scatter_events(column.name, tile, first_parton_row, own, filled);
                 }
+                for event in tile {
+                    first_parton_row += i64::from(event.partons_count);
+                    packed.parton_row_ends.push(first_parton_row);
+                }
+                filled += tile.len();
             }
-            self.filled += count;
+        }
+    }
+
+    fn gather_partons(&mut self, group: &RowGroup) {
+        let mut filled = 0;
+        for (block, rows) in &group.segments {
+            for tile in block.partons[rows.clone()].chunks(TILE_ROWS) {
+                let mut planes = &mut self.planes[..];
+                for column in &PARTON_COLUMNS {
+                    let (own, others) = planes.split_at_mut(column.chunk_bytes(Table::Partons));
+                    planes = others;
+                    scatter_partons(column.name, tile, self.momentum_bits, own, filled);
+                }
+                filled += tile.len();
+            }
+        }
+    }
+}
+
+/// Puts one column of some events, whose first parton row is given, into its planes.
+fn scatter_events(
+    column: &str,
+    events: &[EventSummary],
+    first_parton_row: i64,
+    planes: &mut [u8],
+    filled: usize,
+) {
+    let to = (planes, filled);
+    match column {
+        "id" => scatter::<8, 1, _>(events, to, |event| [event.id as u64]),
+        "source_weight" => scatter::<8, 1, _>(events, to, |event| [event.source_weight.to_bits()]),
+        "weight" => scatter::<8, 1, _>(events, to, |event| [event.weight.to_bits()]),
+        "partons_start" => {
+            let mut next = first_parton_row;
+            scatter::<8, 1, _>(events, to, |event| {
+                let start = next;
+                next += i64::from(event.partons_count);
+                [start as u64]
+            });
+        }
+        "partons_count" => scatter::<4, 1, _>(events, to, |event| [bits(event.partons_count)]),
+        "hard_scale" => scatter::<8, 1, _>(events, to, |event| [event.hard_scale_gev.to_bits()]),
+        "origin" => scatter::<4, PLACE_COMPONENTS, _>(events, to, |event| {
+            event.origin_fm.map(|component| component.to_bits().into())
+        }),
+        "field" => scatter::<4, 1, _>(events, to, |event| [bits(event.field)]),
+        name => unreachable!("no rule to gather event column {name}"),
+    }
+}
+
+/// Puts one column of some partons into its planes.
+fn scatter_partons(
+    column: &str,
+    rows: &[Parton],
+    momentum_bits: Option<u8>,
+    planes: &mut [u8],
+    filled: usize,
+) {
+    let to = (planes, filled);
+    match column {
+        "pdg" => scatter::<4, 1, _>(rows, to, |row| [bits(row.pdg)]),
+        "status" => scatter::<1, 1, _>(rows, to, |row| [row.status as u64]),
+        "parent" => scatter::<4, 1, _>(rows, to, |row| [bits(row.parent)]),
+        "colour" => scatter::<4, 1, _>(rows, to, |row| [bits(row.colour)]),
+        "anticolour" => scatter::<4, 1, _>(rows, to, |row| [bits(row.anticolour)]),
+        "px" => scatter_momentum(rows, to, 0, momentum_bits),
+        "py" => scatter_momentum(rows, to, 1, momentum_bits),
+        "pz" => scatter_momentum(rows, to, 2, momentum_bits),
+        "energy" => scatter_momentum(rows, to, 3, momentum_bits),
+        "virtuality_squared" => scatter_single(rows, to, |row| row.virtuality_squared_gev2),
+        "splitting_fraction" => scatter_single(rows, to, |row| row.splitting_fraction),
+        "jet_fraction" => scatter_single(rows, to, |row| row.jet_fraction),
+        "birth_t" => scatter_single(rows, to, |row| row.birth_fm[0]),
+        "birth_x" => scatter_single(rows, to, |row| row.birth_fm[1]),
+        "birth_y" => scatter_single(rows, to, |row| row.birth_fm[2]),
+        "birth_z" => scatter_single(rows, to, |row| row.birth_fm[3]),
+        "channel" => scatter::<1, 1, _>(rows, to, |row| [row.channel.into()]),
+        name => unreachable!("no rule to gather parton column {name}"),
+    }
+}
+
+fn scatter_momentum(
+    rows: &[Parton],
+    to: (&mut [u8], usize),
+    component: usize,
+    kept_bits: Option<u8>,
+) {
+    match kept_bits {
+        None => scatter::<8, 1, _>(rows, to, |row| [row.momentum_gev[component].to_bits()]),
+        Some(kept) => scatter::<8, 1, _>(rows, to, |row| {
+            [round_mantissa(row.momentum_gev[component], kept).to_bits()]
+        }),
+    }
+}
+
+fn scatter_single(rows: &[Parton], to: (&mut [u8], usize), value: impl Fn(&Parton) -> f32) {
+    scatter::<4, 1, _>(rows, to, |row| [value(row).to_bits().into()]);
+}
+
+fn bits(value: i32) -> u64 {
+    (value as u32).into()
+}
+
+/// Takes `W` values a row apart into `BYTES` byte planes: all lowest bytes first, the highest last (HDF5's shuffle).
+/// The first `filled` rows of the planes are there already.
+fn scatter<const BYTES: usize, const W: usize, R>(
+    rows: &[R],
+    (planes, filled): (&mut [u8], usize),
+    mut values: impl FnMut(&R) -> [u64; W],
+) {
+    let stride = planes.len() / BYTES;
+    let mut place = filled * W;
+    let whole = rows.chunks_exact(TRANSPOSED / W);
+    let rest = whole.remainder();
+    for rows in whole {
+        let mut square = [0; TRANSPOSED];
+        for (words, row) in square.chunks_exact_mut(W).zip(rows) {
+            words.copy_from_slice(&values(row));
+        }
+        transpose_bytes(&mut square);
+        for (plane, eight) in planes.chunks_exact_mut(stride).zip(square) {
+            plane[place..place + TRANSPOSED].copy_from_slice(&eight.to_le_bytes());
+        }
+        place += TRANSPOSED;
+    }
+    for value in rest.iter().flat_map(values) {
+        for (plane, byte) in planes.chunks_exact_mut(stride).zip(value.to_le_bytes()) {
+            plane[place] = byte;
+        }
+        place += 1;
+    }
+}
+
+/// Transposes eight times eight bytes: byte j of word i changes places with byte i of word j.
+fn transpose_bytes(words: &mut [u64; TRANSPOSED]) {
+    const HALVES: [(usize, u64); 3] = [
+        (4, 0x0000_0000_ffff_ffff),
+        (2, 0x0000_ffff_0000_ffff),
+        (1, 0x00ff_00ff_00ff_00ff),
+    ];
+    for (distance, mask) in HALVES {
+        let shift = u8::BITS * distance as u32;
+        for low in (0..TRANSPOSED).filter(|word| word & distance == 0) {
+            let swapped = ((words[low] >> shift) ^ words[low + distance]) & mask;
+            words[low + distance] ^= swapped;
+            words[low] ^= swapped << shift;
         }
     }
 }
@@ -236,7 +292,19 @@ pub(super) fn round_mantissa(value: f64, kept_bits: u8) -> f64 {
 
 #[cfg(test)]
 mod tests {
-    use super::round_mantissa;
+    use super::{round_mantissa, transpose_bytes};
+
+    #[test]
+    fn bytes_change_places_with_words() {
+        let mut words = std::array::from_fn(|word| {
+            u64::from_le_bytes(std::array::from_fn(|byte| (10 * word + byte) as u8))
+        });
+        transpose_bytes(&mut words);
+        for (word, value) in words.iter().enumerate() {
+            let expected: [u8; 8] = std::array::from_fn(|byte| (10 * byte + word) as u8);
+            assert_eq!(value.to_le_bytes(), expected);
+        }
+    }
 
     #[test]
     fn rounding_is_to_nearest_even_and_carries_into_the_exponent() {

@@ -709,7 +709,7 @@ fn two_processes_do_not_share_an_output() {
 }
 
 #[test]
-fn a_full_disk_is_exit_4_and_keeps_what_was_committed() {
+fn a_full_disk_is_exit_4_and_leaves_a_readable_file() {
     let desk = Desk::new();
     let config = desk.config(&vacuum());
     // a limit on the size of files stands for a full disk
@@ -739,5 +739,6 @@ fn a_full_disk_is_exit_4_and_keeps_what_was_committed() {
         assert!(!EventFile::open(&path).unwrap().is_complete());
         let report = audit(&path).unwrap();
         assert!(report.is_clean(), "{:?}", report.findings);
+        assert_eq!(desk.names(), ["run.h5", config]);
     }
 }

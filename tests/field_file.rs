@@ -61,7 +61,7 @@ fn read_made(make: impl Fn(&FieldMaker)) -> Result<FieldData, FieldProblem> {
     let maker = with_axes(&place.path);
     make(&maker);
     drop(maker);
-    read_field(&place.path).map_err(|error| error.problem)
+    read_field(&place.path).map_err(|error| *error.problem)
 }
 
 /// Reads a sound field with something added or changed by `make`.
@@ -329,7 +329,7 @@ fn bad_axes_are_refused() {
             Some("GeV"),
         );
         drop(maker);
-        read_field(&place.path).map_err(|error| error.problem)
+        read_field(&place.path).map_err(|error| *error.problem)
     };
     assert!(with(&[0.6, 1.0, 1.5], Some("fm")).is_ok());
     assert!(refused(with(&[1.0, 0.6], Some("fm"))).contains("strictly increasing"));
@@ -439,17 +439,17 @@ fn other_formats_are_refused_with_the_remedy() {
     );
     std::fs::write(&place.path, b"tau,x,y,T\n").unwrap();
     assert_eq!(
-        read_field(&place.path).unwrap_err().problem,
+        *read_field(&place.path).unwrap_err().problem,
         FieldProblem::NotHdf5
     );
     std::fs::write(&place.path, b"").unwrap();
     assert_eq!(
-        read_field(&place.path).unwrap_err().problem,
+        *read_field(&place.path).unwrap_err().problem,
         FieldProblem::NotHdf5
     );
     let absent = place.path.with_file_name("absent.nc");
     assert!(matches!(
-        read_field(&absent).unwrap_err().problem,
+        *read_field(&absent).unwrap_err().problem,
         FieldProblem::Unreadable(_)
     ));
 }

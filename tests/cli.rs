@@ -8,6 +8,9 @@ use std::time::{Duration, Instant};
 use serde_json::{Value, json};
 use spindrift::event::Parton;
 use spindrift::files::event_file::{EventFile, audit};
+use spindrift::run::assemble::assemble;
+use spindrift::run::forecast::Forecast;
+use spindrift::run::provenance::event_ids;
 
 const DONE: i32 = 0;
 const BAD_REQUEST: i32 = 2;
@@ -580,6 +583,53 @@ fn a_reader_that_leaves_early_ends_the_writer_quietly() {
     assert!(matches!(output.status.code(), None | Some(DONE)));
 }
 
+#[test]
+fn a_full_stdout_is_exit_4_not_a_defect() {
+    let desk = Desk::new();
+    assert_ends(&desk.run(&["generate", desk.config(&brick())]), DONE);
+    let cases: [&[&str]; 4] = [
+        &["schema"],
+        &["show", "run.h5"],
+        &["audit", "run.h5"],
+        &["generate", "run.json", "--discard", "--json"],
+    ];
+    for arguments in cases {
+        let full = fs::OpenOptions::new()
+            .write(true)
+            .open("/dev/full")
+            .unwrap();
+        let output = desk.command(arguments).stdout(full).output().unwrap();
+        assert_ends(&output, MACHINE);
+        assert!(
+            stderr(&output).contains("standard output"),
+            "{}",
+            stderr(&output)
+        );
+    }
+}
+
+#[test]
+fn the_forecast_of_bytes_is_near_the_size_of_the_file() {
+    let desk = Desk::new();
+    let mut config = brick();
+    config["events"] = json!(10_000);
+    let name = desk.config(&config);
+    assert_ends(&desk.run(&["generate", name]), DONE);
+    let made = fs::metadata(desk.path("run.h5")).unwrap().len() as f64;
+    let plan = spindrift::config::load(&desk.path(name)).unwrap();
+    let generator = assemble(&plan).unwrap().generator;
+    let forecast = |record| Forecast::measure(&generator, event_ids(&plan), 1, record);
+    // 256 events give the mean multiplicity to 2 %; attributes and indexes, 0.1 MB, are left out of the forecast
+    let told = forecast(Some(&plan.record));
+    assert!(
+        (told.bytes / made - 1.0).abs() < 0.12,
+        "{} for {made}",
+        told.bytes
+    );
+    assert!(told.events_sampled >= 256 && told.seconds > 0.0);
+    assert_eq!(forecast(None).bytes, 0.0);
+}
+
 // ------------------------------------------------------------------------------------------------ stops and failures
 
 /// Waits until a file has grown beyond `bytes`.
@@ -659,7 +709,7 @@ fn two_processes_do_not_share_an_output() {
 }
 
 #[test]
-fn a_full_disk_is_exit_4_and_keeps_what_was_committed() {
+fn a_full_disk_is_exit_4_and_leaves_a_readable_file() {
     let desk = Desk::new();
     let config = desk.config(&vacuum());
     // a limit on the size of files stands for a full disk
@@ -689,5 +739,6 @@ fn a_full_disk_is_exit_4_and_keeps_what_was_committed() {
         assert!(!EventFile::open(&path).unwrap().is_complete());
         let report = audit(&path).unwrap();
         assert!(report.is_clean(), "{:?}", report.findings);
+        assert_eq!(desk.names(), ["run.h5", config]);
     }
 }

@@ -1,17 +1,16 @@
 //! `spindrift generate`: showers events as a config says and streams them to an event file.
 
-use std::io::{Write, stdout};
 use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::sync::atomic::Ordering;
 use std::time::Instant;
 
-use anyhow::{Context, bail};
+use anyhow::Context;
 
 use super::progress::Teller;
 use super::summary::{SummaryText, forecast_line, stop_message};
-use super::words::say;
-use super::{EXIT_STOPPED, output, signals, threads};
+use super::words::{print_data, say};
+use super::{EXIT_STOPPED, later, output, signals, threads};
 use crate::config::{Overrides, RunPlan, load_with};
 use crate::files::event_file::{EventFileWriter, WriteOptions};
 use crate::run::assemble::assemble;
@@ -96,7 +95,10 @@ pub fn run(args: &GenerateArgs) -> anyhow::Result<ExitCode> {
         let cores = threads.min(threads::cores());
         let record = output.as_ref().map(|_| &plan.record);
         let forecast = Forecast::measure(&generator, event_ids(&plan), cores, record);
-        say(&forecast_line(plan.events, &forecast, output.as_deref()));
+        // the new file holds all but the columns already
+        let empty_file = output.as_ref().and_then(|path| path.metadata().ok());
+        let size = empty_file.map(|about| about.len() as f64 + forecast.bytes);
+        say(&forecast_line(plan.events, &forecast, size));
     }
     let teller = Teller::new(plan.events, args.quiet);
     let start = Instant::now();
@@ -119,7 +121,7 @@ fn refuse_planned(args: &GenerateArgs) -> anyhow::Result<()> {
         ("--resume", args.resume),
     ];
     match planned.iter().find(|(_, given)| *given) {
-        Some((option, _)) => bail!("{option} {}", super::NOT_BUILT),
+        Some((option, _)) => later(option).map(|_| ()),
         None => Ok(()),
     }
 }
@@ -143,7 +145,7 @@ fn open_sink(
         overwrite: args.overwrite,
     };
     let writer = EventFileWriter::create(path, &describe(plan, generator), options)?;
-    Ok(Sink::File(writer))
+    Ok(Sink::File(Box::new(writer)))
 }
 
 /// Prints what a run came to; the exit code says whether it reached its end.
@@ -157,7 +159,7 @@ fn close(args: &GenerateArgs, summary: &RunSummary) -> anyhow::Result<ExitCode> 
     }
     if args.json {
         let json = serde_json::to_string_pretty(summary)?;
-        writeln!(stdout(), "{json}").context("cannot print the summary; the events are safe")?;
+        print_data(&format!("{json}\n"))?;
     }
     Ok(if summary.complete {
         ExitCode::SUCCESS

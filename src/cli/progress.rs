@@ -1,10 +1,11 @@
 //! How far a run has come: a bar on a terminal, a line now and then in a log.
 
 use std::cell::Cell;
+use std::fmt::Write;
 use std::io::{IsTerminal, stderr};
 use std::time::{Duration, Instant};
 
-use indicatif::{ProgressBar, ProgressStyle};
+use indicatif::{ProgressBar, ProgressState, ProgressStyle};
 
 use super::words::{grouped, percent, say, time};
 use crate::run::Progress;
@@ -14,9 +15,10 @@ const FIRST_WAIT: Duration = Duration::from_secs(10);
 /// up to this.
 const LONGEST_WAIT: Duration = Duration::from_secs(300);
 
-const BAR: &str =
-    "{bar:30} {percent:>3} %  {human_pos} of {human_len} events  {per_sec}  {eta} left";
-const BAR_CHARACTERS: &str = "=~ ";
+/// One line, as wide as the terminal.
+const BAR: &str = "{wide_bar} {percent:>3} %  {done} of {all} events  {rate}/s  {left} left";
+/// Done, at work, to do.
+const BAR_CHARACTERS: &str = "=~.";
 
 /// Tells how far a run has come.
 pub(super) enum Teller {
@@ -34,9 +36,8 @@ impl Teller {
         if quiet {
             Teller::Silent
         } else if stderr().is_terminal() {
-            let style = ProgressStyle::with_template(BAR).expect("a template without mistakes");
             let bar = ProgressBar::new(events);
-            bar.set_style(style.progress_chars(BAR_CHARACTERS));
+            bar.set_style(bar_style());
             Teller::Bar(bar)
         } else {
             Teller::Log(Log::new(Instant::now()))
@@ -49,6 +50,28 @@ impl Teller {
             bar.finish_and_clear();
         }
     }
+}
+
+fn bar_style() -> ProgressStyle {
+    let style = ProgressStyle::with_template(BAR).expect("a template without mistakes");
+    let count = |value: u64, out: &mut dyn Write| {
+        // a line on a terminal that cannot be written is no reason to stop
+        let _ = out.write_str(&grouped(value));
+    };
+    style
+        .progress_chars(BAR_CHARACTERS)
+        .with_key("done", move |state: &ProgressState, out: &mut dyn Write| {
+            count(state.pos(), out)
+        })
+        .with_key("all", move |state: &ProgressState, out: &mut dyn Write| {
+            count(state.len().unwrap_or(0), out)
+        })
+        .with_key("rate", move |state: &ProgressState, out: &mut dyn Write| {
+            count(state.per_sec() as u64, out)
+        })
+        .with_key("left", |state: &ProgressState, out: &mut dyn Write| {
+            let _ = out.write_str(&time(state.eta().as_secs_f64()));
+        })
 }
 
 impl Progress for Teller {

@@ -1,7 +1,6 @@
 //! What a person reads before and after a run: the forecast and the closing summary.
 
 use std::fmt::{Display, Formatter, Result};
-use std::path::Path;
 
 use super::words::{bytes, grouped, or_dash, percent, time, with_error};
 use crate::run::forecast::Forecast;
@@ -38,13 +37,10 @@ impl Display for SummaryText<'_> {
 }
 
 /// What to expect of a run.
-pub(super) fn forecast_line(events: u64, forecast: &Forecast, output: Option<&Path>) -> String {
-    let size = match output {
-        Some(path) => format!("{} in {}", bytes(forecast.bytes), path.display()),
-        None => "nothing written".to_owned(),
-    };
+pub(super) fn forecast_line(events: u64, forecast: &Forecast, size_bytes: Option<f64>) -> String {
+    let size = size_bytes.map_or("nothing written".to_owned(), bytes);
     format!(
-        "forecast: {} events, about {}, {size} (measured on the first {})",
+        "forecast: {} events, about {} if the cores are free, {size} (from the first {})",
         grouped(events),
         time(forecast.seconds),
         grouped(forecast.events_sampled),

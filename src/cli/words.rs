@@ -1,8 +1,10 @@
 //! Words on stderr, and numbers as they read well.
 
 use std::fmt;
-use std::io::{Write, stderr};
+use std::io::{Write, stderr, stdout};
 use std::time::Duration;
+
+use anyhow::Context;
 
 const SECONDS_A_MINUTE: u64 = 60;
 const SECONDS_AN_HOUR: u64 = 3600;
@@ -18,6 +20,18 @@ const MOST_DECIMALS: i32 = 9;
 /// Prints lines on stderr. That nobody listens is no reason to stop a run, so failures are ignored.
 pub fn say(lines: &str) {
     let _ = writeln!(stderr(), "{lines}");
+}
+
+/// Prints data on stdout; the text brings its own line ends.
+///
+/// # Errors
+/// What the operating system says, such as a full disk.
+pub(super) fn print_data(text: &str) -> anyhow::Result<()> {
+    let mut stdout = stdout().lock();
+    let printed = stdout
+        .write_all(text.as_bytes())
+        .and_then(|()| stdout.flush());
+    printed.context("cannot write to standard output")
 }
 
 /// A count with its digits in groups of three: `1,234,567`.

@@ -14,6 +14,7 @@ unsafe extern "C" {
     fn H5DSset_scale(dataset: hid_t, name: *const c_char) -> herr_t;
     fn H5DSattach_scale(dataset: hid_t, scale: hid_t, axis: c_uint) -> herr_t;
     fn H5DSset_label(dataset: hid_t, axis: c_uint, label: *const c_char) -> herr_t;
+    fn H5DSget_num_scales(dataset: hid_t, axis: c_uint) -> c_int;
     fn H5DSiterate_scales(
         dataset: hid_t,
         axis: c_uint,
@@ -83,6 +84,12 @@ pub(super) fn attached_scales(
         unsafe { hdf5_sys::h5i::H5Iinc_ref(scale) };
         found.push(scale);
         0
+    }
+    // SAFETY: the dataset is open; HDF5 checks the axis.
+    let count = sync(|| unsafe { hdf5::h5check(H5DSget_num_scales(dataset.id(), axis)) })?;
+    if count == 0 {
+        // visiting none would be an error
+        return Ok(Vec::new());
     }
     let mut found: Vec<hid_t> = Vec::new();
     let mut start: c_int = 0;

@@ -8,10 +8,10 @@ use super::EventGenerator;
 use super::block::event_count;
 use crate::config::RecordSettings;
 use crate::event::EventBlock;
-use crate::files::event_file::{PackedGroup, Packer, RowGroup, RowGrouper, Table};
+use crate::files::event_file::{PackedGroup, Packer, RowGroup, Table};
 
 /// The sample is this share of the run, so that the forecast costs next to nothing beside it,
-const SAMPLE_SHARE: u64 = 100;
+const SAMPLE_SHARE: u64 = 50;
 /// but at least so many events,
 const FEWEST_EVENTS: u64 = 256;
 /// and ends when it has filled a chunk of every parton column,
@@ -47,9 +47,14 @@ impl Forecast {
         let events_sampled = block.events.len() as u64;
         let mut bytes = 0.0;
         if let Some(record) = record {
-            let cost = packing(record, Arc::new(block), scale);
-            seconds += cost.seconds;
-            bytes = cost.bytes;
+            let mut packer = Packer::new(record);
+            let rows = (scale * block.partons.len() as f64) as u64;
+            let block = Arc::new(block);
+            for (table, rows) in [(Table::Events, event_count(&ids)), (Table::Partons, rows)] {
+                let cost = packing(&mut packer, &block, table, rows);
+                seconds += cost.seconds;
+                bytes += cost.bytes;
+            }
         }
         Forecast {
             events_sampled,
@@ -82,42 +87,40 @@ struct Cost {
     bytes: f64,
 }
 
-/// Cost of packing `scale` times the events of a block.
-fn packing(record: &RecordSettings, block: Arc<EventBlock>, scale: f64) -> Cost {
-    let mut grouper = RowGrouper::default();
-    let mut groups = Vec::new();
-    grouper.push(&block, |group| groups.push(group));
-    groups.extend(grouper.finish());
-    let mut packer = Packer::new(record);
+/// Cost of packing `rows` rows of a table, if they are like those of the block.
+///
+/// Two chunks are packed, a whole one and the last one of the file, which is padded; where the block holds too few rows
+/// they are taken again. (From compression 2 on, that repetition is found and makes a forecast of a short run low.)
+fn packing(packer: &mut Packer, block: &Arc<EventBlock>, table: Table, rows: u64) -> Cost {
+    let chunk = table.chunk_rows() as u64;
     let mut total = Cost::default();
-    for table in [Table::Events, Table::Partons] {
-        // chunks are padded to full length: what the padding costs is measured on a group without rows
-        let empty = pack(&mut packer, &empty_group(table));
-        let (mut filled, mut chunks) = (Cost::default(), 0.0);
-        for group in groups.iter().filter(|group| group.table == table) {
-            let cost = pack(&mut packer, group);
-            let padding = 1.0 - share(group);
-            filled.seconds += cost.seconds - padding * empty.seconds;
-            filled.bytes += cost.bytes - padding * empty.bytes;
-            chunks += share(group);
+    for (chunks, rows) in [(rows / chunk, chunk), (1, rows % chunk)] {
+        if chunks > 0 && rows > 0 {
+            let one = pack(packer, &group(block, table, rows as usize));
+            total.seconds += chunks as f64 * one.seconds;
+            total.bytes += chunks as f64 * one.bytes;
         }
-        let padding = (scale * chunks).ceil() - scale * chunks;
-        total.seconds += scale * filled.seconds + padding * empty.seconds;
-        total.bytes += scale * filled.bytes + padding * empty.bytes;
     }
     total
 }
 
-fn share(group: &RowGroup) -> f64 {
-    group.rows as f64 / group.table.chunk_rows() as f64
-}
-
-fn empty_group(table: Table) -> RowGroup {
+fn group(block: &Arc<EventBlock>, table: Table, rows: usize) -> RowGroup {
+    let available = match table {
+        Table::Events => block.events.len(),
+        Table::Partons => block.partons.len(),
+    };
+    let mut segments = Vec::new();
+    let mut missing = rows;
+    while missing > 0 && available > 0 {
+        let taken = missing.min(available);
+        segments.push((Arc::clone(block), 0..taken));
+        missing -= taken;
+    }
     RowGroup {
         table,
         index: 0,
-        segments: Vec::new(),
-        rows: 0,
+        segments,
+        rows,
         first_parton_row: 0,
     }
 }

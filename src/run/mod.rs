@@ -74,7 +74,7 @@ pub enum Sink {
     /// Nowhere: shower only, for timing.
     Discard,
     /// Into an event file.
-    File(EventFileWriter),
+    File(Box<EventFileWriter>),
 }
 
 /// What a run came to.

@@ -294,3 +294,120 @@ impl MediumSummary {
 fn ratio(part: f64, whole: f64) -> Option<f64> {
     (whole != 0.0).then(|| part / whole)
 }
+
+#[cfg(test)]
+mod tests {
+    use std::path::Path;
+
+    use super::*;
+    use crate::config::{Overrides, load_text};
+
+    const CONFIG: &str = r#"{
+        "events": 1000,
+        "source": {
+            "kind": "single", "parton": "u", "energy_GeV": 100.0, "start_virtuality_GeV": 40.0
+        },
+        "medium": {
+            "field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 3.0 },
+            "transport": { "kind": "constant", "qhat_GeV2_per_fm": 1.0, "for": "gluon" },
+            "effects": [{ "kind": "collinear-expansion" }]
+        }
+    }"#;
+
+    fn totals() -> RunTotals<ShowerCounters> {
+        let mut counters = ShowerCounters::new(1);
+        counters.channels[0].trials = 4000;
+        counters.channels[0].accepted = 1000;
+        counters.legs_in_medium = 2000;
+        counters.branchings = 900;
+        let sums = WeightSums {
+            source_weights: 1000.0,
+            weights: 1000.0,
+            squared_weights: 1000.0,
+        };
+        RunTotals {
+            events: 1000,
+            sums,
+            counters,
+            completed: true,
+            ..RunTotals::default()
+        }
+    }
+
+    fn summary(totals: &RunTotals<ShowerCounters>) -> RunSummary {
+        let path = Path::new("run.json");
+        let plan = load_text(CONFIG, path, &Overrides::default()).unwrap();
+        let circumstances = Circumstances {
+            config: path.to_owned(),
+            output: None,
+            threads: 1,
+            wall_time: Duration::from_secs(2),
+            input_warnings: Vec::new(),
+        };
+        RunSummary::new(&plan, circumstances, totals)
+    }
+
+    #[test]
+    fn a_sound_run_has_nothing_to_warn_of() {
+        let summary = summary(&totals());
+        assert_eq!(summary.warnings, [""; 0]);
+        assert_eq!(summary.events_per_s, 500.0);
+        assert_eq!(summary.branchings_per_event, Some(0.9));
+        assert_eq!(summary.weights.mean_standard_error, Some(0.0));
+        let [vacuum, effect] = &summary.channels[..] else {
+            panic!("{:?}", summary.channels)
+        };
+        assert_eq!(
+            (vacuum.name.as_str(), vacuum.acceptance),
+            ("vacuum", Some(0.25))
+        );
+        assert_eq!(vacuum.share_cut_by_angle_limit, None);
+        assert_eq!(
+            (effect.name.as_str(), effect.acceptance),
+            ("collinear-expansion", None)
+        );
+    }
+
+    #[test]
+    fn a_collapsed_sample_is_warned_of() {
+        let with_effective = |events: f64| {
+            let mut totals = totals();
+            totals.sums.squared_weights = 1e6 / events;
+            summary(&totals).warnings
+        };
+        assert_eq!(with_effective(101.0).len(), 0);
+        let warnings = with_effective(99.0);
+        assert_eq!(warnings.len(), 1);
+        assert!(warnings[0].contains("9.900 %"), "{warnings:?}");
+    }
+
+    #[test]
+    fn one_overshoot_is_warned_of() {
+        let mut totals = totals();
+        totals.counters.channels[1].overshoots = 1;
+        let warnings = summary(&totals).warnings;
+        assert_eq!(warnings.len(), 1);
+        assert!(warnings[0].contains("collinear-expansion"), "{warnings:?}");
+    }
+
+    #[test]
+    fn paths_that_leave_the_field_hot_are_warned_of() {
+        let with_paths = |paths: u64| {
+            let mut totals = totals();
+            totals.counters.paths_left_hot = paths;
+            summary(&totals).warnings.len()
+        };
+        assert_eq!([0, 20, 21].map(with_paths), [0, 0, 1]);
+    }
+
+    #[test]
+    fn a_run_without_events_has_no_means() {
+        let summary = summary(&RunTotals::default());
+        assert_eq!(summary.final_partons_per_event, None);
+        assert_eq!(summary.branchings_per_event, None);
+        assert_eq!(summary.weights.mean, None);
+        assert_eq!(summary.warnings, [""; 0]);
+        let json = serde_json::to_value(&summary).unwrap();
+        assert!(json["weights"]["mean"].is_null());
+    }
+}

@@ -2,6 +2,8 @@
 
 #![allow(dead_code)] // each test file uses part of this
 
+pub mod field_maker;
+
 use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64;
 
@@ -217,7 +219,7 @@ fn branch_into(
 }
 
 /// An isotropic decay of `total` into two bodies of the given masses.
-fn decay(random: &mut Pcg64, total: [f64; 4], masses: [f64; 2]) -> [[f64; 4]; 2] {
+pub fn decay(random: &mut Pcg64, total: [f64; 4], masses: [f64; 2]) -> [[f64; 4]; 2] {
     let square = total[3] * total[3] - (0..3).map(|axis| total[axis] * total[axis]).sum::<f64>();
     let mass = square.max(0.0).sqrt();
     let (plus, minus) = (masses[0] + masses[1], masses[0] - masses[1]);

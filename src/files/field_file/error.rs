@@ -9,7 +9,7 @@ pub struct FieldFileError {
     /// The file.
     pub path: PathBuf,
     /// What is wrong.
-    pub problem: FieldProblem,
+    pub problem: Box<FieldProblem>,
 }
 
 /// What is wrong with a temperature field file.

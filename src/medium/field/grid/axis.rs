@@ -84,7 +84,7 @@ impl Axis {
             }
         }
         let place = (coordinate - self.points[cell]) * self.inverse_widths[cell];
-        (cell, place.max(0.0).min(1.0) as f32)
+        (cell, place.clamp(0.0, 1.0) as f32)
     }
 }
 

@@ -151,37 +151,41 @@ impl Hot {
             let [t, _, _, z] = *point;
             *tau = (t * t - z * z).max(0.0).sqrt();
         }
-        for ((sample, [t, x, y, z]), tau) in samples.iter_mut().zip(points).zip(taus) {
-            *sample = match self.values_at(tau, x, y, || libm::atanh(z / t)) {
-                None => Local::EMPTY,
-                Some(values) if self.has_flow => moving(values, ray, [t, z], tau),
-                Some(values) => Local {
-                    temperature_gev: f64::from(values.to_array()[0]),
-                    flow_factor: 1.0,
-                },
+        let mut values = [f32x4::ZERO; BATCH];
+        for ((value, [t, x, y, z]), tau) in values[..samples.len()].iter_mut().zip(points).zip(taus)
+        {
+            *value = self.values_at(tau, x, y, || libm::atanh(z / t));
+        }
+        for (((sample, value), [t, _, _, z]), tau) in
+            samples.iter_mut().zip(values).zip(points).zip(taus)
+        {
+            *sample = if self.has_flow {
+                moving(value, ray, [t, z], tau)
+            } else {
+                resting(value)
             };
         }
     }
 
-    /// Interpolated values at Milne coordinates; `None` outside the rapidity axis.
+    /// Interpolated values at Milne coordinates; nothing outside the rapidity axis.
     #[inline(always)]
-    fn values_at(&self, tau: f64, x: f64, y: f64, eta: impl Fn() -> f64) -> Option<f32x4> {
+    fn values_at(&self, tau: f64, x: f64, y: f64, eta: impl Fn() -> f64) -> f32x4 {
         let ((i, u), (j, v), (k, w)) = (self.tau.locate(tau), self.x.locate(x), self.y.locate(y));
         let corner = (i * self.x.len() + j) * self.y.len() + k;
         let strides = [self.x.len() * self.y.len(), self.y.len(), 1];
         let Some(eta_axis) = &self.eta else {
-            return Some(trilinear(&self.values, corner, strides, [u, v, w]));
+            return trilinear(&self.values, corner, strides, [u, v, w]);
         };
         let eta = eta();
         if !(eta_axis.first()..=eta_axis.last()).contains(&eta) {
-            return None;
+            return f32x4::ZERO;
         }
         let (m, s) = eta_axis.locate(eta);
         let depth = eta_axis.len();
         let strides = strides.map(|stride| stride * depth);
         let low = trilinear(&self.values, corner * depth + m, strides, [u, v, w]);
         let high = trilinear(&self.values, corner * depth + m + 1, strides, [u, v, w]);
-        Some(low + (high - low) * s)
+        low + (high - low) * s
     }
 }
 
@@ -191,6 +195,13 @@ fn point(data: &FieldData, place: usize) -> f32x4 {
         None => [0.0; 3],
     };
     f32x4::new([data.temperature_gev[place], flow[0], flow[1], flow[2]])
+}
+
+fn resting(values: f32x4) -> Local {
+    Local {
+        temperature_gev: f64::from(values.to_array()[0]),
+        flow_factor: 1.0,
+    }
 }
 
 /// Temperature and flow factor of a moving fluid from interpolated values at a point.

@@ -305,7 +305,7 @@ fn broken_events_are_found() {
         ("jet fraction", &|rows| rows[last].jet_fraction *= 1.00001),
         ("place", &|rows| rows[last].birth_fm[1] *= 1.00001),
         ("colour", &|rows| rows[last].colour += 1000),
-        ("missing", &|rows| drop(rows.pop())),
+        ("missing", &|rows| rows.truncate(last)),
         ("status", &|rows| rows[branched].status = Status::Final),
     ];
     for (what, change) in breaks {

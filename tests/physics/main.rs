@@ -7,7 +7,9 @@
 mod collinear;
 mod conservation;
 mod first_branching;
+mod grids;
 mod medium;
+mod medium_limits;
 mod medium_sign;
 mod no_branching;
 mod parton_numbers;

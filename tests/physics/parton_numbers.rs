@@ -89,13 +89,9 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
                 continue;
             };
             let shares = start_shares(branching.z);
-            for place in 0..2 {
-                let daughter = key.daughter(place as u64);
-                waiting.push((
-                    branching.daughters[place],
-                    daughter,
-                    shares[place] * branching.t,
-                ));
+            let daughters = branching.daughters.into_iter().zip(shares);
+            for (place, (daughter, share)) in daughters.enumerate() {
+                waiting.push((daughter, key.daughter(place as u64), share * branching.t));
             }
         }
         number.add(finals);

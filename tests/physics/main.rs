@@ -5,9 +5,14 @@
 //! = 10^-6; with fewer than 1000 checks the false-alarm rate of all of them together stays below 10^-3. Seeds are fixed.
 
 mod collinear;
+mod conservation;
 mod first_branching;
+mod grids;
 mod medium;
+mod medium_limits;
 mod medium_sign;
 mod no_branching;
+mod parton_numbers;
 mod paths;
 mod support;
+mod twins;

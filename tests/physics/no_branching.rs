@@ -83,7 +83,7 @@ fn check(chosen: impl Fn(&Value) -> bool, expected_cases: usize) {
     assert!(common.bias().abs() < LARGEST_PULL * common.error());
 }
 
-fn argument<'a>(case: &'a Value) -> &'a str {
+fn argument(case: &Value) -> &str {
     case["coupling"]["argument"].as_str().unwrap_or_default()
 }
 

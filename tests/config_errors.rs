@@ -248,7 +248,7 @@ fn rules_of_the_pair() {
     };
     read(&pair(r#"["u", "ubar"]"#, "45.5")).unwrap();
     read(&pair(r#"["bbar", "b"]"#, "45.5")).unwrap();
-    read(&pair(r#"["g", "g"]"#, "45.5")).unwrap();
+    read(&pair(r#"["g", "g"]"#, "91.0")).unwrap();
     for (partons, start, path, remedy) in [
         (
             r#"["u", "u"]"#,
@@ -270,7 +270,7 @@ fn rules_of_the_pair() {
         ),
         (
             r#"["u", "ubar"]"#,
-            "45.6",
+            "91.5",
             "source.start_virtuality_GeV",
             "raise sqrt_s_GeV",
         ),

@@ -23,7 +23,15 @@ fn write(
     let writer = EventFileWriter::create(path, provenance, WriteOptions::default()).unwrap();
     let ids = provenance.first_id..provenance.last_id + 1;
     let never = AtomicBool::new(false);
-    run(generator, ids, threads, Sink::File(writer), &(), &never).unwrap()
+    run(
+        generator,
+        ids,
+        threads,
+        Sink::File(Box::new(writer)),
+        &(),
+        &never,
+    )
+    .unwrap()
 }
 
 fn generated(generator: &FakeGenerator, ids: std::ops::Range<i64>) -> EventBlock {
@@ -364,7 +372,7 @@ fn an_abandoned_file_reads_as_its_last_commit() {
         &generator,
         0..50_000,
         2,
-        Sink::File(writer),
+        Sink::File(Box::new(writer)),
         &StopSoon(&stop),
         &stop,
     )

@@ -14,7 +14,7 @@ fn running() -> AtomicBool {
 
 fn sink(path: &std::path::Path, events: i64) -> Sink {
     let writer = EventFileWriter::create(path, &provenance(events), WriteOptions::default());
-    Sink::File(writer.expect("a new file in a temporary folder"))
+    Sink::File(Box::new(writer.expect("a new file in a temporary folder")))
 }
 
 #[test]

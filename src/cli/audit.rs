@@ -4,6 +4,7 @@ use std::path::PathBuf;
 use std::process::ExitCode;
 
 use super::EXIT_BAD_REQUEST;
+use super::words::print_data;
 use crate::files::event_file::{AuditReport, audit};
 
 /// Reads whole event files back: four-momentum and colour conserved, checksums, counts, ids, provenance; prints a
@@ -21,18 +22,18 @@ pub struct AuditArgs {
 /// Audits every file, even after one has failed.
 ///
 /// # Errors
-/// None at present: what is wrong with a file is printed.
+/// Standard output cannot be written; what is wrong with a file is printed.
 pub fn run(args: &AuditArgs) -> anyhow::Result<ExitCode> {
     let mut sound = true;
     for path in &args.files {
         match audit(path) {
             Ok(report) => {
                 sound &= report.is_clean();
-                print_report(&report);
+                print_data(&report_text(&report))?;
             }
             Err(error) => {
                 sound = false;
-                println!("FAILED {error}");
+                print_data(&format!("FAILED {error}\n"))?;
             }
         }
     }
@@ -43,7 +44,7 @@ pub fn run(args: &AuditArgs) -> anyhow::Result<ExitCode> {
     })
 }
 
-fn print_report(report: &AuditReport) {
+fn report_text(report: &AuditReport) -> String {
     let path = report.path.display();
     let (events, partons) = (report.events, report.partons);
     let state = if report.complete {
@@ -51,18 +52,19 @@ fn print_report(report: &AuditReport) {
     } else {
         format!(", incomplete: {events} of {} events", report.events_due)
     };
-    if report.is_clean() {
-        println!("OK {path}: {events} events, {partons} rows{state}");
+    let mut text = if report.is_clean() {
+        format!("OK {path}: {events} events, {partons} rows{state}\n")
     } else {
-        println!(
-            "FAILED {path}: {} problems in {events} events, {partons} rows{state}",
+        format!(
+            "FAILED {path}: {} problems in {events} events, {partons} rows{state}\n",
             report.findings_total
-        );
-        for finding in &report.findings {
-            println!("  {finding}");
-        }
+        )
+    };
+    for finding in &report.findings {
+        text += &format!("  {finding}\n");
     }
     if let Some(digest) = &report.digest {
-        println!("  content {digest}");
+        text += &format!("  content {digest}\n");
     }
+    text
 }

@@ -3,7 +3,8 @@
 use std::path::PathBuf;
 use std::process::ExitCode;
 
-use super::EXIT_BAD_REQUEST;
+use super::later;
+use super::words::{print_data, say};
 use crate::files::field_file::read_field;
 use crate::report::FieldSummary;
 
@@ -45,26 +46,21 @@ pub enum FieldCommand {
 /// [`FieldFileError`](crate::files::field_file::FieldFileError) where the field cannot be used.
 pub fn run(args: &FieldArgs) -> anyhow::Result<ExitCode> {
     match &args.command {
-        FieldCommand::Make { .. } => Ok(later("field make")),
+        FieldCommand::Make { .. } => later("field make"),
         FieldCommand::Check {
             picture: Some(_), ..
-        } => Ok(later("field check --picture")),
+        } => later("field check --picture"),
         FieldCommand::Check {
             file,
             picture: None,
         } => {
             let data = read_field(file)?;
-            println!("{} can be used", file.display());
-            print!("{}", FieldSummary::of(&data));
+            let summary = FieldSummary::of(&data);
+            print_data(&format!("{} can be used\n{summary}", file.display()))?;
             for warning in &data.warnings {
-                eprintln!("warning: {warning}");
+                say(&format!("warning: {warning}"));
             }
             Ok(ExitCode::SUCCESS)
         }
     }
-}
-
-fn later(what: &str) -> ExitCode {
-    eprintln!("{what} comes with a later version of spindrift");
-    ExitCode::from(EXIT_BAD_REQUEST)
 }

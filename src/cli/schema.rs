@@ -1,14 +1,11 @@
 //! `spindrift schema`: the JSON Schema of a config, for editors.
 
-use std::io::{self, Write};
+use super::words::print_data;
 
 /// Prints the schema on stdout.
 ///
 /// # Errors
 /// What the operating system says when stdout cannot be written.
-pub fn run() -> io::Result<()> {
-    let mut stdout = io::stdout().lock();
-    serde_json::to_writer_pretty(&mut stdout, &crate::config::schema())?;
-    writeln!(stdout)?;
-    stdout.flush()
+pub fn run() -> anyhow::Result<()> {
+    print_data(&format!("{:#}\n", crate::config::schema()))
 }

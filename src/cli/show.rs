@@ -3,6 +3,7 @@
 use std::path::PathBuf;
 use std::process::ExitCode;
 
+use super::words::{print_data, say};
 use crate::files::event_file::EventFile;
 use crate::report::{SampleSummary, event_tree};
 
@@ -32,9 +33,9 @@ pub fn run(args: &ShowArgs) -> anyhow::Result<ExitCode> {
 
 fn show_sample(file: &EventFile) -> anyhow::Result<()> {
     let summary = SampleSummary::of(file)?;
-    print!("{summary}");
+    print_data(&summary.to_string())?;
     for warning in summary.warnings() {
-        eprintln!("warning: {warning}");
+        say(&format!("warning: {warning}"));
     }
     Ok(())
 }
@@ -51,7 +52,7 @@ fn show_event(file: &EventFile, id: i64) -> anyhow::Result<()> {
         );
     };
     for (event, rows) in block.iter() {
-        print!("{}", event_tree(event, rows, &file.provenance().effects));
+        print_data(&event_tree(event, rows, &file.provenance().effects).to_string())?;
     }
     Ok(())
 }

@@ -104,12 +104,12 @@ impl<'a> Rules<'a, '_> {
             );
         }
         if let Some(sqrt_s) = self.number("source.sqrt_s_GeV")
-            && start > sqrt_s / 2.0
+            && start > sqrt_s
         {
             self.refuse(
                 path,
                 format!("{start:?} GeV"),
-                format!("at most half of sqrt_s_GeV, {:?} GeV", sqrt_s / 2.0),
+                format!("at most sqrt_s_GeV, {sqrt_s:?} GeV"),
                 "lower start_virtuality_GeV or raise sqrt_s_GeV",
             );
         }

@@ -2,7 +2,7 @@
 
 use std::ops::Range;
 
-use super::{EventGenerator, RunError, RunTotals};
+use super::{EventGenerator, FinalPartons, RunError, RunTotals};
 use crate::event::EventBlock;
 
 /// Events in a block: enough that handing it over costs nothing, few enough that memory stays small.
@@ -28,21 +28,28 @@ pub(super) fn block_ids(ids: &Range<i64>, index: u64) -> Range<i64> {
     start..ids.end.min(start + EVENTS_PER_BLOCK)
 }
 
-/// Fills an empty block with the events `ids`.
+/// Fills an empty block with the events `ids`; counts the final partons while their rows are close at hand.
 pub(super) fn fill<G: EventGenerator>(
     generator: &G,
     worker: &mut G::Worker,
     ids: Range<i64>,
     block: &mut EventBlock,
-) {
+) -> FinalPartons {
+    let mut finals = FinalPartons::default();
     for id in ids {
+        let first_row = block.partons.len();
         generator.generate(worker, id, block);
+        if let Some(event) = block.events.last() {
+            finals.add(event.weight, &block.partons[first_row..]);
+        }
     }
+    finals
 }
 
 /// Checks a finished block against what was asked for and adds it to the totals.
 pub(super) fn settle<C>(
     block: &EventBlock,
+    finals: &FinalPartons,
     ids: Range<i64>,
     totals: &mut RunTotals<C>,
 ) -> Result<(), RunError> {
@@ -69,5 +76,6 @@ pub(super) fn settle<C>(
     }
     totals.events += block.events.len() as u64;
     totals.partons += rows as u64;
+    totals.finals.merge(finals);
     Ok(())
 }

@@ -5,9 +5,14 @@
 
 pub mod assemble;
 mod block;
+mod clock;
+mod final_partons;
+pub mod forecast;
 pub mod generator;
 mod parallel;
+pub mod provenance;
 mod serial;
+pub mod summary;
 
 use std::ops::Range;
 use std::sync::atomic::AtomicBool;
@@ -16,6 +21,7 @@ use crate::event::EventBlock;
 use crate::files::event_file::{EventFileError, EventFileWriter, WeightSums};
 
 pub use block::EVENTS_PER_BLOCK;
+pub use final_partons::FinalPartons;
 
 /// Makes events from event numbers; shared by all workers.
 pub trait EventGenerator: Sync {
@@ -69,7 +75,7 @@ pub enum Sink {
     /// Nowhere: shower only, for timing.
     Discard,
     /// Into an event file.
-    File(EventFileWriter),
+    File(Box<EventFileWriter>),
 }
 
 /// What a run came to.
@@ -81,6 +87,8 @@ pub struct RunTotals<C> {
     pub partons: u64,
     /// Sums over the events made, added in ascending event number.
     pub sums: WeightSums,
+    /// How many final partons the events have.
+    pub finals: FinalPartons,
     /// The generator's counts.
     pub counters: C,
     /// Bytes of all chunks written.

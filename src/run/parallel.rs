@@ -11,7 +11,8 @@ use crossbeam_channel::{Receiver, RecvTimeoutError, Sender, unbounded};
 
 use super::block::{block_count, block_ids, event_count, fill, settle};
 use super::{
-    EventGenerator, Progress, RunCounters, RunError, RunTotals, Sink, close, panic_message,
+    EventGenerator, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink, close,
+    panic_message,
 };
 use crate::config::RecordSettings;
 use crate::event::EventBlock;
@@ -109,7 +110,7 @@ enum Task {
 }
 
 enum Report {
-    Made(u64, EventBlock),
+    Made(u64, EventBlock, FinalPartons),
     Packed(PackedGroup),
     Panicked(String),
 }
@@ -204,8 +205,8 @@ fn work<G: EventGenerator>(
             let report = match task {
                 Task::Make(index) => {
                     let mut block: EventBlock = take(&board.spare_blocks);
-                    fill(generator, &mut worker, block_ids(ids, index), &mut block);
-                    Report::Made(index, block)
+                    let finals = fill(generator, &mut worker, block_ids(ids, index), &mut block);
+                    Report::Made(index, block, finals)
                 }
                 Task::Pack(group) => {
                     let mut packed: PackedGroup = take(&board.spare_groups);
@@ -239,7 +240,7 @@ struct Coordinator<'a, C> {
     board: &'a Board,
     writer: Option<&'a mut EventFileWriter>,
     grouper: RowGrouper,
-    early_blocks: BTreeMap<u64, EventBlock>,
+    early_blocks: BTreeMap<u64, (EventBlock, FinalPartons)>,
     early_groups: [BTreeMap<u64, PackedGroup>; 2],
     next_group: [u64; 2],
     groups_open: usize,
@@ -283,8 +284,8 @@ impl<C> Coordinator<'_, C> {
 
     fn take_report(&mut self, inbox: &Receiver<Report>) -> Result<(), RunError> {
         match inbox.recv_timeout(STOP_POLL) {
-            Ok(Report::Made(index, block)) => {
-                self.early_blocks.insert(index, block);
+            Ok(Report::Made(index, block, finals)) => {
+                self.early_blocks.insert(index, (block, finals));
                 self.settle_blocks()
             }
             Ok(Report::Packed(group)) => {
@@ -301,9 +302,10 @@ impl<C> Coordinator<'_, C> {
     }
 
     fn settle_blocks(&mut self) -> Result<(), RunError> {
-        while let Some(block) = self.early_blocks.remove(&self.blocks_settled) {
+        while let Some((block, finals)) = self.early_blocks.remove(&self.blocks_settled) {
             settle(
                 &block,
+                &finals,
                 block_ids(self.ids, self.blocks_settled),
                 self.totals,
             )?;

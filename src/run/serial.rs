@@ -55,8 +55,8 @@ fn discard<G: EventGenerator>(
             break;
         }
         block.clear();
-        fill(generator, worker, block_ids(ids, index), &mut block);
-        settle(&block, block_ids(ids, index), totals)?;
+        let finals = fill(generator, worker, block_ids(ids, index), &mut block);
+        settle(&block, &finals, block_ids(ids, index), totals)?;
         progress.events_done(totals.events, event_count(ids));
     }
     Ok(())
@@ -80,8 +80,8 @@ fn stream<G: EventGenerator>(
             return Ok(());
         }
         let mut block = output.spare.pop().unwrap_or_default();
-        fill(generator, worker, block_ids(ids, index), &mut block);
-        settle(&block, block_ids(ids, index), totals)?;
+        let finals = fill(generator, worker, block_ids(ids, index), &mut block);
+        settle(&block, &finals, block_ids(ids, index), totals)?;
         let block = Arc::new(block);
         grouper.push(&block, |group| filled.push(group));
         output.reclaim(block);

@@ -20,7 +20,7 @@ use crate::medium::Medium;
 use crate::qcd::{Coupling, CouplingError, CouplingSettings};
 use crate::random::{Key, Purpose};
 use crate::source::HardProcess;
-use leg::Evolution;
+use leg::{Branching, Evolution};
 use proposal::FractionRange;
 use proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use tree::{Record, Tools, Walker};
@@ -162,15 +162,26 @@ impl Shower {
         origin_fm: [f64; 4],
         record: &mut Record,
     ) -> f64 {
-        walker.walk(
-            Tools {
-                evolution: &self.evolution,
-                settings: &self.settings,
-            },
-            hard,
-            key,
-            origin_fm,
-            record,
-        )
+        walker.walk(self.tools(), hard, key, origin_fm, record)
+    }
+
+    /// The first branchings alone of what [`Shower::shower`] makes of the same arguments, `None` for a hard parton that
+    /// never branches (and for a missing second one), and the shower's weight up to there. What follows in the whole
+    /// event has the mean weight 1, so distributions of first branchings may be taken with this one.
+    pub fn first_branchings(
+        &self,
+        walker: &mut Walker,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+    ) -> ([Option<Branching>; 2], f64) {
+        walker.first_branchings(self.tools(), hard, key, origin_fm)
+    }
+
+    fn tools(&self) -> Tools<'_> {
+        Tools {
+            evolution: &self.evolution,
+            settings: &self.settings,
+        }
     }
 }

@@ -101,6 +101,19 @@ impl Walker {
         self.tally.weight
     }
 
+    /// The first step of [`Walker::walk`] alone: the branchings of the hard partons, and the weight up to there.
+    pub fn first_branchings(
+        &mut self,
+        tools: Tools,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+    ) -> ([Option<Branching>; 2], f64) {
+        self.tally.weight = 1.0;
+        let branchings = self.evolve_primaries(tools, hard, key, origin_fm);
+        (branchings, self.tally.weight)
+    }
+
     fn primaries(
         &mut self,
         tools: Tools,
@@ -109,44 +122,10 @@ impl Walker {
         origin_fm: [f64; 4],
         record: &mut Record,
     ) {
-        let partons = hard.partons();
-        let largest_t = hard.start_virtuality_gev * hard.start_virtuality_gev;
-        let keys = [key.daughter(0), key.daughter(1)];
-        for (place, parton) in partons.iter().enumerate() {
-            let leg = &mut self.legs[place];
-            leg.start(tools.evolution, parton.species, keys[place], largest_t);
-            let ray = Ray {
-                birth_fm: origin_fm,
-                direction: parton.direction,
-            };
-            leg.enter_medium(
-                tools.evolution,
-                keys[place],
-                largest_t,
-                (parton.energy_gev, ray),
-                &mut self.tally,
-            );
-        }
-        let constraint = match hard.topology {
-            Topology::Single => Constraint::None,
-            Topology::Pair { sqrt_s_gev } => Constraint::TwoBody { sqrt_s_gev },
-        };
-        let constraint = if tools.settings.ordering == Ordering::Collinear {
-            Constraint::None
-        } else {
-            constraint
-        };
-        let legs = &mut self.legs[..partons.len()];
-        let branchings = settle(
-            tools.evolution,
-            legs,
-            [largest_t; 2],
-            constraint,
-            &mut self.tally,
-        );
+        let branchings = self.evolve_primaries(tools, hard, key, origin_fm);
         let virtualities =
             branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
-        for (jet, parton) in partons.iter().enumerate() {
+        for (jet, parton) in hard.partons().iter().enumerate() {
             let plus_gev = match tools.settings.ordering {
                 Ordering::Collinear => 2.0 * parton.energy_gev,
                 Ordering::Virtuality => hard.plus_momentum_gev(jet, virtualities),
@@ -155,7 +134,7 @@ impl Walker {
             let row = self.record_hard(hard, jet, origin_fm, record);
             let settled = Settled {
                 species: parton.species,
-                key: keys[jet],
+                key: key.daughter(jet as u64),
                 place: Place::PRIMARY,
                 jet,
                 birth_fm: origin_fm,
@@ -166,6 +145,47 @@ impl Walker {
             };
             self.settle_one(tools, settled, branchings[jet], jet, record);
         }
+    }
+
+    /// The first branchings of the hard partons, settled together; a missing second parton counts as final.
+    fn evolve_primaries(
+        &mut self,
+        tools: Tools,
+        hard: &HardProcess,
+        key: Key,
+        origin_fm: [f64; 4],
+    ) -> [Option<Branching>; 2] {
+        let partons = hard.partons();
+        let largest_t = hard.start_virtuality_gev * hard.start_virtuality_gev;
+        for (place, parton) in partons.iter().enumerate() {
+            let key = key.daughter(place as u64);
+            let leg = &mut self.legs[place];
+            leg.start(tools.evolution, parton.species, key, largest_t);
+            let ray = Ray {
+                birth_fm: origin_fm,
+                direction: parton.direction,
+            };
+            leg.enter_medium(
+                tools.evolution,
+                key,
+                largest_t,
+                (parton.energy_gev, ray),
+                &mut self.tally,
+            );
+        }
+        let constraint = match (tools.settings.ordering, hard.topology) {
+            (Ordering::Collinear, _) | (_, Topology::Single) => Constraint::None,
+            (Ordering::Virtuality, Topology::Pair { sqrt_s_gev }) => {
+                Constraint::TwoBody { sqrt_s_gev }
+            }
+        };
+        settle(
+            tools.evolution,
+            &mut self.legs[..partons.len()],
+            [largest_t; 2],
+            constraint,
+            &mut self.tally,
+        )
     }
 
     fn record_hard(

@@ -62,7 +62,7 @@ pub struct PairSettings {
     pub partons: [Species; 2],
     /// Invariant mass of the pair in GeV.
     pub sqrt_s_gev: f64,
-    /// Largest virtuality of each in GeV, at most half the invariant mass.
+    /// Largest virtuality of each in GeV, at most the invariant mass; M1 + M2 stays below it by the resume rule.
     pub start_virtuality_gev: f64,
     /// Where the first one flies.
     pub direction: Direction,

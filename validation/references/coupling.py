@@ -20,7 +20,10 @@ def by_differential_equation(mu_gev, loops, alpha_s_mz, freeze_gev):
     stops = [2.0 * math.log(m) for m in (qcd.BOTTOM_GEV, qcd.CHARM_GEV) if 2.0 * math.log(m) > target]
     for n_f, stop in zip((5, 4, 3), [*stops, target]):
         b0, b1 = qcd.beta_coefficients(n_f)
-        slope = lambda _, a: -b0 * a**2 - (b1 * a**3 if loops == 2 else 0.0)  # noqa: E731
+
+        def slope(_, a, b0=b0, b1=b1):
+            return -b0 * a**2 - (b1 * a**3 if loops == 2 else 0.0)
+
         if stop != here:
             alpha = solve_ivp(slope, (here, stop), [alpha], method="DOP853", rtol=1e-12, atol=1e-14).y[0, -1]
         here = stop

@@ -1,7 +1,5 @@
 """Where the first branching of a primary happens: distributions in t and in z, given that it happens."""
 
-import numpy as np
-
 import conventions as qcd
 from leg import Leg
 from quadrature import write_reference

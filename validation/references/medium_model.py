@@ -85,7 +85,10 @@ class Brick:
         if self.window is not None:
             kinks.append(2.0 * self.energy_gev * qcd.HBAR_C_GEV_FM * self.window / self.length_fm)
         if self.small_angles:
-            gap = lambda t: float(leg.widest_u(leg.y_of(np.array([t])))[0]) - np.log(self.energy_gev**2 / t)  # noqa: E731
+
+            def gap(t):
+                return float(leg.widest_u(leg.y_of(np.array([t])))[0]) - np.log(self.energy_gev**2 / t)
+
             if gap(leg.t0 * (1.0 + 1e-12)) * gap(leg.t_max) < 0.0:
                 kinks.append(brentq(gap, leg.t0 * (1.0 + 1e-12), leg.t_max, xtol=1e-13, rtol=1e-14))
         return kinks

@@ -113,7 +113,7 @@ static SOURCE: Section = Section {
         Key::required(
             "start_virtuality_GeV",
             ENERGY,
-            "Largest virtuality (not squared) of a hard parton: at most the energy, in a pair at most half of sqrt(s).",
+            "Largest virtuality (not squared) of a hard parton: at most the energy, in a pair at most sqrt(s).",
         )
         .unit("GeV")
         .when(SINGLE_OR_PAIR),

@@ -17,7 +17,6 @@ pub(super) fn read(
     file: &File,
     axes: &[&str],
     lengths: &[usize],
-    warnings: &mut Vec<String>,
 ) -> Result<Option<[Vec<f32>; 3]>, FieldProblem> {
     let has = |names: &[&str]| names.iter().any(|name| file.link_exists(name));
     match (has(&FOUR_VELOCITY), has(&THREE_VELOCITY)) {
@@ -25,9 +24,9 @@ pub(super) fn read(
         (true, true) => Err(FieldProblem::Contradiction(
             "holds both a four-velocity (ux, uy, ueta) and a three-velocity (vx, vy, veta); keep one of them".into(),
         )),
-        (true, false) => read_components(file, FOUR_VELOCITY, axes, lengths, warnings).map(Some),
+        (true, false) => read_components(file, FOUR_VELOCITY, axes, lengths).map(Some),
         (false, true) => {
-            let mut flow = read_components(file, THREE_VELOCITY, axes, lengths, warnings)?;
+            let mut flow = read_components(file, THREE_VELOCITY, axes, lengths)?;
             to_four_velocity(&mut flow, axes, lengths)?;
             Ok(Some(flow))
         }
@@ -39,17 +38,14 @@ fn read_components(
     names: [&'static str; 3],
     axes: &[&str],
     lengths: &[usize],
-    warnings: &mut Vec<String>,
 ) -> Result<[Vec<f32>; 3], FieldProblem> {
     let points = lengths.iter().product();
     let mut flow = [vec![0f32; points], vec![0f32; points], vec![0f32; points]];
     for (name, component) in names.into_iter().zip(&mut flow) {
         let Some(variable) = Variable::find(file, name, &NUMBER)? else {
             let longitudinal = name == names[2];
+            // Without an eta axis the field is boost-invariant, and so is its flow.
             if longitudinal && !axes.contains(&"eta") {
-                warnings.push(format!(
-                    "no {name}: the longitudinal flow is taken as boost-invariant ({name} = 0)"
-                ));
                 continue;
             }
             return Err(FieldProblem::Missing {

@@ -74,7 +74,7 @@ fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
     }
     check_start(data.tau_fm[0])?;
     data.temperature_gev = read_temperature(&temperature, axes, &lengths)?;
-    data.flow = flow::read(&file, axes, &lengths, &mut data.warnings)?;
+    data.flow = flow::read(&file, axes, &lengths)?;
     data.collision_density_per_fm2 = read_collision_density(&file, &lengths)?;
     warn_about_temperature(&mut data);
     Ok(data)

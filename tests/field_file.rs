@@ -290,7 +290,19 @@ fn incomplete_or_contradicting_flow_is_refused() {
         maker.variable("uy", &PLANE, &still, None);
     })
     .unwrap();
-    assert!(boost_invariant.warnings[0].contains("boost-invariant"));
+    let [_, _, longitudinal] = boost_invariant.flow.unwrap();
+    assert!(longitudinal.iter().all(|u| *u == 0.0));
+    let place = place();
+    let maker = with_axes(&place.path);
+    maker.axis("eta", &ETA, None);
+    let axes = ["tau", "x", "y", "eta"];
+    let (warm, calm) = (vec![0.3; 2 * POINTS], vec![0.0; 2 * POINTS]);
+    maker.variable("temperature", &axes, &warm, Some("GeV"));
+    maker.variable("ux", &axes, &calm, None);
+    maker.variable("uy", &axes, &calm, None);
+    drop(maker);
+    let with_rapidity = read_field(&place.path).map_err(|error| *error.problem);
+    assert!(refused(with_rapidity).contains("flow needs all of ux, uy, ueta"));
     let other_shape = read_with(|maker| {
         maker.variable("ux", &["tau", "x"], &still[..6], None);
         maker.variable("uy", &PLANE, &still, None);

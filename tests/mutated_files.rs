@@ -52,7 +52,7 @@ fn event_files() {
         &FakeGenerator::default(),
         0..60,
         1,
-        Sink::File(writer),
+        Sink::File(Box::new(writer)),
         &(),
         &never,
     )

@@ -18,8 +18,12 @@ use crate::config::RecordSettings;
 use crate::event::EventBlock;
 use crate::files::event_file::{EventFileWriter, PackedGroup, Packer, RowGroup, RowGrouper, Table};
 
-/// Blocks under way for each worker: one in work, one finished early.
-const BLOCKS_PER_WORKER: u64 = 2;
+/// Fewest blocks under way for each worker: one in work, one finished early.
+const FEWEST_BLOCKS_PER_WORKER: u64 = 2;
+/// Most blocks under way for each worker: enough to work on while the calling thread writes a row group.
+const MOST_BLOCKS_PER_WORKER: u64 = 32;
+/// Rows under way for each worker, which bounds memory where events are large.
+const ROWS_PER_WORKER: u64 = 1 << 16;
 /// Row groups between grouping and writing, besides one for every two workers.
 const ROW_GROUPS: usize = 4;
 /// How often a stop is looked for while no worker reports.
@@ -88,7 +92,7 @@ struct Board {
     state: Mutex<BoardState>,
     changed: Condvar,
     blocks: u64,
-    block_window: u64,
+    threads: u64,
     group_window: usize,
     spare_blocks: Mutex<Vec<EventBlock>>,
     spare_groups: Mutex<Vec<PackedGroup>>,
@@ -99,6 +103,7 @@ struct BoardState {
     to_pack: VecDeque<RowGroup>,
     next_block: u64,
     blocks_settled: u64,
+    rows_settled: u64,
     groups_open: usize,
     no_more_blocks: bool,
     closed: bool,
@@ -121,7 +126,7 @@ impl Board {
             state: Mutex::default(),
             changed: Condvar::new(),
             blocks: block_count(ids),
-            block_window: BLOCKS_PER_WORKER * threads as u64,
+            threads: threads as u64,
             group_window: ROW_GROUPS + threads / 2,
             spare_blocks: Mutex::default(),
             spare_groups: Mutex::default(),
@@ -150,7 +155,7 @@ impl Board {
             }
             if !state.no_more_blocks
                 && state.next_block < self.blocks
-                && state.next_block - state.blocks_settled < self.block_window
+                && state.next_block - state.blocks_settled < self.block_window(&state)
                 && state.groups_open < self.group_window
             {
                 state.next_block += 1;
@@ -161,6 +166,17 @@ impl Board {
                 .wait(state)
                 .unwrap_or_else(PoisonError::into_inner);
         }
+    }
+
+    /// How many blocks may be under way, judged by the size of those settled so far.
+    fn block_window(&self, state: &BoardState) -> u64 {
+        let rows_per_block = state.rows_settled / state.blocks_settled.max(1);
+        let per_worker = ROWS_PER_WORKER / rows_per_block.max(1);
+        let per_worker = match state.blocks_settled {
+            0 => FEWEST_BLOCKS_PER_WORKER,
+            _ => per_worker.clamp(FEWEST_BLOCKS_PER_WORKER, MOST_BLOCKS_PER_WORKER),
+        };
+        self.threads * per_worker
     }
 
     fn reclaim(&self, block: Arc<EventBlock>) {
@@ -324,8 +340,10 @@ impl<C> Coordinator<'_, C> {
     fn hand_out(&mut self, groups: Vec<RowGroup>) {
         self.groups_open += groups.len();
         let (settled, open) = (self.blocks_settled, self.groups_open);
+        let rows = self.totals.partons;
         self.board.change(|state| {
             state.blocks_settled = settled;
+            state.rows_settled = rows;
             state.groups_open = open;
             state.to_pack.extend(groups);
         });

@@ -60,7 +60,7 @@ fn audit_of(
     };
     let writer = EventFileWriter::create(path, provenance, WriteOptions { overwrite: true });
     let never = AtomicBool::new(false);
-    let sink = Sink::File(writer.unwrap());
+    let sink = Sink::File(Box::new(writer.unwrap()));
     run(&generator, 0..EVENTS, 1, sink, &(), &never).unwrap();
     audit(path).unwrap()
 }

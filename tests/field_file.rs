@@ -244,8 +244,8 @@ fn four_velocities_are_kept() {
     let ux: Vec<f64> = values().iter().map(|value| value * 10.0).collect();
     let data = read_with(|maker| {
         maker.variable("ux", &PLANE, &ux, Some("1"));
-        maker.variable("uy", &PLANE, &vec![0.5f32; POINTS], None);
-        maker.variable("ueta", &PLANE, &vec![0.25f64; POINTS], None);
+        maker.variable("uy", &PLANE, &[0.5f32; POINTS], None);
+        maker.variable("ueta", &PLANE, &[0.25f64; POINTS], None);
     })
     .unwrap();
     let [found_x, found_y, found_eta] = data.flow.unwrap();
@@ -256,9 +256,9 @@ fn four_velocities_are_kept() {
 #[test]
 fn three_velocities_are_converted() {
     let data = read_with(|maker| {
-        maker.variable("vx", &PLANE, &vec![0.6f64; POINTS], Some("c"));
-        maker.variable("vy", &PLANE, &vec![0.0f64; POINTS], None);
-        maker.variable("veta", &PLANE, &vec![0.0f64; POINTS], None);
+        maker.variable("vx", &PLANE, &[0.6f64; POINTS], Some("c"));
+        maker.variable("vy", &PLANE, &[0.0f64; POINTS], None);
+        maker.variable("veta", &PLANE, &[0.0f64; POINTS], None);
     })
     .unwrap();
     // gamma of 0.6 is 1.25
@@ -266,9 +266,9 @@ fn three_velocities_are_converted() {
     assert!(ux.iter().all(|u| (u - 0.75).abs() < 1e-6));
     assert!(uy.iter().chain(&ueta).all(|u| *u == 0.0));
     let superluminal = read_with(|maker| {
-        maker.variable("vx", &PLANE, &vec![0.8f64; POINTS], None);
-        maker.variable("vy", &PLANE, &vec![0.7f64; POINTS], None);
-        maker.variable("veta", &PLANE, &vec![0.0f64; POINTS], None);
+        maker.variable("vx", &PLANE, &[0.8f64; POINTS], None);
+        maker.variable("vy", &PLANE, &[0.7f64; POINTS], None);
+        maker.variable("veta", &PLANE, &[0.0f64; POINTS], None);
     });
     assert!(refused(superluminal).contains("stays below 1"));
 }

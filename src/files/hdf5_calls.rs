@@ -1,6 +1,7 @@
 //! The few HDF5 calls that the safe binding lacks: finished chunks and dimension scales.
 
 use std::ffi::{CString, c_char, c_int, c_uint, c_void};
+use std::path::Path;
 
 use hdf5::H5Type;
 use hdf5::sync::sync;
@@ -9,6 +10,8 @@ use hdf5_sys::h5d::{H5Dread, H5Dwrite_chunk};
 use hdf5_sys::h5i::hid_t;
 use hdf5_sys::h5p::H5P_DEFAULT;
 use hdf5_sys::h5s::{H5S_seloper_t, H5Sselect_hyperslab};
+
+use super::global_heap::check_global_heaps;
 
 unsafe extern "C" {
     fn H5DSset_scale(dataset: hid_t, name: *const c_char) -> herr_t;
@@ -161,6 +164,16 @@ pub(super) fn read_rows<T: H5Type + Copy>(
     // SAFETY: HDF5 has written every selected element.
     unsafe { values.set_len(elements) };
     Ok(())
+}
+
+/// The part of a file in which global heaps are looked for before it is opened, in bytes. Event files have theirs
+/// within the first few hundred thousand, fields seldom are larger.
+const HEAP_SEARCH_BYTES: u64 = 16 << 20;
+
+/// Opens a file for reading; what is wrong comes back in words.
+pub(super) fn open_to_read(path: &Path) -> Result<hdf5::File, String> {
+    check_global_heaps(path, HEAP_SEARCH_BYTES).map_err(|error| error.to_string())?;
+    hdf5::File::open(path).map_err(|error| reason(&error))
 }
 
 /// What HDF5 says, reduced to the system's own message where there is one.

@@ -3,4 +3,5 @@
 mod attributes;
 pub mod event_file;
 pub mod field_file;
+mod global_heap;
 mod hdf5_calls;

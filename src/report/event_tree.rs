@@ -11,7 +11,7 @@ const INDENTED_LEVELS: usize = 64;
 /// Significant digits of every number.
 const DIGITS: i32 = 4;
 /// Width of a column of numbers.
-const NUMBER_WIDTH: usize = 10;
+const NUMBER_WIDTH: usize = 11;
 /// Width of the column that holds the tree.
 const TREE_WIDTH: usize = 36;
 
@@ -20,7 +20,7 @@ const TREE_WIDTH: usize = 36;
 pub fn event_tree(event: &EventSummary, rows: &[Parton], effects: &[String]) -> String {
     let mut text = heading(event, rows.len());
     let number = |name: &str| format!("{name:>NUMBER_WIDTH$}");
-    let columns = ["energy", "virtuality", "z", "birth t", "x", "y", "z"].map(number);
+    let columns = ["energy", "virtuality", "fraction", "birth t", "x", "y", "z"].map(number);
     let _ = writeln!(
         text,
         "{:TREE_WIDTH$}{}  channel",

@@ -70,6 +70,7 @@ impl Progress for () {
 
 /// Where events go.
 #[derive(Debug)]
+#[expect(clippy::large_enum_variant, reason = "there is one in a run")]
 pub enum Sink {
     /// Nowhere: shower only, for timing.
     Discard,

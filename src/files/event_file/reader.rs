@@ -2,15 +2,13 @@
 
 use std::path::{Path, PathBuf};
 
-use hdf5::File;
-
 use super::error::EventFileError;
 use super::layout::Table;
 use super::provenance::{Provenance, WeightSums};
 use super::read_attributes::{SampleState, read_provenance};
 use super::read_columns::{EventRows, TableReader};
 use crate::event::{EventBlock, EventSummary};
-use crate::files::hdf5_calls::reason;
+use crate::files::hdf5_calls::open_to_read;
 
 /// Events whose columns are read at once.
 const EVENTS_AT_ONCE: usize = 1024;
@@ -38,9 +36,9 @@ impl EventFile {
     /// [`EventFileError::Open`], [`EventFileError::Foreign`] for another kind of file or a later version,
     /// [`EventFileError::Damaged`] where parts are missing or do not fit.
     pub fn open(path: &Path) -> Result<EventFile, EventFileError> {
-        let file = File::open(path).map_err(|error| EventFileError::Open {
+        let file = open_to_read(path).map_err(|reason| EventFileError::Open {
             path: path.to_owned(),
-            reason: reason(&error),
+            reason,
         })?;
         let (provenance, state) = read_provenance(path, &file)?;
         let events = TableReader::open(path, &file, Table::Events, state.events_committed)?;

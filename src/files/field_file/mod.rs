@@ -12,7 +12,7 @@ use hdf5::File;
 
 pub use error::{FieldFileError, FieldProblem};
 
-use crate::files::hdf5_calls::reason;
+use crate::files::hdf5_calls::open_to_read;
 use crate::medium::field::FieldData;
 use units::{AREA_DENSITY, LENGTH, NUMBER, Quantity, TEMPERATURE};
 use variable::Variable;
@@ -54,7 +54,7 @@ pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
 
 fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
     check_signature(path)?;
-    let file = File::open(path).map_err(|error| FieldProblem::Unreadable(reason(&error)))?;
+    let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
     let temperature = require(&file, "temperature", &TEMPERATURE)?;
     let axes: &[&str] = if temperature.axes.iter().any(|axis| axis == "eta") {
         &FULL_AXES

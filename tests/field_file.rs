@@ -290,6 +290,7 @@ fn incomplete_or_contradicting_flow_is_refused() {
         maker.variable("uy", &PLANE, &still, None);
     })
     .unwrap();
+    assert!(boost_invariant.warnings.is_empty());
     let [_, _, longitudinal] = boost_invariant.flow.unwrap();
     assert!(longitudinal.iter().all(|u| *u == 0.0));
     let place = place();

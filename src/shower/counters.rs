@@ -15,7 +15,7 @@ pub struct ChannelCounters {
     /// Trials whose density lay outside its envelope; the weight carries them.
     pub overshoots: u64,
     /// Expected number of branchings that the limit to small angles cut away, taking coupling and phase factor at the
-    /// trials that it left; in units of [`CUT_UNIT`], so that sums do not depend on their order.
+    /// branchings that it left; in units of [`CUT_UNIT`], so that sums do not depend on their order.
     pub cut_units: u64,
 }
 
@@ -33,8 +33,6 @@ pub struct ShowerCounters {
     pub channels: Vec<ChannelCounters>,
     /// Branchings in the final trees.
     pub branchings: u64,
-    /// Partons that evolved.
-    pub legs: u64,
     /// Partons that would have met the medium but lie below the minimum energy.
     pub legs_below_min_energy: u64,
     /// Partons that met the medium.
@@ -66,7 +64,6 @@ impl AddAssign<&ShowerCounters> for ShowerCounters {
             sum.cut_units += part.cut_units;
         }
         self.branchings += other.branchings;
-        self.legs += other.legs;
         self.legs_below_min_energy += other.legs_below_min_energy;
         self.legs_in_medium += other.legs_in_medium;
         self.paths_left_hot += other.paths_left_hot;

@@ -9,7 +9,7 @@ use rand::RngExt;
 use super::accept::judge;
 use super::counters::{CUT_UNIT, ShowerCounters};
 use super::proposal::Trial;
-use super::proposal::induced::{Emitter, InducedEnvelope, InducedTrial};
+use super::proposal::induced::{Emitter, InducedEnvelope};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
 use crate::medium::Medium;
 use crate::medium::effects::Passage;
@@ -74,7 +74,7 @@ struct Channel {
     effect: usize,
     stream: Stream,
     envelope: InducedEnvelope,
-    pending: Option<InducedTrial>,
+    pending: Option<Trial>,
 }
 
 impl Leg {
@@ -217,8 +217,8 @@ impl Leg {
     fn leader(&self, vacuum_t: f64) -> (Option<usize>, f64) {
         let mut best = (None, vacuum_t);
         for (place, channel) in self.induced.iter().enumerate() {
-            if let Some(pending) = channel.pending.filter(|pending| pending.trial.t > best.1) {
-                best = (Some(place), pending.trial.t);
+            if let Some(trial) = channel.pending.filter(|trial| trial.t > best.1) {
+                best = (Some(place), trial.t);
             }
         }
         best
@@ -265,7 +265,7 @@ impl Leg {
             .medium
             .as_ref()
             .expect("an induced channel has a medium");
-        let InducedTrial { trial, cut_away } = self.induced[place]
+        let trial = self.induced[place]
             .pending
             .take()
             .expect("the leader has a pending trial");
@@ -275,9 +275,12 @@ impl Leg {
             .relative_change(&self.passage(), trial.t, trial.z)
             .max(0.0);
         let ratio = evolution.rate.density(&trial) * trial.inverse_envelope * change;
-        tally.counters.channels[number].cut_units += (cut_away * ratio / CUT_UNIT) as u64;
         let accepted = verdict(ratio, &trial, number, tally);
         let channel = &mut self.induced[place];
+        if accepted && medium.limits_angles() {
+            let cut_away = channel.envelope.cut_away(trial.t);
+            tally.counters.channels[number].cut_units += (cut_away / CUT_UNIT) as u64;
+        }
         let trials = &mut tally.counters.channels[number].trials;
         channel.pending = channel
             .envelope

@@ -10,10 +10,10 @@ pub struct Longitudinal {
     start_fm: f64,
 }
 
-/// Cells a unit of ln tau: the transport coefficient falls as a power of tau, so equal cells must resolve its start.
+/// Cells over a first tau: the transport coefficient falls as a power of tau, so equal cells must resolve its start.
 const CELLS_PER_FIRST_TAU: f64 = 4.0;
 /// More cells than this bring nothing at the accuracy of a linear piece.
-const MOST_CELLS: f64 = 100.0;
+const MOST_CELLS: f64 = 1000.0;
 
 impl Longitudinal {
     /// The solution with a temperature (GeV) at a proper time (fm).

@@ -68,15 +68,6 @@ struct Broken {
     break_t_gev2: f64,
 }
 
-/// What an envelope proposes: a trial, and how the share that the small-angle limit cut away compares with it.
-#[derive(Clone, Copy, Debug)]
-pub struct InducedTrial {
-    /// The trial.
-    pub trial: Trial,
-    /// Expected number of trials outside the small-angle limit for this one inside.
-    pub cut_away: f64,
-}
-
 impl InducedEnvelope {
     /// The envelope for a bound on the relative change; `None` where the bound vanishes.
     pub fn new(
@@ -105,43 +96,43 @@ impl InducedEnvelope {
     }
 
     /// The next trial below `t_gev2`, `None` when the cutoff is reached; `trials` counts every proposal.
-    pub fn propose(
-        &self,
-        mut t_gev2: f64,
-        stream: &mut Stream,
-        trials: &mut u64,
-    ) -> Option<InducedTrial> {
+    pub fn propose(&self, mut t_gev2: f64, stream: &mut Stream, trials: &mut u64) -> Option<Trial> {
         loop {
             *trials += 1;
             let uniform: f64 = stream.sample(OpenClosed01);
             let (t, rate) = self.next_t(t_gev2, -ln(uniform))?;
-            let whole = self.range.smallest(t);
-            let smallest = self.emitter.smallest(t).max(whole);
+            let smallest = self.emitter.smallest(t).max(self.range.smallest(t));
             t_gev2 = t;
             // Above t = E^2 no emission is at a small angle.
             if smallest >= LARGEST_SMALLEST {
                 continue;
             }
             let shape = Shape::new(self.emitter.is_gluon, smallest);
-            let integral = shape.integral();
-            let cut_away = Shape::new(self.emitter.is_gluon, whole).integral() / integral - 1.0;
             let z = shape.draw(stream);
             // The density is the rate in ln t times the normalised shape in z, without 1/(2 pi) like all densities.
-            let inverse_envelope = integral / (TAU * rate * shape.value(z));
+            let inverse_envelope = shape.integral() / (TAU * rate * shape.value(z));
             let splitting = if self.emitter.is_gluon {
                 Splitting::GluonToGluons
             } else {
                 Splitting::QuarkToQuarkGluon
             };
-            let trial = Trial {
+            return Some(Trial {
                 t,
                 z,
                 splitting,
                 uniform: stream.random(),
                 inverse_envelope,
-            };
-            return Some(InducedTrial { trial, cut_away });
+            });
         }
+    }
+
+    /// The expected number of branchings at `t_gev2` that the small-angle limit cut away for each that it left, taking
+    /// coupling and phase factor to be the same for both.
+    pub fn cut_away(&self, t_gev2: f64) -> f64 {
+        let whole = self.range.smallest(t_gev2);
+        let smallest = self.emitter.smallest(t_gev2).max(whole);
+        let integral = |smallest| Shape::new(self.emitter.is_gluon, smallest).integral();
+        integral(whole) / integral(smallest) - 1.0
     }
 
     /// Spends `budget` of the rate's integral on the way down from `t`: where it ends and the rate there; `None` where

@@ -14,7 +14,7 @@ use spindrift::event::{
 use spindrift::files::event_file::{
     AuditReport, EventFileWriter, Kinematics, Provenance, WriteOptions, audit,
 };
-use spindrift::run::{EventGenerator, Sink, run};
+use spindrift::run::{EventGenerator, EventTooLarge, Sink, run};
 
 const EVENTS: i64 = 300;
 const SPOILED: i64 = 217;
@@ -33,12 +33,18 @@ impl<F: Fn(&mut EventBlock, usize) + Sync> EventGenerator for Spoiler<F> {
         self.inner.worker()
     }
 
-    fn generate(&self, worker: &mut FakeCounters, id: i64, out: &mut EventBlock) {
+    fn generate(
+        &self,
+        worker: &mut FakeCounters,
+        id: i64,
+        out: &mut EventBlock,
+    ) -> Result<(), EventTooLarge> {
         let first_row = out.partons.len();
-        self.inner.generate(worker, id, out);
+        self.inner.generate(worker, id, out)?;
         if id == SPOILED {
             (self.spoil)(out, first_row);
         }
+        Ok(())
     }
 
     fn counters(&self, worker: &FakeCounters) -> FakeCounters {

@@ -242,6 +242,26 @@ fn an_unusable_field_writes_nothing() {
     assert_eq!(desk.names(), ["field.h5", name]);
 }
 
+/// A coupling near 1 above a tiny cutoff branches without bound: refused before a file is made, in bounded memory.
+#[test]
+fn events_that_would_not_end_are_refused() {
+    let desk = Desk::new();
+    let config = desk.config(&json!({
+        "events": 100,
+        "source": { "kind": "single", "parton": "g", "energy_GeV": 1000.0, "start_virtuality_GeV": 1000.0 },
+        "coupling": { "argument": "fixed", "alpha_s": 0.99 },
+        "shower": { "ordering": "collinear", "virtuality_cutoff_GeV": 0.1 }
+    }));
+    let output = desk.run(&["generate", config]);
+    assert_ends(&output, BAD_REQUEST);
+    assert!(
+        stderr(&output).contains("raise shower.virtuality_cutoff_GeV"),
+        "{}",
+        stderr(&output)
+    );
+    assert_eq!(desk.names(), ["run.json"]);
+}
+
 #[test]
 fn an_existing_output_is_kept_unless_overwritten() {
     let desk = Desk::new();

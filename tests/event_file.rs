@@ -38,7 +38,7 @@ fn generated(generator: &FakeGenerator, ids: std::ops::Range<i64>) -> EventBlock
     let mut block = EventBlock::default();
     let mut worker = generator.worker();
     for id in ids {
-        generator.generate(&mut worker, id, &mut block);
+        generator.generate(&mut worker, id, &mut block).unwrap();
     }
     block
 }

@@ -18,7 +18,7 @@ use crate::run::forecast::Forecast;
 use crate::run::generator::Generator;
 use crate::run::provenance::{describe, event_ids};
 use crate::run::summary::{Circumstances, RunSummary};
-use crate::run::{Sink, run as run_events};
+use crate::run::{Sink, probe, run as run_events};
 
 /// Showers events as CONFIG says and streams them to an event file.
 #[derive(Clone, Debug, clap::Args)]
@@ -90,6 +90,7 @@ pub fn run(args: &GenerateArgs) -> anyhow::Result<ExitCode> {
         return Ok(ExitCode::from(EXIT_STOPPED));
     }
     let generator = assembled.generator;
+    probe(&generator, event_ids(&plan))?;
     let sink = open_sink(args, &plan, &generator, output.as_deref())?;
     if !args.quiet {
         let cores = threads.min(threads::cores());

@@ -120,6 +120,7 @@ pub fn exit_code(error: &anyhow::Error) -> u8 {
     match error.downcast_ref::<RunError>() {
         Some(RunError::Defect(_)) => EXIT_DEFECT,
         Some(RunError::Output(_)) => EXIT_MACHINE,
+        Some(RunError::TooLarge(_)) => EXIT_BAD_REQUEST,
         None if error.is::<std::io::Error>() => EXIT_MACHINE,
         None => EXIT_BAD_REQUEST,
     }

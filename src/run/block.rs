@@ -2,7 +2,7 @@
 
 use std::ops::Range;
 
-use super::{EventGenerator, FinalPartons, RunError, RunTotals};
+use super::{EventGenerator, EventTooLarge, FinalPartons, RunError, RunTotals};
 use crate::event::EventBlock;
 
 /// Events in a block: enough that handing it over costs nothing, few enough that memory stays small.
@@ -34,16 +34,16 @@ pub(super) fn fill<G: EventGenerator>(
     worker: &mut G::Worker,
     ids: Range<i64>,
     block: &mut EventBlock,
-) -> FinalPartons {
+) -> Result<FinalPartons, EventTooLarge> {
     let mut finals = FinalPartons::default();
     for id in ids {
         let first_row = block.partons.len();
-        generator.generate(worker, id, block);
+        generator.generate(worker, id, block)?;
         if let Some(event) = block.events.last() {
             finals.add(event.weight, &block.partons[first_row..]);
         }
     }
-    finals
+    Ok(finals)
 }
 
 /// Checks a finished block against what was asked for and adds it to the totals.

@@ -1,6 +1,6 @@
 //! Makes one event from its number: source, origin and shower put together.
 
-use super::{EventGenerator, RunCounters};
+use super::{EventGenerator, EventTooLarge, RunCounters};
 use crate::event::{EventBlock, EventSummary};
 use crate::medium::OriginSettings;
 use crate::random::{Key, Purpose};
@@ -34,7 +34,12 @@ impl EventGenerator for Generator {
         self.shower.walker()
     }
 
-    fn generate(&self, walker: &mut Walker, id: i64, block: &mut EventBlock) {
+    fn generate(
+        &self,
+        walker: &mut Walker,
+        id: i64,
+        block: &mut EventBlock,
+    ) -> Result<(), EventTooLarge> {
         let key = Key::event(self.seed, id as u64);
         let hard = self.source.draw(&mut key.stream(Purpose::SOURCE));
         let origin_fm = self.origin_fm();
@@ -45,7 +50,8 @@ impl EventGenerator for Generator {
         };
         let weight = self
             .shower
-            .shower(walker, &hard, key, origin_fm, &mut record);
+            .shower(walker, &hard, key, origin_fm, &mut record)
+            .map_err(|reason| EventTooLarge { id, reason })?;
         block.events.push(EventSummary {
             id,
             source_weight: hard.weight,
@@ -55,6 +61,7 @@ impl EventGenerator for Generator {
             field: if self.origin.is_some() { 0 } else { NO_FIELD },
             partons_count: (block.partons.len() - first_row) as i32,
         });
+        Ok(())
     }
 
     fn counters(&self, walker: &Walker) -> ShowerCounters {

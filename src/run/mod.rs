@@ -19,6 +19,7 @@ use std::sync::atomic::AtomicBool;
 
 use crate::event::EventBlock;
 use crate::files::event_file::{EventFileError, EventFileWriter, WeightSums};
+use crate::shower::tree::TooManyBranchings;
 
 pub use block::EVENTS_PER_BLOCK;
 pub use final_partons::FinalPartons;
@@ -35,7 +36,15 @@ pub trait EventGenerator: Sync {
 
     /// Appends the one event of number `id` to `out`: its summary and its rows. The event may depend on nothing but
     /// the generator and `id`.
-    fn generate(&self, worker: &mut Self::Worker, id: i64, out: &mut EventBlock);
+    ///
+    /// # Errors
+    /// [`EventTooLarge`] where the event would not end.
+    fn generate(
+        &self,
+        worker: &mut Self::Worker,
+        id: i64,
+        out: &mut EventBlock,
+    ) -> Result<(), EventTooLarge>;
 
     /// What a worker has counted.
     fn counters(&self, worker: &Self::Worker) -> Self::Counters;
@@ -98,12 +107,43 @@ pub struct RunTotals<C> {
     pub completed: bool,
 }
 
+/// An event that would not end.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, thiserror::Error)]
+#[error("event {id} {reason}")]
+pub struct EventTooLarge {
+    /// Its number.
+    pub id: i64,
+    /// What it passed, and the remedy.
+    pub reason: TooManyBranchings,
+}
+
+/// Events that [`probe`] makes.
+const PROBED_EVENTS: i64 = 16;
+
+/// Makes the first few events and drops them, so that a config whose events would not end is refused before anything is
+/// written.
+///
+/// # Errors
+/// [`EventTooLarge`] for the first such event.
+pub fn probe<G: EventGenerator>(generator: &G, ids: Range<i64>) -> Result<(), EventTooLarge> {
+    let mut worker = generator.worker();
+    let mut block = EventBlock::default();
+    for id in ids.start..ids.end.min(ids.start + PROBED_EVENTS) {
+        block.clear();
+        generator.generate(&mut worker, id, &mut block)?;
+    }
+    Ok(())
+}
+
 /// Why a run failed.
 #[derive(Debug, thiserror::Error)]
 pub enum RunError {
     /// The output could not be written; what was committed before is intact.
     #[error(transparent)]
     Output(#[from] EventFileError),
+    /// An event would not end; what was committed before is intact.
+    #[error(transparent)]
+    TooLarge(#[from] EventTooLarge),
     /// A worker panicked or broke the driver's contract: a defect of the program.
     #[error("a defect in the program stopped the run: {0}")]
     Defect(String),

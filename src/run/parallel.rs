@@ -11,8 +11,8 @@ use crossbeam_channel::{Receiver, RecvTimeoutError, Sender, unbounded};
 
 use super::block::{block_count, block_ids, event_count, fill, settle};
 use super::{
-    EventGenerator, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink, close,
-    panic_message,
+    EventGenerator, EventTooLarge, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
+    close, panic_message,
 };
 use crate::config::RecordSettings;
 use crate::event::EventBlock;
@@ -117,6 +117,7 @@ enum Task {
 enum Report {
     Made(u64, EventBlock, FinalPartons),
     Packed(PackedGroup),
+    TooLarge(EventTooLarge),
     Panicked(String),
 }
 
@@ -221,8 +222,10 @@ fn work<G: EventGenerator>(
             let report = match task {
                 Task::Make(index) => {
                     let mut block: EventBlock = take(&board.spare_blocks);
-                    let finals = fill(generator, &mut worker, block_ids(ids, index), &mut block);
-                    Report::Made(index, block, finals)
+                    match fill(generator, &mut worker, block_ids(ids, index), &mut block) {
+                        Ok(finals) => Report::Made(index, block, finals),
+                        Err(event) => Report::TooLarge(event),
+                    }
                 }
                 Task::Pack(group) => {
                     let mut packed: PackedGroup = take(&board.spare_groups);
@@ -309,6 +312,7 @@ impl<C> Coordinator<'_, C> {
                 self.early_groups[slot].insert(group.index, group);
                 self.write_groups(slot)
             }
+            Ok(Report::TooLarge(event)) => Err(event.into()),
             Ok(Report::Panicked(message)) => Err(RunError::Defect(message)),
             Err(RecvTimeoutError::Timeout) => Ok(()),
             Err(RecvTimeoutError::Disconnected) => {

@@ -55,7 +55,7 @@ fn discard<G: EventGenerator>(
             break;
         }
         block.clear();
-        let finals = fill(generator, worker, block_ids(ids, index), &mut block);
+        let finals = fill(generator, worker, block_ids(ids, index), &mut block)?;
         settle(&block, &finals, block_ids(ids, index), totals)?;
         progress.events_done(totals.events, event_count(ids));
     }
@@ -80,7 +80,7 @@ fn stream<G: EventGenerator>(
             return Ok(());
         }
         let mut block = output.spare.pop().unwrap_or_default();
-        let finals = fill(generator, worker, block_ids(ids, index), &mut block);
+        let finals = fill(generator, worker, block_ids(ids, index), &mut block)?;
         settle(&block, &finals, block_ids(ids, index), totals)?;
         let block = Arc::new(block);
         grouper.push(&block, |group| filled.push(group));

@@ -23,7 +23,7 @@ use crate::source::HardProcess;
 use leg::{Branching, Evolution};
 use proposal::FractionRange;
 use proposal::staircase::{FlavourRule, Staircase, VacuumRate};
-use tree::{Record, Tools, Walker};
+use tree::{Record, TooManyBranchings, Tools, Walker};
 
 /// The shower's choices.
 #[derive(Clone, Debug, PartialEq)]
@@ -154,6 +154,9 @@ impl Shower {
     }
 
     /// Showers a hard process born at `origin_fm` (`[t, x, y, z]`); returns the shower's weight.
+    ///
+    /// # Errors
+    /// [`TooManyBranchings`] where the event would not end.
     pub fn shower(
         &self,
         walker: &mut Walker,
@@ -161,7 +164,7 @@ impl Shower {
         key: Key,
         origin_fm: [f64; 4],
         record: &mut Record,
-    ) -> f64 {
+    ) -> Result<f64, TooManyBranchings> {
         walker.walk(self.tools(), hard, key, origin_fm, record)
     }
 

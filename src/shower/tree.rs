@@ -3,6 +3,7 @@
 
 use rand::RngExt;
 use rand_distr::OpenClosed01;
+use thiserror::Error;
 
 use std::f64::consts::TAU;
 
@@ -17,6 +18,16 @@ use crate::qcd::kernels::Splitting;
 use crate::qcd::{FIRST_COLOUR_TAG, HBAR_C_GEV_FM, Species};
 use crate::random::{Key, Purpose};
 use crate::source::{HardProcess, Topology};
+
+/// More branchings than this in one event are a runaway: a coupling or a medium too strong for the cutoff.
+pub const MOST_BRANCHINGS: u32 = 1 << 16;
+
+/// An event that would not end.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Error)]
+#[error(
+    "passes {MOST_BRANCHINGS} branchings: raise shower.virtuality_cutoff_GeV, or weaken the coupling or the medium"
+)]
+pub struct TooManyBranchings;
 
 /// Where the rows of an event go, and which of them are kept.
 pub struct Record<'a> {
@@ -82,6 +93,9 @@ impl Walker {
     }
 
     /// Showers one hard process and appends its rows; returns the shower's weight.
+    ///
+    /// # Errors
+    /// [`TooManyBranchings`] where the event passes [`MOST_BRANCHINGS`]; its rows are then not whole.
     pub fn walk(
         &mut self,
         tools: Tools,
@@ -89,16 +103,21 @@ impl Walker {
         key: Key,
         origin_fm: [f64; 4],
         record: &mut Record,
-    ) -> f64 {
+    ) -> Result<f64, TooManyBranchings> {
         self.tally.weight = 1.0;
         self.stack.clear();
         self.first_row = record.rows.len();
         self.next_colour = hard.next_colour();
         self.primaries(tools, hard, key, origin_fm, record);
+        let mut branchings = 0;
         while let Some(node) = self.stack.pop() {
+            branchings += 1;
+            if branchings > MOST_BRANCHINGS {
+                return Err(TooManyBranchings);
+            }
             self.daughters(tools, &node, record);
         }
-        self.tally.weight
+        Ok(self.tally.weight)
     }
 
     /// The first step of [`Walker::walk`] alone: the branchings of the hard partons, and the weight up to there.

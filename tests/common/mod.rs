@@ -12,7 +12,7 @@ use spindrift::event::{
     CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, EventBlock, EventSummary, NO_PARENT, Parton, Status,
 };
 use spindrift::files::event_file::{FieldEntry, Kinematics, Provenance};
-use spindrift::run::{EventGenerator, RunCounters};
+use spindrift::run::{EventGenerator, EventTooLarge, RunCounters};
 
 pub const ENERGY_GEV: f64 = 100.0;
 
@@ -58,7 +58,12 @@ impl EventGenerator for FakeGenerator {
         FakeCounters::default()
     }
 
-    fn generate(&self, worker: &mut FakeCounters, id: i64, out: &mut EventBlock) {
+    fn generate(
+        &self,
+        worker: &mut FakeCounters,
+        id: i64,
+        out: &mut EventBlock,
+    ) -> Result<(), EventTooLarge> {
         assert_ne!(self.panic_at, Some(id), "told to panic");
         let mut random = Pcg64::seed_from_u64(id.unsigned_abs());
         let branchings = random.random_range(0..=2 * self.mean_branchings);
@@ -74,6 +79,7 @@ impl EventGenerator for FakeGenerator {
             partons_count: rows.len() as i32,
         });
         out.partons.extend(rows);
+        Ok(())
     }
 
     fn counters(&self, worker: &FakeCounters) -> FakeCounters {

@@ -419,7 +419,7 @@ fn events_do_not_know_their_neighbours() {
         let mut block = spindrift::event::EventBlock::default();
         let mut walker = generator.worker();
         for id in 0..40 {
-            generator.generate(&mut walker, id, &mut block);
+            generator.generate(&mut walker, id, &mut block).unwrap();
         }
         let together: Vec<_> = block
             .iter()

@@ -200,8 +200,12 @@ fn twins(setup: &Setup, adds_only: bool, other_seed: Option<u64>) -> Totals {
     let mut acted = 0;
     for id in 0..EVENTS {
         blocks.iter_mut().for_each(EventBlock::clear);
-        vacuum.generate(&mut vacuum_walker, id, &mut blocks[0]);
-        medium.generate(&mut medium_walker, id, &mut blocks[1]);
+        vacuum
+            .generate(&mut vacuum_walker, id, &mut blocks[0])
+            .unwrap();
+        medium
+            .generate(&mut medium_walker, id, &mut blocks[1])
+            .unwrap();
         let [before, after] = [&blocks[0].partons, &blocks[1].partons];
         let mut found = Comparison::default();
         compare(

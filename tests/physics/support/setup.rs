@@ -182,7 +182,7 @@ impl Setup {
         let mut block = EventBlock::default();
         for id in ids {
             block.clear();
-            generator.generate(&mut walker, id, &mut block);
+            generator.generate(&mut walker, id, &mut block).unwrap();
             visit(&block.events[0], &block.partons);
         }
     }

@@ -1,0 +1,188 @@
+//! Cost of the inner loop's parts, one call each: `cargo bench --bench kernels`.
+
+use divan::{Bencher, black_box};
+
+use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
+use spindrift::medium::effects::{Passage, RateEffect};
+use spindrift::medium::field::{Brick, Grid, Longitudinal, Ray, TemperatureField};
+use spindrift::medium::trace::Trace;
+use spindrift::medium::{
+    ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, PhaseSettings,
+    TransportKind, TransportSettings,
+};
+use spindrift::numerics::elementary::{exp, ln};
+use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
+use spindrift::random::{Key, Purpose};
+use spindrift::shower::accept::judge;
+use spindrift::shower::proposal::FractionRange;
+use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use spindrift::shower::{FlavourOpening, Kernels, Lifetime, Ordering, ShowerSettings, ZRange};
+
+fn main() {
+    divan::main();
+}
+
+const SETTINGS: ShowerSettings = ShowerSettings {
+    virtuality_cutoff_gev: 1.0,
+    ordering: Ordering::Virtuality,
+    z_range: ZRange::Kinematic,
+    lifetime: Lifetime::Exponential,
+    kernels: Kernels {
+        q_qg: true,
+        g_gg: true,
+        g_qq: true,
+    },
+    flavours: 5,
+    flavour_opening: FlavourOpening::PairThreshold,
+    envelope_factor: 1.0,
+};
+const QUARK_MASSES_GEV: [f64; 2] = [1.5, 4.75];
+
+fn coupling(loops: Loops) -> Coupling {
+    let law = CouplingLaw::Running {
+        loops,
+        alpha_s_mz: 0.118,
+        freeze_gev: 1.0,
+    };
+    let argument = ScaleArgument::TransverseMomentum;
+    Coupling::new(&CouplingSettings {
+        law,
+        argument,
+        quark_masses_gev: QUARK_MASSES_GEV,
+    })
+    .expect("the default coupling is valid")
+}
+
+#[divan::bench]
+fn elementary_ln(bencher: Bencher) {
+    bencher.bench(|| ln(black_box(0.37)));
+}
+
+#[divan::bench]
+fn elementary_exp(bencher: Bencher) {
+    bencher.bench(|| exp(black_box(-3.7)));
+}
+
+#[divan::bench(args = ["one loop", "two loops"])]
+fn alpha_s(bencher: Bencher, loops: &str) {
+    let coupling = coupling(if loops == "one loop" {
+        Loops::One
+    } else {
+        Loops::Two
+    });
+    bencher.bench(|| coupling.alpha_s(black_box(7.0)));
+}
+
+#[divan::bench]
+fn keyed_stream(bencher: Bencher) {
+    let key = Key::event(1, 2);
+    bencher.bench(|| black_box(key).daughter(1).stream(Purpose::VACUUM));
+}
+
+/// A vacuum trial: proposal, density and verdict.
+#[divan::bench(args = ["quark", "gluon"])]
+fn vacuum_trial(bencher: Bencher, species: &str) {
+    let range = FractionRange {
+        end_t_gev2: 1.0,
+        kind: ZRange::Kinematic,
+    };
+    let flavours = FlavourRule::new(&SETTINGS, QUARK_MASSES_GEV);
+    let rate = VacuumRate {
+        coupling: coupling(Loops::One),
+        range,
+        flavours,
+    };
+    let stairs = Staircase::new(&rate, &SETTINGS, species == "gluon", 1e4);
+    let mut stream = Key::event(1, 2).stream(Purpose::VACUUM);
+    let start = stairs.height(1e4).expect("above the cutoff");
+    let (mut height, mut trials, mut weight) = (start, 0, 1.0);
+    bencher.bench_local(
+        || match stairs.propose(&mut height, &mut stream, &mut trials) {
+            Some(trial) => {
+                judge(
+                    rate.density(&trial) * trial.inverse_envelope,
+                    trial.uniform,
+                    &mut weight,
+                )
+                .accepted
+            }
+            None => {
+                height = start;
+                false
+            }
+        },
+    );
+}
+
+/// Rays from near the centre, as the first partons of a jet fly.
+fn rays() -> Vec<Ray> {
+    let ray = |place: i32| {
+        let (azimuth, radius) = (0.7 * f64::from(place), 0.1 * f64::from(place % 20));
+        let (sin, cos) = azimuth.sin_cos();
+        Ray {
+            birth_fm: [radius, radius * sin, radius * cos, 0.0],
+            direction: [cos, sin, 0.0],
+        }
+    };
+    (0..1000).map(ray).collect()
+}
+
+fn medium(field: &str) -> Medium {
+    let settings = MediumSettings {
+        field: FieldSettings {
+            kind: FieldKind::Brick {
+                temperature_gev: 0.3,
+                length_fm: 5.0,
+            },
+            end_temperature_gev: 0.15,
+        },
+        origin: OriginSettings::Fixed {
+            x_fm: 0.0,
+            y_fm: 0.0,
+        },
+        transport: TransportSettings {
+            kind: TransportKind::Cubic { coefficient: 4.0 },
+            stated_for: ColourCharge::Gluon,
+            flow: true,
+        },
+        effects: Vec::new(),
+        limit_to_small_angles: true,
+        min_energy_gev: 2.0,
+    };
+    let field: Box<dyn TemperatureField> = match field {
+        "brick" => Box::new(Brick::new(0.3, 5.0)),
+        "longitudinal" => Box::new(Longitudinal::new(0.45, 0.6)),
+        _ => {
+            let path = concat!(env!("CARGO_MANIFEST_DIR"), "/demo-data/lumpy-fireball.h5");
+            let data = spindrift::files::field_file::read_field(path.as_ref());
+            Box::new(Grid::new(data.expect("the demo field is sound"), 0.15))
+        }
+    };
+    Medium::new(&settings, field)
+}
+
+/// A path traced through a field.
+#[divan::bench(args = ["brick", "longitudinal", "grid"])]
+fn trace(bencher: Bencher, field: &str) {
+    let (medium, rays) = (medium(field), rays());
+    let mut trace = Trace::default();
+    let mut next = rays.iter().cycle();
+    bencher.bench_local(|| {
+        medium.trace(next.next().expect("a cycle does not end"), &mut trace);
+        trace.path.qhat_integral_gev2()
+    });
+}
+
+/// The phase integral of a trial on a path through the grid.
+#[divan::bench]
+fn phase_integral(bencher: Bencher) {
+    let mut trace = Trace::default();
+    medium("grid").trace(&rays()[3], &mut trace);
+    let effect = CollinearExpansion::new("bench".into(), PhaseSettings::Interference);
+    let passage = Passage {
+        species: Species::GLUON,
+        energy_gev: 20.0,
+        path: &trace.path,
+    };
+    bencher.bench_local(|| effect.relative_change(&passage, black_box(7.0), 0.9));
+}

@@ -4,10 +4,10 @@ use std::io;
 use std::sync::Arc;
 use std::sync::atomic::AtomicBool;
 
-use signal_hook::consts::{SIGINT, SIGPIPE, SIGTERM, SIGXFSZ};
+use signal_hook::consts::{SIGHUP, SIGINT, SIGPIPE, SIGTERM, SIGXFSZ};
 use signal_hook::flag;
 
-/// A flag that SIGINT and SIGTERM raise from now on.
+/// A flag that SIGINT, SIGTERM and SIGHUP raise from now on.
 ///
 /// A write beyond the limit on file sizes becomes an error of that write instead of the end of the process.
 ///
@@ -15,7 +15,7 @@ use signal_hook::flag;
 /// What the operating system says.
 pub(super) fn stop_flag() -> io::Result<Arc<AtomicBool>> {
     let stop = Arc::new(AtomicBool::new(false));
-    for signal in [SIGINT, SIGTERM] {
+    for signal in [SIGINT, SIGTERM, SIGHUP] {
         flag::register(signal, Arc::clone(&stop))?;
     }
     flag::register(SIGXFSZ, Arc::default())?;

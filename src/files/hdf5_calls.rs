@@ -170,6 +170,16 @@ pub(super) fn read_rows<T: H5Type + Copy>(
 /// within the first few hundred thousand, fields seldom are larger.
 const HEAP_SEARCH_BYTES: u64 = 16 << 20;
 
+/// Refuses what is no regular file: a pipe or a device may never answer.
+pub(super) fn expect_regular(path: &Path) -> Result<(), String> {
+    let about = path.metadata().map_err(|error| error.to_string())?;
+    if about.is_file() {
+        Ok(())
+    } else {
+        Err("it is not a regular file".to_owned())
+    }
+}
+
 /// Opens a file for reading; what is wrong comes back in words.
 pub(super) fn open_to_read(path: &Path) -> Result<hdf5::File, String> {
     check_global_heaps(path, HEAP_SEARCH_BYTES).map_err(|error| error.to_string())?;

@@ -206,9 +206,19 @@ impl RunSummary {
             .filter(|channel| channel.overshoots > 0)
         {
             warnings.push(format!(
-                "channel {}: {} of {} trials lay above their envelope; the weights carry them, so results stay exact, but please report it",
+                "channel {}: {} of {} trials had a density below zero or above its envelope; the event weights carry it and stay exact in the mean (below zero is what soft-gradient does; above the envelope deserves a report)",
                 channel.name, channel.overshoots, channel.trials
             ));
+        }
+        if self.events > 0
+            && self
+                .medium
+                .as_ref()
+                .is_some_and(|medium| medium.partons_in_medium == 0)
+        {
+            warnings.push(
+                "no parton met the medium: check the origin, the field's extent and end_temperature_GeV".to_owned(),
+            );
         }
         let left_hot = self
             .medium

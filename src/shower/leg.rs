@@ -42,6 +42,8 @@ pub struct Tally {
     pub weight: f64,
     /// Counts of this worker.
     pub counters: ShowerCounters,
+    /// Trials in the medium that this event may still judge; at 0 the event is given up.
+    pub trials_left: u32,
 }
 
 /// What all legs of a shower share.
@@ -200,9 +202,10 @@ impl Leg {
         loop {
             let vacuum_t = self.pending.map_or(0.0, |trial| trial.t);
             let (leader, t) = self.leader(vacuum_t);
-            if t <= 0.0 {
+            if t <= 0.0 || tally.trials_left == 0 {
                 return None;
             }
+            tally.trials_left -= 1;
             let branching = match leader {
                 None => self.judge_vacuum(evolution, tally),
                 Some(place) => self.judge_induced(place, evolution, tally),

@@ -22,10 +22,13 @@ use crate::source::{HardProcess, Topology};
 /// More branchings than this in one event are a runaway: a coupling or a medium too strong for the cutoff.
 pub const MOST_BRANCHINGS: u32 = 1 << 16;
 
+/// More trials than this in the medium in one event are a runaway too.
+pub const MOST_MEDIUM_TRIALS: u32 = 1 << 20;
+
 /// An event that would not end.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Error)]
 #[error(
-    "passes {MOST_BRANCHINGS} branchings: raise shower.virtuality_cutoff_GeV, or weaken the coupling or the medium"
+    "passes {MOST_BRANCHINGS} branchings or {MOST_MEDIUM_TRIALS} trials in the medium: raise shower.virtuality_cutoff_GeV, or weaken the coupling or the medium"
 )]
 pub struct TooManyBranchings;
 
@@ -88,6 +91,7 @@ impl Walker {
             tally: Tally {
                 weight: 1.0,
                 counters: super::counters::ShowerCounters::new(effects),
+                trials_left: MOST_MEDIUM_TRIALS,
             },
         }
     }
@@ -95,7 +99,7 @@ impl Walker {
     /// Showers one hard process and appends its rows; returns the shower's weight.
     ///
     /// # Errors
-    /// [`TooManyBranchings`] where the event passes [`MOST_BRANCHINGS`]; its rows are then not whole.
+    /// [`TooManyBranchings`] where the event passes [`MOST_BRANCHINGS`] or [`MOST_MEDIUM_TRIALS`]; its rows are then not whole.
     pub fn walk(
         &mut self,
         tools: Tools,
@@ -105,6 +109,7 @@ impl Walker {
         record: &mut Record,
     ) -> Result<f64, TooManyBranchings> {
         self.tally.weight = 1.0;
+        self.tally.trials_left = MOST_MEDIUM_TRIALS;
         self.stack.clear();
         self.first_row = record.rows.len();
         self.next_colour = hard.next_colour();
@@ -112,12 +117,15 @@ impl Walker {
         let mut branchings = 0;
         while let Some(node) = self.stack.pop() {
             branchings += 1;
-            if branchings > MOST_BRANCHINGS {
+            if branchings > MOST_BRANCHINGS || self.tally.trials_left == 0 {
                 return Err(TooManyBranchings);
             }
             self.daughters(tools, &node, record);
         }
-        Ok(self.tally.weight)
+        match self.tally.trials_left {
+            0 => Err(TooManyBranchings),
+            _ => Ok(self.tally.weight),
+        }
     }
 
     /// The first step of [`Walker::walk`] alone: the branchings of the hard partons, and the weight up to there.
@@ -129,6 +137,7 @@ impl Walker {
         origin_fm: [f64; 4],
     ) -> ([Option<Branching>; 2], f64) {
         self.tally.weight = 1.0;
+        self.tally.trials_left = MOST_MEDIUM_TRIALS;
         let branchings = self.evolve_primaries(tools, hard, key, origin_fm);
         (branchings, self.tally.weight)
     }

@@ -10,6 +10,8 @@ const LARGEST_COUNT: u64 = 1 << 53;
 /// Far beyond any collider.
 const LARGEST_ENERGY_GEV: f64 = 1e6;
 
+/// Fractions closer to 0 or 1 than this drown in rounding.
+const SMALLEST_EPSILON: f64 = 1e-9;
 /// Below this, transverse momenta down to half of it are deep in the non-perturbative region.
 const SMALLEST_CUTOFF_GEV: f64 = 0.1;
 
@@ -275,7 +277,7 @@ static Z_RANGE: Section = Section {
         ),
         Key::required(
             "epsilon",
-            Form::Number(Range::between(0.0, 0.5)),
+            Form::Number(Range::between(SMALLEST_EPSILON, 0.5)),
             "Smallest z and smallest 1 - z.",
         )
         .when(CONSTANT),

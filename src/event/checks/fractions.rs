@@ -6,6 +6,8 @@ use super::{CheckRules, Imbalance, daughters_by_parent, is_exchange};
 /// Rounding of a sum of fractions: a product over some fifty branchings in single precision, 50 x 6e-8, with a
 /// factor 3 to spare.
 const FRACTION_TOLERANCE: f64 = 1e-5;
+/// Below this, single precision loses digits.
+const UNDERFLOW: f64 = f32::MIN_POSITIVE as f64;
 
 /// Checks that fractions lie in (0, 1], that final partons share out each hard parton, and (`full` history) that
 /// daughters share out their parent.
@@ -13,8 +15,12 @@ const FRACTION_TOLERANCE: f64 = 1e-5;
 /// Events that exchanged momentum with the medium are exempt from the sums: the exchange rescales fractions.
 pub fn check_fractions(rows: &[Parton], rules: &CheckRules, found: &mut Vec<Imbalance>) {
     for (row, parton) in rows.iter().enumerate().filter(|(_, row)| !is_exchange(row)) {
-        for fraction in [parton.splitting_fraction, parton.jet_fraction] {
-            if !(fraction > 0.0 && f64::from(fraction) <= 1.0 + FRACTION_TOLERANCE) {
+        for (fraction, least) in [
+            (parton.splitting_fraction, f32::MIN_POSITIVE),
+            (parton.jet_fraction, 0.0),
+        ] {
+            // The product of many fractions may underflow in the file's single precision.
+            if !(fraction >= least && f64::from(fraction) <= 1.0 + FRACTION_TOLERANCE) {
                 found.push(Imbalance::of_row(
                     row,
                     "a fraction lies outside (0, 1]",
@@ -65,7 +71,9 @@ fn check_shares_of_parent(rows: &[Parton], found: &mut Vec<Imbalance>) {
             let splitting = f64::from(rows[*daughter].splitting_fraction);
             excess += splitting;
             let jet = f64::from(rows[*daughter].jet_fraction);
-            if (jet - parent_fraction * splitting).abs() > FRACTION_TOLERANCE * parent_fraction {
+            if (jet - parent_fraction * splitting).abs()
+                > FRACTION_TOLERANCE * parent_fraction + UNDERFLOW
+            {
                 found.push(Imbalance::of_row(
                     *daughter,
                     "the jet fraction is not the parent's times the splitting fraction",

@@ -8,7 +8,7 @@ use super::provenance::{Provenance, WeightSums};
 use super::read_attributes::{SampleState, read_provenance};
 use super::read_columns::{EventRows, TableReader};
 use crate::event::{EventBlock, EventSummary};
-use crate::files::hdf5_calls::open_to_read;
+use crate::files::hdf5_calls::{expect_regular, open_to_read};
 
 /// Events whose columns are read at once.
 const EVENTS_AT_ONCE: usize = 1024;
@@ -36,10 +36,12 @@ impl EventFile {
     /// [`EventFileError::Open`], [`EventFileError::Foreign`] for another kind of file or a later version,
     /// [`EventFileError::Damaged`] where parts are missing or do not fit.
     pub fn open(path: &Path) -> Result<EventFile, EventFileError> {
-        let file = open_to_read(path).map_err(|reason| EventFileError::Open {
+        let unusable = |reason| EventFileError::Open {
             path: path.to_owned(),
             reason,
-        })?;
+        };
+        expect_regular(path).map_err(unusable)?;
+        let file = open_to_read(path).map_err(unusable)?;
         let (provenance, state) = read_provenance(path, &file)?;
         let events = TableReader::open(path, &file, Table::Events, state.events_committed)?;
         let partons = TableReader::open(path, &file, Table::Partons, state.partons_committed)?;

@@ -2,6 +2,7 @@
 
 use std::collections::VecDeque;
 use std::mem::ManuallyDrop;
+use std::os::unix::fs::MetadataExt;
 use std::path::{Path, PathBuf};
 use std::time::{Duration, Instant};
 
@@ -35,6 +36,8 @@ pub struct EventFileWriter {
     path: PathBuf,
     // dropped by hand: after a failed write, closing would flush half of what HDF5 holds in memory
     handles: ManuallyDrop<Handles>,
+    /// Device and inode of the file made at `path`.
+    identity: Option<(u64, u64)>,
     failed: bool,
     record: RecordSettings,
     events: Progress,
@@ -92,6 +95,7 @@ impl EventFileWriter {
                 events,
                 partons,
             }),
+            identity: identity(path),
             failed: false,
             record: RecordSettings {
                 history: provenance.history,
@@ -105,6 +109,19 @@ impl EventFileWriter {
             committed_partons: 0,
             last_commit: Instant::now(),
             _lock: lock,
+        })
+    }
+
+    /// Whether the path still leads to the file that is being written.
+    fn expect_in_place(&self) -> Result<(), EventFileError> {
+        if identity(&self.path) == self.identity {
+            return Ok(());
+        }
+        Err(EventFileError::Write {
+            path: self.path.clone(),
+            what: "the file".to_owned(),
+            reason: "it was removed or replaced during the run; what was written is lost"
+                .to_owned(),
         })
     }
 
@@ -178,6 +195,7 @@ impl EventFileWriter {
     /// # Errors
     /// [`EventFileError::Write`]; the writer is of no use afterwards.
     pub fn commit(&mut self) -> Result<(), EventFileError> {
+        self.expect_in_place()?;
         let outcome = self.commit_rows();
         self.checked("a commit", outcome)?;
         self.last_commit = Instant::now();
@@ -249,6 +267,10 @@ impl EventFileWriter {
             }
         })
     }
+}
+
+fn identity(path: &Path) -> Option<(u64, u64)> {
+    path.metadata().ok().map(|about| (about.dev(), about.ino()))
 }
 
 impl Drop for EventFileWriter {

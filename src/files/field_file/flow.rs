@@ -7,6 +7,8 @@ use super::units::NUMBER;
 use super::variable::Variable;
 use super::{grid_place, names_in};
 
+/// Four-velocity components beyond this (a Lorentz factor of 100) are taken for a mistake.
+const LARGEST_FLOW: f32 = 100.0;
 /// Four-velocity u^x, u^y, tau u^eta.
 const FOUR_VELOCITY: [&str; 3] = ["ux", "uy", "ueta"];
 /// Three-velocity dx/dtau, dy/dtau, tau deta/dtau.
@@ -57,14 +59,14 @@ fn read_components(
         variable.expect_axes(axes, lengths)?;
         variable.read(axes, |place, value| {
             component[place] = value as f32;
-            if component[place].is_finite() {
+            if component[place].abs() <= LARGEST_FLOW {
                 return Ok(());
             }
             Err(FieldProblem::Value {
                 name: name.to_owned(),
                 value: value.to_string(),
                 place: grid_place(place, axes, lengths),
-                problem: "beyond the range of single precision".into(),
+                problem: format!("flow components lie between -{LARGEST_FLOW} and {LARGEST_FLOW}"),
             })
         })?;
     }

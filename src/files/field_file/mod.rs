@@ -12,7 +12,7 @@ use hdf5::File;
 
 pub use error::{FieldFileError, FieldProblem};
 
-use crate::files::hdf5_calls::open_to_read;
+use crate::files::hdf5_calls::{expect_regular, open_to_read};
 use crate::medium::field::FieldData;
 use units::{AREA_DENSITY, LENGTH, NUMBER, Quantity, TEMPERATURE};
 use variable::Variable;
@@ -53,6 +53,7 @@ pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
 }
 
 fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
+    expect_regular(path).map_err(FieldProblem::Unreadable)?;
     check_signature(path)?;
     let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
     let temperature = require(&file, "temperature", &TEMPERATURE)?;

@@ -24,6 +24,8 @@ const RUNG_HEIGHT: f64 = 0.25;
 const CELL_WIDTH: f64 = 0.4;
 /// Envelopes lie this much (relative) above the exact bound, so that rounding never makes an overshoot.
 const ROUNDING_MARGIN: f64 = 1e-9;
+/// Roundings of 1 - e that a density may carry.
+const CANCELLATION_ULPS: f64 = 4.0;
 /// Half-open sampling of 53 random bits: the spacing of doubles in [1/2, 1).
 const UNIFORM_SPACING: f64 = 1.0 / (1u64 << 53) as f64;
 const UNUSED_BITS: u32 = 11;
@@ -246,7 +248,9 @@ impl Rung {
         for &splitting in splittings {
             for [low_e, high_e] in cell_edges(&rate.range, splitting, high_t) {
                 let bound = cell_bound(rate, splitting, [low_t, high_t], [low_e, high_e]);
-                let bound = bound * envelope_factor * (1.0 + ROUNDING_MARGIN);
+                // A soft fraction e next to 1 - e is only known to the spacing of doubles there.
+                let margin = ROUNDING_MARGIN + CANCELLATION_ULPS * f64::EPSILON / low_e;
+                let bound = bound * envelope_factor * (1.0 + margin);
                 let (ln_e, width) = (ln(low_e), ln(high_e / low_e));
                 masses.push(bound / TAU * width);
                 // Half of a folded density lies on each of the two mirror images.

@@ -308,6 +308,7 @@ impl Pair {
 
 fn tally() -> Tally {
     Tally {
+        trials_left: u32::MAX,
         weight: 1.0,
         counters: ShowerCounters::new(1),
     }

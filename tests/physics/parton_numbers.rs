@@ -75,6 +75,7 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
         envelope_factor: 1.0,
     };
     let mut tally = Tally {
+        trials_left: u32::MAX,
         weight: 1.0,
         counters: ShowerCounters::new(0),
     };

@@ -92,10 +92,14 @@ impl Medium {
         let first = self.half_cell(left, middle, -half, half);
         let second = self.half_cell(middle, right, 0.0, half);
         let (integral, lever) = (first[0] + second[0], first[1] + second[1]);
-        // Projection on the first two Legendre polynomials of the cell.
+        // Projection on the first two Legendre polynomials of the cell; the steepest line that is nowhere negative stands
+        // for a steeper one, so that moments and rates keep their sign.
+        let mean = integral / step_fm;
+        let steepest = 2.0 * mean / step_fm;
+        let slope = 12.0 * lever / (step_fm * step_fm * step_fm);
         Cell {
-            mean: integral / step_fm,
-            slope: 12.0 * lever / (step_fm * step_fm * step_fm),
+            mean,
+            slope: slope.clamp(-steepest, steepest),
         }
     }
 
@@ -119,5 +123,85 @@ impl Medium {
             integral,
             integral * centre + (high - low) * length * length / 12.0,
         ]
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::medium::field::{Stretch, TemperatureField};
+    use crate::medium::{
+        ColourCharge, FieldKind, FieldSettings, MediumSettings, OriginSettings, TransportKind,
+        TransportSettings,
+    };
+
+    /// Hot up to a distance along any ray, cold beyond.
+    struct Sliver {
+        hot_fm: f64,
+    }
+
+    impl TemperatureField for Sliver {
+        fn stretch(&self, _ray: &Ray, _end_temperature_gev: f64) -> Option<Stretch> {
+            Some(Stretch {
+                first_fm: 0.0,
+                last_fm: 1.2,
+                cells: 2,
+            })
+        }
+
+        fn local(&self, _ray: &Ray, l_fm: f64) -> Local {
+            // Falls linearly through the end temperature of 0.15 GeV at `hot_fm`.
+            let temperature_gev = 0.15 + 0.1 * (self.hot_fm - l_fm);
+            Local {
+                temperature_gev,
+                flow_factor: 1.0,
+            }
+        }
+    }
+
+    /// A medium that ends inside a cell has no negative moment, however small the hot part.
+    #[test]
+    fn partly_hot_cells_keep_their_sign() {
+        for hot_fm in [1e-6, 0.01, 0.06, 0.2, 0.31, 0.59, 0.61, 0.7, 1.1] {
+            let settings = MediumSettings {
+                field: FieldSettings {
+                    kind: FieldKind::Brick {
+                        temperature_gev: 0.3,
+                        length_fm: 1.0,
+                    },
+                    end_temperature_gev: 0.15,
+                },
+                origin: OriginSettings::Fixed {
+                    x_fm: 0.0,
+                    y_fm: 0.0,
+                },
+                transport: TransportSettings {
+                    kind: TransportKind::Constant {
+                        qhat_gev2_per_fm: 1.0,
+                    },
+                    stated_for: ColourCharge::Gluon,
+                    flow: true,
+                },
+                effects: Vec::new(),
+                limit_to_small_angles: true,
+                min_energy_gev: 2.0,
+            };
+            let medium = Medium::new(&settings, Box::new(Sliver { hot_fm }));
+            let mut trace = Trace::default();
+            let ray = Ray {
+                birth_fm: [0.0; 4],
+                direction: [1.0, 0.0, 0.0],
+            };
+            medium.trace(&ray, &mut trace);
+            let path = &trace.path;
+            assert!(
+                (path.qhat_integral_gev2() / hot_fm - 1.0).abs() < 1e-9,
+                "{hot_fm}"
+            );
+            assert!(
+                path.first_moment_gev2_fm() > 0.0 && path.second_moment_gev2_fm2() > 0.0,
+                "{hot_fm}"
+            );
+        }
     }
 }

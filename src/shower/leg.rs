@@ -54,6 +54,8 @@ pub struct Evolution {
     pub stairs: [Staircase; 2],
     /// The medium, unless its list of effects is empty.
     pub medium: Option<Medium>,
+    /// Whether quarks and gluons emit gluons at all (the splittings that are on); the medium changes these alone.
+    pub emits: [bool; 2],
     /// Streams of the effects' channels.
     pub effect_purposes: Vec<Purpose>,
     /// See [`super::ShowerSettings::envelope_factor`].
@@ -147,6 +149,9 @@ impl Leg {
         tally: &mut Tally,
     ) {
         self.induced.clear();
+        if !evolution.emits[self.species.is_gluon() as usize] {
+            return;
+        }
         let passage = Passage {
             species: self.species,
             energy_gev: self.energy_gev,

@@ -139,6 +139,7 @@ impl Shower {
             rate,
             stairs,
             medium,
+            emits: [settings.kernels.q_qg, settings.kernels.g_gg],
             effect_purposes,
             envelope_factor: settings.envelope_factor,
         };

@@ -71,6 +71,7 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
         rate,
         stairs,
         medium: None,
+        emits: [true, true],
         effect_purposes: Vec::new(),
         envelope_factor: 1.0,
     };

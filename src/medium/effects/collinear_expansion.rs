@@ -35,6 +35,8 @@ pub const LARGEST_WINDOW: f64 = 1.2417;
 const SMALL_PHASE: f64 = 0.05;
 /// Terms of the series of K_b; the first one left out is below 10^-12 of phi^2 inside the largest window.
 const SERIES_TERMS: usize = 10;
+/// Draws of a vertex before the last one is taken as it is: more than any accepted rate can need.
+const MOST_DRAWS: u32 = 1 << 20;
 /// Steps of the search for the maximum of K_b over its window.
 const MAXIMUM_SEARCH_STEPS: usize = 2000;
 
@@ -188,8 +190,9 @@ impl RateEffect for CollinearExpansion {
         let last_phase = k_per_fm * end_fm;
         let short = last_phase < 2.0;
         let largest = self.largest_over_envelope(last_phase);
-        loop {
-            let l = if short {
+        let mut l = end_fm;
+        for _ in 0..MOST_DRAWS {
+            l = if short {
                 path.draw_by_qhat_l2(end_fm, stream)
             } else {
                 path.draw_by_qhat(end_fm, stream)
@@ -197,8 +200,9 @@ impl RateEffect for CollinearExpansion {
             let phi = k_per_fm * l;
             let envelope = if short { 0.25 * phi * phi } else { 1.0 };
             if stream.random::<f64>() * largest * envelope < self.phase_factor(phi) {
-                return l;
+                break;
             }
         }
+        l
     }
 }

@@ -154,7 +154,9 @@ impl Hot {
         let mut values = [f32x4::ZERO; BATCH];
         for ((value, [t, x, y, z]), tau) in values[..samples.len()].iter_mut().zip(points).zip(taus)
         {
-            *value = self.values_at(tau, x, y, || libm::atanh(z / t));
+            *value = self.values_at(tau, x, y, || {
+                libm::atanh(if t > 0.0 { z / t } else { ray.direction[2] })
+            });
         }
         for (((sample, value), [t, _, _, z]), tau) in
             samples.iter_mut().zip(values).zip(points).zip(taus)
@@ -211,7 +213,12 @@ fn moving(values: f32x4, ray: &Ray, [t, z]: [f64; 2], tau: f64) -> Local {
     let [nx, ny, nz] = ray.direction;
     let utau = f64::from((1.0 + ux * ux + uy * uy + ueta * ueta).sqrt());
     // Milne to lab: u^t = u^tau cosh eta + (tau u^eta) sinh eta and u^z likewise, with cosh eta = t/tau.
-    let longitudinal = (utau * (t - nz * z) + f64::from(ueta) * (z - nz * t)) / tau;
+    let longitudinal = if tau > 0.0 {
+        (utau * (t - nz * z) + f64::from(ueta) * (z - nz * t)) / tau
+    } else {
+        // The limit along a ray from the hard vertex, where t = z = 0.
+        utau * (1.0 - nz * nz).sqrt()
+    };
     let flow_factor = longitudinal - nx * f64::from(ux) - ny * f64::from(uy);
     Local {
         temperature_gev: f64::from(temperature),

@@ -236,6 +236,7 @@ fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> P
             rate,
             stairs,
             medium,
+            emits: [true, true],
             effect_purposes: vec![Purpose::named("collinear-expansion")],
             envelope_factor,
         },

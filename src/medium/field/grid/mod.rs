@@ -240,3 +240,38 @@ fn trilinear(values: &[f32x4], corner: usize, strides: [usize; 3], [u, v, w]: [f
     let (low, high) = (face(corner), face(corner + strides[0]));
     low + (high - low) * u
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// A uniform moving field from tau = 0 on: at the hard vertex itself the flow factor is the limit along the ray,
+    /// u^tau sqrt(1 - nz^2) - n.u, as a hair later.
+    #[test]
+    fn a_moving_field_may_start_at_tau_zero() {
+        let (ux, nz) = (0.7_f32, 0.6);
+        let points = 2 * 2 * 2;
+        let data = FieldData {
+            tau_fm: vec![0.0, 4.0],
+            x_fm: vec![-9.0, 9.0],
+            y_fm: vec![-9.0, 9.0],
+            temperature_gev: vec![0.3; points],
+            flow: Some([vec![ux; points], vec![0.0; points], vec![0.0; points]]),
+            ..FieldData::default()
+        };
+        let grid = Grid::new(data, 0.15);
+        let ray = Ray {
+            birth_fm: [0.0; 4],
+            direction: [0.8, 0.0, nz],
+        };
+        let ux = f64::from(ux);
+        let expected = (1.0 + ux * ux).sqrt() * (1.0 - nz * nz).sqrt() - 0.8 * ux;
+        for l_fm in [0.0, 1e-6, 1.0] {
+            let found = grid.local(&ray, l_fm).flow_factor;
+            assert!(
+                (found - expected).abs() < 1e-6,
+                "{l_fm}: {found} against {expected}"
+            );
+        }
+    }
+}

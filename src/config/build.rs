@@ -5,10 +5,12 @@ use std::path::Path;
 use serde_json::Value;
 
 use super::plan::{History, RecordSettings};
+use crate::medium::effects::model;
 use crate::medium::{
     ColourCharge, EffectSettings, FieldKind, FieldSettings, MediumSettings, OriginSettings,
-    PhaseSettings, TransportKind, TransportSettings,
+    TransportKind, TransportSettings,
 };
+use crate::parameters::{Form, Key, Setting, Values};
 use crate::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use crate::shower::{FlavourOpening, Kernels, Lifetime, Ordering, ShowerSettings, ZRange};
 use crate::source::{Direction, PairSettings, SingleSettings, SourceSettings};
@@ -278,14 +280,26 @@ fn transport(section: Checked) -> TransportSettings {
 }
 
 fn effect(section: Checked) -> EffectSettings {
-    let phase = match section.text("phase") {
-        "interference" => PhaseSettings::Interference,
-        "rescattering" => PhaseSettings::Rescattering {
-            window: section.number("window"),
-        },
-        _ => PhaseSettings::SoftGradient,
-    };
-    EffectSettings::CollinearExpansion { phase }
+    let model = model(section.text("kind")).expect("the checker knows the kinds of the registry");
+    let mut values = Values::default();
+    for key in model.keys {
+        // A key that the chosen words do not use is absent.
+        if let Some(value) = section.0.get(key.name) {
+            values.set(key.name, setting(key, value));
+        }
+    }
+    EffectSettings { model, values }
+}
+
+fn setting(key: &Key, value: &Value) -> Setting {
+    match key.form {
+        Form::Flag => Setting::Flag(value.as_bool().expect("the checker gives a flag")),
+        Form::Choice(choices) => {
+            let chosen = choices.iter().find(|choice| value == choice.name);
+            Setting::Word(chosen.expect("the checker gives a word of the choice").name)
+        }
+        _ => Setting::Number(value.as_f64().expect("the checker gives a number")),
+    }
 }
 
 /// What the event file keeps.

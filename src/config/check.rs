@@ -217,6 +217,7 @@ impl Checker<'_, '_> {
     fn value(&mut self, path: &str, key: &Key, form: &Form, node: &Node) -> Option<Value> {
         let result = match form {
             Form::Section(section) => return self.section(path, section, node),
+            Form::Models(section) => return self.section(path, section(), node),
             Form::OptionalSection(_) if matches!(node.shape, Shape::Null) => Ok(Value::Null),
             Form::OptionalSection(section) => return self.section(path, section, node),
             Form::List(of, length) => return self.list(path, key, of, *length, node),

@@ -108,6 +108,7 @@ fn form(form: &Form) -> Map<String, Value> {
         })),
         Form::EmptyList => object(json!({ "type": "array", "maxItems": 0 })),
         Form::Section(inner) => section(inner, false),
+        Form::Models(inner) => section(inner(), false),
         Form::OptionalSection(inner) => section(inner, true),
     }
 }

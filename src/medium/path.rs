@@ -101,6 +101,33 @@ impl Path {
         self.start_fm + self.cells.len() as f64 * self.step_fm
     }
 
+    /// Where the first cell starts, fm from birth.
+    pub fn start_fm(&self) -> f64 {
+        self.start_fm
+    }
+
+    /// The transport coefficient at `l_fm`, GeV^2/fm; 0 outside the cells.
+    #[inline]
+    pub fn qhat_gev2_per_fm(&self, l_fm: f64) -> f64 {
+        let place = (l_fm - self.start_fm) / self.step_fm;
+        if !(place >= 0.0) {
+            return 0.0;
+        }
+        let cell = place as usize;
+        match self.cells.get(cell) {
+            Some(Cell { mean, slope }) => mean + slope * (l_fm - self.centre(cell)),
+            None => 0.0,
+        }
+    }
+
+    /// int qhat dl from birth to `l_fm`, GeV^2.
+    pub fn integral_to(&self, l_fm: f64) -> f64 {
+        if l_fm >= self.end_fm() {
+            return self.moments[0];
+        }
+        self.pieces(l_fm).map(|piece| piece.integral()).sum()
+    }
+
     /// The cosine transform at wave number `k_per_fm`.
     pub fn transform(&self, k_per_fm: f64) -> Transform {
         let half = 0.5 * self.step_fm;

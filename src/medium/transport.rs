@@ -44,9 +44,19 @@ impl Transport {
         }
     }
 
+    /// A bound on the transport coefficient at all lower temperatures and energies, GeV^2/fm.
+    #[inline]
+    pub fn gluon_qhat_ceiling_gev2_per_fm(
+        &self,
+        temperature_gev: f64,
+        rest_energy_gev: f64,
+    ) -> f64 {
+        self.gluon_qhat_gev2_per_fm(temperature_gev, rest_energy_gev)
+    }
+
     /// qhat of a gluon at a temperature, GeV^2/fm.
     #[inline]
-    pub fn gluon_qhat_gev2_per_fm(&self, temperature_gev: f64) -> f64 {
+    pub fn gluon_qhat_gev2_per_fm(&self, temperature_gev: f64, _rest_energy_gev: f64) -> f64 {
         match self.kind {
             Gluon::Cubic(scale) => scale * temperature_gev * temperature_gev * temperature_gev,
             Gluon::Constant(value) => value,
@@ -65,8 +75,10 @@ mod tests {
             stated_for,
             flow: true,
         };
-        let quark = Transport::new(&settings(ColourCharge::Quark)).gluon_qhat_gev2_per_fm(0.3);
-        let gluon = Transport::new(&settings(ColourCharge::Gluon)).gluon_qhat_gev2_per_fm(0.3);
+        let quark =
+            Transport::new(&settings(ColourCharge::Quark)).gluon_qhat_gev2_per_fm(0.3, 10.0);
+        let gluon =
+            Transport::new(&settings(ColourCharge::Gluon)).gluon_qhat_gev2_per_fm(0.3, 10.0);
         assert!((quark / gluon - 9.0 / 4.0).abs() < 1e-12);
         // 4 * 0.3^3 / 0.1973269804 by hand.
         assert!((gluon - 0.547_315_0).abs() < 1e-6);

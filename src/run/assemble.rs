@@ -1,5 +1,7 @@
 //! From a plan to a generator: reads the inputs and builds source, medium and shower.
 
+use std::sync::Arc;
+
 use thiserror::Error;
 
 use super::generator::Generator;
@@ -66,20 +68,20 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
 fn field(
     settings: &FieldSettings,
     warnings: &mut Vec<String>,
-) -> Result<Box<dyn TemperatureField>, FieldFileError> {
+) -> Result<Arc<dyn TemperatureField>, FieldFileError> {
     Ok(match &settings.kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
-        } => Box::new(Brick::new(*temperature_gev, *length_fm)),
+        } => Arc::new(Brick::new(*temperature_gev, *length_fm)),
         FieldKind::Longitudinal {
             temperature_gev,
             start_fm,
-        } => Box::new(Longitudinal::new(*temperature_gev, *start_fm)),
+        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm)),
         FieldKind::Grid { file } => {
             let mut data = read_field(file)?;
             warnings.append(&mut data.warnings);
-            Box::new(Grid::new(data, settings.end_temperature_gev))
+            Arc::new(Grid::new(data, settings.end_temperature_gev))
         }
     })
 }

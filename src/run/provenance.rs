@@ -47,7 +47,7 @@ pub fn describe(plan: &RunPlan, generator: &Generator) -> Provenance {
         first_id: ids.start,
         last_id: ids.end - 1,
         kinematics: match plan.shower.ordering {
-            Ordering::Virtuality => Kinematics::Exact,
+            Ordering::Virtuality | Ordering::Angular => Kinematics::Exact,
             Ordering::Collinear => Kinematics::Collinear,
         },
         open_colour_lines: generator.source.open_colour_lines() as i32,

@@ -13,16 +13,21 @@
 //! (5.5). Checks: 26 for primaries, 3 for whole events, 2 for pairs.
 //! Smallest visible bias: 0.01 to 0.5 % of <w> of a primary, 0.3 % of <w> of an event, 2 % of <w> of a pair.
 
+use std::sync::Arc;
+
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::medium::field::{Brick, Ray};
-use spindrift::medium::{Medium, MediumSettings, PhaseSettings};
+use spindrift::medium::{Medium, MediumSettings};
 use spindrift::qcd::{Coupling, Species};
 use spindrift::random::{Key, Purpose};
+use spindrift::shower::ShowerSettings;
 use spindrift::shower::counters::ShowerCounters;
 use spindrift::shower::kinematics::relative_transverse_gev2;
-use spindrift::shower::leg::{Branching, Evolution, Leg, Tally};
+use spindrift::shower::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
 use spindrift::shower::proposal::FractionRange;
 use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use spindrift::shower::tree::Tools;
 
 use super::support::reference::{self, Cumulative, logit, number};
 use super::support::setup::{ALPHA_S, Setup, brick, fixed, shower_settings, up};
@@ -209,6 +214,7 @@ fn whole_events_have_the_mean_weight_one() {
 /// Two daughters of a branching: what they are evolved with.
 struct Pair {
     evolution: Evolution,
+    settings: ShowerSettings,
     t: f64,
     z: f64,
     energies_gev: [f64; 2],
@@ -230,16 +236,19 @@ fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> P
     // Energetic enough for the density to be negative up to the virtualities that the constraint discards.
     let (t, z, energy_gev) = (200.0, 0.4, 500.0);
     let stairs = [false, true].map(|gluon| Staircase::new(&rate, &settings, gluon, t));
-    let medium = medium.map(|medium| Medium::new(&medium, Box::new(Brick::new(0.3, 2.0))));
+    let medium = medium.map(|medium| Medium::new(&medium, Arc::new(Brick::new(0.3, 2.0))));
     Pair {
         evolution: Evolution {
             rate,
             stairs,
             medium,
             emits: [true, true],
+            makes_pairs: true,
+            path_purposes: Vec::new(),
             effect_purposes: vec![Purpose::named("collinear-expansion")],
             envelope_factor,
         },
+        settings,
         t,
         z,
         energies_gev: [z * energy_gev, (1.0 - z) * energy_gev],
@@ -248,6 +257,14 @@ fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> P
 }
 
 impl Pair {
+    fn tools(&self) -> Tools<'_> {
+        Tools {
+            field: None,
+            evolution: &self.evolution,
+            settings: &self.settings,
+        }
+    }
+
     fn largest_t(&self) -> [f64; 2] {
         [self.z * self.t, (1.0 - self.z) * self.t]
     }
@@ -258,13 +275,24 @@ impl Pair {
         for (place, leg) in legs.iter_mut().enumerate() {
             let key = Key::event(self.seed, id).daughter(place as u64);
             let largest_t = self.largest_t()[place];
-            leg.start(&self.evolution, species[place], key, largest_t);
+            leg.start(
+                &self.evolution,
+                species[place],
+                key,
+                largest_t,
+                AngularOrder::NONE,
+            );
             let ray = Ray {
                 birth_fm: [0.0; 4],
                 direction: [1.0, 0.0, 0.0],
             };
-            let state = (self.energies_gev[place], ray);
-            leg.enter_medium(&self.evolution, key, largest_t, state, tally);
+            let entrance = Entrance {
+                key,
+                largest_t_gev2: largest_t,
+                energy_gev: self.energies_gev[place],
+                ray: &ray,
+            };
+            leg.enter_medium(self.tools(), &entrance, tally);
         }
         legs
     }
@@ -278,7 +306,7 @@ impl Pair {
             z: self.z,
         };
         let largest = self.largest_t();
-        let branchings = settle(&self.evolution, &mut legs, largest, constraint, &mut tally);
+        let branchings = settle(self.tools(), &mut legs, largest, constraint, &mut tally);
         (branchings, tally.weight)
     }
 
@@ -287,7 +315,7 @@ impl Pair {
     fn by_hand(&self, id: u64) -> ([Option<Branching>; 2], f64, f64, bool) {
         let mut tallies = [tally(), tally()];
         let mut legs = self.legs(id, &mut tallies[0]);
-        let mut branchings = [0, 1].map(|i| legs[i].evolve(&self.evolution, &mut tallies[i]));
+        let mut branchings = [0, 1].map(|i| legs[i].evolve(self.tools(), &mut tallies[i]));
         let mut remembered = [tallies[0].weight, tallies[1].weight];
         let mut kept = remembered[0] * remembered[1];
         let mut resumed = false;
@@ -300,7 +328,7 @@ impl Pair {
             let share = [0, 1].map(|i| t[i] / self.largest_t()[i]);
             let i = (share[1] >= share[0]) as usize;
             tallies[i].weight = 1.0;
-            branchings[i] = legs[i].evolve(&self.evolution, &mut tallies[i]);
+            branchings[i] = legs[i].evolve(self.tools(), &mut tallies[i]);
             kept *= tallies[i].weight;
             remembered[i] = tallies[i].weight;
         }

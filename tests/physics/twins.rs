@@ -21,7 +21,7 @@
 use std::sync::atomic::AtomicBool;
 
 use spindrift::event::{EventBlock, Parton, Status};
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::qcd::Species;
 use spindrift::run::{EventGenerator, Sink, run};
 

@@ -1,17 +1,19 @@
 //! Cost of the inner loop's parts, one call each: `cargo bench --bench kernels`.
 
+use std::sync::Arc;
+
 use divan::{Bencher, black_box};
 
 use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
-use spindrift::medium::effects::{Passage, RateEffect};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::medium::field::{Brick, Grid, Longitudinal, Ray, TemperatureField};
 use spindrift::medium::trace::Trace;
 use spindrift::medium::{
-    ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, PhaseSettings,
-    TransportKind, TransportSettings,
+    ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
+    TransportSettings,
 };
 use spindrift::numerics::elementary::{exp, ln};
-use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
+use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument};
 use spindrift::random::{Key, Purpose};
 use spindrift::shower::accept::judge;
 use spindrift::shower::proposal::FractionRange;
@@ -149,13 +151,13 @@ fn medium(field: &str) -> Medium {
         limit_to_small_angles: true,
         min_energy_gev: 2.0,
     };
-    let field: Box<dyn TemperatureField> = match field {
-        "brick" => Box::new(Brick::new(0.3, 5.0)),
-        "longitudinal" => Box::new(Longitudinal::new(0.45, 0.6)),
+    let field: Arc<dyn TemperatureField> = match field {
+        "brick" => Arc::new(Brick::new(0.3, 5.0)),
+        "longitudinal" => Arc::new(Longitudinal::new(0.45, 0.6)),
         _ => {
             let path = concat!(env!("CARGO_MANIFEST_DIR"), "/demo-data/lumpy-fireball.h5");
             let data = spindrift::files::field_file::read_field(path.as_ref());
-            Box::new(Grid::new(data.expect("the demo field is sound"), 0.15))
+            Arc::new(Grid::new(data.expect("the demo field is sound"), 0.15))
         }
     };
     Medium::new(&settings, field)
@@ -168,7 +170,8 @@ fn trace(bencher: Bencher, field: &str) {
     let mut trace = Trace::default();
     let mut next = rays.iter().cycle();
     bencher.bench_local(|| {
-        medium.trace(next.next().expect("a cycle does not end"), &mut trace);
+        let ray = next.next().expect("a cycle does not end");
+        medium.trace(medium.field(), ray, 100.0, &mut trace);
         trace.path.qhat_integral_gev2()
     });
 }
@@ -177,12 +180,8 @@ fn trace(bencher: Bencher, field: &str) {
 #[divan::bench]
 fn phase_integral(bencher: Bencher) {
     let mut trace = Trace::default();
-    medium("grid").trace(&rays()[3], &mut trace);
-    let effect = CollinearExpansion::new("bench".into(), PhaseSettings::Interference);
-    let passage = Passage {
-        species: Species::GLUON,
-        energy_gev: 20.0,
-        path: &trace.path,
-    };
-    bencher.bench_local(|| effect.relative_change(&passage, black_box(7.0), 0.9));
+    let grid = medium("grid");
+    grid.trace(grid.field(), &rays()[3], 100.0, &mut trace);
+    let effect = CollinearExpansion::new("bench".into(), PhaseSettings::Interference, false);
+    bencher.bench_local(|| effect.strength_gev2(&trace.path, black_box(0.9)));
 }

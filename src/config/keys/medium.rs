@@ -1,6 +1,9 @@
 //! The entries of the table: the medium.
 
+use std::sync::LazyLock;
+
 use super::{Choice, Form, Key, Length, Range, Section, When};
+use crate::medium::effects::{MODELS, Model};
 
 /// Hotter than any collision makes; beyond it a temperature is most likely not in GeV.
 const HOTTEST_GEV: f64 = 5.0;
@@ -13,9 +16,14 @@ const LARGEST_TRANSPORT: f64 = 1000.0;
 
 const LARGEST_ENERGY_GEV: f64 = 1e6;
 
-/// Where the phase factor of `rescattering` turns negative, in units of the formation time: the first positive root
-/// of 2 - 2 cos(phi) - 2 phi sin(phi) + 2 phi^2 cos(phi), rounded down.
-const LARGEST_WINDOW: f64 = 1.2417;
+/// Effects that a later version will know.
+const PLANNED_EFFECTS: &[Choice] = &[
+    Choice::planned("multiple-soft", "induced emission by many soft scatterings"),
+    Choice::planned(
+        "single-hard",
+        "induced emission by a single hard scattering",
+    ),
+];
 
 /// More effects than there are models.
 const MOST_EFFECTS: usize = 16;
@@ -45,7 +53,7 @@ pub static MEDIUM: Section = Section {
         ),
         Key::required(
             "effects",
-            Form::List(&Form::Section(&EFFECT), Length::of(0, MOST_EFFECTS)),
+            Form::List(&Form::Models(effect), Length::of(0, MOST_EFFECTS)),
             "What the medium does, composed; an empty list is vacuum to the last bit.",
         ),
         Key::default(
@@ -254,71 +262,37 @@ static TRANSPORT: Section = Section {
     ],
 };
 
-const COLLINEAR_EXPANSION: When = When {
-    key: "kind",
-    is: &["collinear-expansion"],
-};
-const RESCATTERING: When = When {
-    key: "phase",
-    is: &["rescattering"],
-};
+/// The section of an effect, put together from what each model of the registry says of itself: made once, and kept.
+fn effect() -> &'static Section {
+    static EFFECT: LazyLock<Section> = LazyLock::new(|| Section {
+        about: "One model of what the medium does.",
+        keys: effect_keys(MODELS).leak(),
+    });
+    &EFFECT
+}
 
-static EFFECT: Section = Section {
-    about: "One model of what the medium does.",
-    keys: &[
-        Key::required(
-            "kind",
-            Form::Choice(&[
-                Choice::built("collinear-expansion", "induced emission in the collinear (higher-twist) expansion"),
-                Choice::planned("singular-enhancement", "the soft-singular part of each kernel enhanced"),
-                Choice::planned("multiple-soft", "induced emission by many soft scatterings"),
-                Choice::planned("single-hard", "induced emission by a single hard scattering"),
-                Choice::planned("resolved-only", "emissions that the medium does not resolve are vetoed"),
-                Choice::planned("broadening", "transverse momentum from the medium"),
-                Choice::planned("drag", "energy lost to the medium along the path"),
-                Choice::planned("virtuality-diffusion", "virtuality from the medium"),
-            ]),
-            "Which model.",
-        ),
-        Key::default(
-            "phase",
-            Form::Choice(&[
-                Choice::built("interference", "2 - 2 cos(phi)"),
-                Choice::built(
-                    "rescattering",
-                    "2 - 2 cos(phi) - 2 phi sin(phi) + 2 phi^2 cos(phi), up to the window",
-                ),
-                Choice::built("soft-gradient", "2 - 2 cos(phi) - 2 phi sin(phi), negative at small phi"),
-            ]),
-            "\"interference\"",
-            "Phase factor, with phi the path over the formation time.",
-        )
-        .when(&[COLLINEAR_EXPANSION]),
-        Key::default(
-            "window",
-            Form::Number(Range::above(0.0, LARGEST_WINDOW)),
-            "1.0",
-            "Largest phase phi, in units of the formation time; the factor turns negative beyond 1.2417.",
-        )
-        .when(&[COLLINEAR_EXPANSION, RESCATTERING]),
-        Key::planned("pair_production", "Induced splitting of gluons to quark pairs."),
-    ],
-};
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn the_largest_window_is_the_root_rounded_down() {
-        let factor =
-            |phi: f64| 2.0 - 2.0 * phi.cos() - 2.0 * phi * phi.sin() + 2.0 * phi * phi * phi.cos();
-        assert!(factor(LARGEST_WINDOW) > 0.0);
-        assert!(factor(LARGEST_WINDOW + 1e-4) < 0.0);
-        let steps = 10_000;
-        for step in 1..=steps {
-            let phi = LARGEST_WINDOW * f64::from(step) / f64::from(steps);
-            assert!(factor(phi) > 0.0, "{phi}");
-        }
+fn effect_keys(models: &[&'static Model]) -> Vec<Key> {
+    let choices = models
+        .iter()
+        .map(|model| Choice::built(model.kind, model.about))
+        .chain(PLANNED_EFFECTS.iter().copied());
+    let choices: Vec<Choice> = choices.collect();
+    let kind = Form::Choice(choices.leak());
+    let mut keys = vec![Key::required("kind", kind, "Which model.")];
+    for model in models {
+        keys.extend(model.keys.iter().map(|key| of_model(model, key)));
     }
+    keys
+}
+
+/// A parameter of a model is used with that model's kind alone.
+fn of_model(model: &'static Model, key: &Key) -> Key {
+    let kind = When {
+        key: "kind",
+        is: vec![model.kind].leak(),
+    };
+    let when: Vec<When> = std::iter::once(kind)
+        .chain(key.when.iter().copied())
+        .collect();
+    key.when(when.leak())
 }

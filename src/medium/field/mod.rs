@@ -72,6 +72,24 @@ pub struct Stretch {
     pub cells: usize,
 }
 
+/// What is found at a point of the lab.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Fluid {
+    /// Temperature of the fluid at rest, GeV; 0 without a medium.
+    pub temperature_gev: f64,
+    /// Its lab four-velocity u^x, u^y, u^z.
+    pub velocity: [f64; 3],
+}
+
+/// Upper bounds over one segment of a ray.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Ceiling {
+    /// Of the temperature, GeV.
+    pub temperature_gev: f64,
+    /// Of p.u/E.
+    pub flow_factor: f64,
+}
+
 /// A temperature field.
 pub trait TemperatureField: Send + Sync {
     /// The stretch of a ray in which the temperature may lie above `end_temperature_gev`; `None` where nowhere.
@@ -91,6 +109,11 @@ pub trait TemperatureField: Send + Sync {
     ) {
         samples.clear();
         samples.extend((0..count).map(|place| self.local(ray, first_fm + place as f64 * step_fm)));
+    }
+
+    /// Upper bounds over each of some equal segments of a stretch; false where the field offers none.
+    fn ceilings(&self, _ray: &Ray, _stretch: &Stretch, _ceilings: &mut Vec<Ceiling>) -> bool {
+        false
     }
 
     /// Whether the field ends where its data end, so that a path may leave it while the medium is still hot.

@@ -54,6 +54,11 @@ impl FlavourRule {
         }
     }
 
+    /// How many flavours can be open at all.
+    pub fn most(&self) -> u8 {
+        self.flavours
+    }
+
     /// How many flavours are open at `t`.
     #[inline]
     pub fn open(&self, t_gev2: f64) -> u8 {
@@ -195,10 +200,22 @@ impl Staircase {
         stream: &mut Stream,
         trials: &mut u64,
     ) -> Option<Trial> {
+        self.propose_times(1.0, height, stream, trials)
+    }
+
+    /// The same for `times` the envelope; the trial still carries one over the envelope itself.
+    #[inline]
+    pub fn propose_times(
+        &self,
+        times: f64,
+        height: &mut Height,
+        stream: &mut Stream,
+        trials: &mut u64,
+    ) -> Option<Trial> {
         loop {
             *trials += 1;
             let uniform: f64 = stream.sample(OpenClosed01);
-            let integral = height.integral + ln(uniform);
+            let integral = height.integral + ln(uniform) / times;
             height.integral = integral;
             if integral <= 0.0 {
                 return None;

@@ -4,7 +4,7 @@ use std::path::Path;
 
 use serde_json::Value;
 
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::qcd::{CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::shower::{FlavourOpening, ZRange};
 
@@ -81,7 +81,8 @@ pub fn setup(case: &Value) -> Setup {
     setup.with_medium(brick)
 }
 
-fn phase(effect: &Value) -> PhaseSettings {
+/// The phase factor of an effect.
+pub fn phase(effect: &Value) -> PhaseSettings {
     match effect["phase"].as_str() {
         Some("interference") => PhaseSettings::Interference,
         Some("soft-gradient") => PhaseSettings::SoftGradient,

@@ -1,12 +1,15 @@
 //! From a few choices to a generator, and samples of first branchings and of whole events.
 
+use std::sync::Arc;
+
 use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::medium::field::{Brick, Longitudinal, TemperatureField};
 use spindrift::medium::{
-    ColourCharge, EffectSettings, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings,
-    PhaseSettings, TransportKind, TransportSettings,
+    ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
+    TransportSettings,
 };
 use spindrift::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::{Key, Purpose};
@@ -92,7 +95,7 @@ pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> Med
             stated_for: ColourCharge::Gluon,
             flow: true,
         },
-        effects: vec![EffectSettings::CollinearExpansion { phase }],
+        effects: vec![phase.into()],
         limit_to_small_angles: true,
         min_energy_gev: 2.0,
     }
@@ -188,16 +191,16 @@ impl Setup {
     }
 }
 
-fn analytic_field(kind: &FieldKind) -> Box<dyn TemperatureField> {
+fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
     match *kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
-        } => Box::new(Brick::new(temperature_gev, length_fm)),
+        } => Arc::new(Brick::new(temperature_gev, length_fm)),
         FieldKind::Longitudinal {
             temperature_gev,
             start_fm,
-        } => Box::new(Longitudinal::new(temperature_gev, start_fm)),
+        } => Arc::new(Longitudinal::new(temperature_gev, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
     }
 }

@@ -37,6 +37,25 @@ pub struct FieldSettings {
     pub kind: FieldKind,
     /// Temperature in GeV below which the medium has no effect.
     pub end_temperature_gev: f64,
+    /// Before its first proper time the field holds the values that it has then.
+    pub hold_before_start: bool,
+    /// The field is turned by this angle about the beam, from x to y.
+    pub rotation_rad: f64,
+    /// The turned field is shifted by this in x and y.
+    pub shift_fm: [f64; 2],
+}
+
+impl FieldSettings {
+    /// A field that begins with its first proper time, neither turned nor shifted.
+    pub fn new(kind: FieldKind, end_temperature_gev: f64) -> FieldSettings {
+        FieldSettings {
+            kind,
+            end_temperature_gev,
+            hold_before_start: false,
+            rotation_rad: 0.0,
+            shift_fm: [0.0; 2],
+        }
+    }
 }
 
 /// Which temperature field.
@@ -56,10 +75,21 @@ pub enum FieldKind {
         /// Proper time of the start in fm/c.
         start_fm: f64,
     },
-    /// A field file.
+    /// Boost-invariant expansion with transverse flow.
+    Radial {
+        /// Amplitude of the temperature, without dimension.
+        amplitude: f64,
+        /// Inverse transverse size in 1/fm.
+        q_per_fm: f64,
+        /// Proper time of the start in fm/c.
+        start_fm: f64,
+    },
+    /// Field files.
     Grid {
-        /// The file, its path already resolved against the config's folder.
-        file: std::path::PathBuf,
+        /// The files, their paths already resolved against the config's folder.
+        files: Vec<std::path::PathBuf>,
+        /// Events in a row that share a field.
+        events_per_field: u64,
     },
 }
 

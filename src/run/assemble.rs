@@ -7,7 +7,7 @@ use thiserror::Error;
 use super::generator::Generator;
 use crate::config::{History, RunPlan};
 use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{Brick, Grid, Longitudinal, TemperatureField};
+use crate::medium::field::{Brick, Grid, Longitudinal, Radial, TemperatureField, placed};
 use crate::medium::{FieldKind, FieldSettings, Medium};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
@@ -69,7 +69,8 @@ fn field(
     settings: &FieldSettings,
     warnings: &mut Vec<String>,
 ) -> Result<Arc<dyn TemperatureField>, FieldFileError> {
-    Ok(match &settings.kind {
+    let hold = settings.hold_before_start;
+    let field: Arc<dyn TemperatureField> = match &settings.kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
@@ -77,11 +78,17 @@ fn field(
         FieldKind::Longitudinal {
             temperature_gev,
             start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm)),
-        FieldKind::Grid { file } => {
-            let mut data = read_field(file)?;
+        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
+        FieldKind::Radial {
+            amplitude,
+            q_per_fm,
+            start_fm,
+        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
+        FieldKind::Grid { files, .. } => {
+            let mut data = read_field(&files[0])?;
             warnings.append(&mut data.warnings);
-            Arc::new(Grid::new(data, settings.end_temperature_gev))
+            Arc::new(Grid::held(data, settings.end_temperature_gev, hold))
         }
-    })
+    };
+    Ok(placed(field, settings.rotation_rad, settings.shift_fm))
 }

@@ -6,7 +6,7 @@ use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
-use spindrift::medium::field::{Brick, Longitudinal, TemperatureField};
+use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
@@ -79,13 +79,13 @@ pub fn running(argument: ScaleArgument, loops: Loops) -> CouplingSettings {
 /// A brick with a constant qhat of the gluon and one phase factor.
 pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> MediumSettings {
     MediumSettings {
-        field: FieldSettings {
-            kind: FieldKind::Brick {
+        field: FieldSettings::new(
+            FieldKind::Brick {
                 temperature_gev: 0.3,
                 length_fm,
             },
-            end_temperature_gev: 0.15,
-        },
+            0.15,
+        ),
         origin: OriginSettings::Fixed {
             x_fm: 0.0,
             y_fm: 0.0,
@@ -201,6 +201,11 @@ fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
             temperature_gev,
             start_fm,
         } => Arc::new(Longitudinal::new(temperature_gev, start_fm)),
+        FieldKind::Radial {
+            amplitude,
+            q_per_fm,
+            start_fm,
+        } => Arc::new(Radial::new(amplitude, q_per_fm, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
     }
 }

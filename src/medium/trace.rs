@@ -70,7 +70,10 @@ impl Medium {
         } else {
             1.0
         };
-        let qhat = self.transport.gluon_qhat_gev2_per_fm(local.temperature_gev) * flow;
+        let qhat = self
+            .transport
+            .gluon_qhat_gev2_per_fm(local.temperature_gev, f64::INFINITY)
+            * flow;
         Sample {
             temperature_gev: local.temperature_gev,
             qhat,

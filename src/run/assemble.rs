@@ -3,10 +3,12 @@
 use thiserror::Error;
 
 use super::generator::Generator;
+use super::origins::{BirthError, FieldView, births};
 use crate::config::{History, RunPlan};
 use crate::files::field_file::{FieldFileError, read_field};
 use crate::medium::field::{Brick, Grid, Longitudinal, TemperatureField};
-use crate::medium::{FieldKind, FieldSettings, Medium};
+use crate::medium::origin::{Origin, Placement};
+use crate::medium::{FieldKind, FieldSettings, Medium, MediumSettings};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
@@ -20,6 +22,9 @@ pub enum AssembleError {
     /// The coupling cannot be had.
     #[error(transparent)]
     Coupling(#[from] CouplingError),
+    /// There is no distribution of birth places.
+    #[error(transparent)]
+    Births(#[from] BirthError),
 }
 
 /// A generator, and what the user should hear about its inputs.
@@ -37,12 +42,12 @@ pub struct Assembled {
 pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let mut warnings = Vec::new();
     let source = source::build(&plan.source);
-    let medium = match &plan.medium {
-        None => None,
-        Some(settings) => Some(Medium::new(
-            settings,
-            field(&settings.field, &mut warnings)?,
-        )),
+    let (medium, origin) = match &plan.medium {
+        None => (None, None),
+        Some(settings) => {
+            let (field, origin) = field_and_origin(settings, &mut warnings)?;
+            (Some(Medium::new(settings, field)), Some(origin))
+        }
     };
     let shower = Shower::new(
         &plan.shower,
@@ -54,7 +59,7 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
         seed: plan.seed,
         source,
         shower,
-        origin: plan.medium.as_ref().map(|medium| medium.origin),
+        origin,
         full_history: plan.record.history == History::Full,
     };
     Ok(Assembled {
@@ -63,23 +68,45 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     })
 }
 
-fn field(
-    settings: &FieldSettings,
+fn field_and_origin(
+    settings: &MediumSettings,
     warnings: &mut Vec<String>,
-) -> Result<Box<dyn TemperatureField>, FieldFileError> {
-    Ok(match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Box::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Box::new(Longitudinal::new(*temperature_gev, *start_fm)),
-        FieldKind::Grid { file } => {
-            let mut data = read_field(file)?;
+) -> Result<(Box<dyn TemperatureField>, Box<dyn Origin>), AssembleError> {
+    let FieldSettings {
+        kind,
+        end_temperature_gev,
+    } = &settings.field;
+    let data = match kind {
+        FieldKind::Grid { file } => Some(read_field(file)?),
+        _ => None,
+    };
+    let view = FieldView {
+        data: data.as_ref(),
+        tabulated: None,
+        placement: Placement::IDENTITY,
+        end_temperature_gev: *end_temperature_gev,
+    };
+    let origin = births(&settings.origin, &view, warnings)?;
+    let field: Box<dyn TemperatureField> = match (kind, data) {
+        (
+            FieldKind::Brick {
+                temperature_gev,
+                length_fm,
+            },
+            _,
+        ) => Box::new(Brick::new(*temperature_gev, *length_fm)),
+        (
+            FieldKind::Longitudinal {
+                temperature_gev,
+                start_fm,
+            },
+            _,
+        ) => Box::new(Longitudinal::new(*temperature_gev, *start_fm)),
+        (FieldKind::Grid { .. }, data) => {
+            let mut data = data.expect("a grid's file was read above");
             warnings.append(&mut data.warnings);
-            Box::new(Grid::new(data, settings.end_temperature_gev))
+            Box::new(Grid::new(data, *end_temperature_gev))
         }
-    })
+    };
+    Ok((field, origin))
 }

@@ -4,6 +4,7 @@ use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
 use spindrift::medium::field::{Brick, Longitudinal, TemperatureField};
+use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
     ColourCharge, EffectSettings, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings,
     PhaseSettings, TransportKind, TransportSettings,
@@ -157,7 +158,7 @@ impl Setup {
             seed: self.seed,
             source,
             shower,
-            origin: self.medium.as_ref().map(|medium| medium.origin),
+            origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
             full_history: self.full_history,
         }
     }
@@ -199,5 +200,15 @@ fn analytic_field(kind: &FieldKind) -> Box<dyn TemperatureField> {
             start_fm,
         } => Box::new(Longitudinal::new(temperature_gev, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
+    }
+}
+
+fn birth(settings: &OriginSettings) -> Box<dyn Origin> {
+    match settings {
+        OriginSettings::Fixed { x_fm, y_fm } => Box::new(Fixed {
+            x_fm: *x_fm,
+            y_fm: *y_fm,
+        }),
+        other => panic!("{other:?}: these set-ups know fixed origins alone"),
     }
 }

@@ -1,4 +1,4 @@
-//! Small tables of numbers as comma-separated values: a header that names the columns, then numbers.
+//! Small tables of numbers: their errors, and comma-separated values (a header that names the columns, then numbers).
 //!
 //! Blank lines and lines that start with '#' are skipped; columns may stand in any order; spaces around fields do not
 //! count. Nothing is quoted, and a decimal point is a point.
@@ -9,6 +9,7 @@ use std::path::{Path, PathBuf};
 
 use thiserror::Error;
 
+use super::field_file::FieldProblem;
 use super::hdf5_calls::expect_regular;
 
 /// Larger files are not read.
@@ -26,7 +27,7 @@ pub struct TableFileError {
     /// The line, from 1, where it is one line's fault.
     pub line: Option<usize>,
     /// What is wrong.
-    pub problem: TableProblem,
+    pub problem: Box<TableProblem>,
 }
 
 fn at(line: Option<usize>) -> String {
@@ -80,20 +81,45 @@ pub enum TableProblem {
     /// Rows, or arrays, that do not fit together.
     #[error("{0}")]
     Grid(String),
+    /// A variable of an HDF5 file.
+    #[error(transparent)]
+    Variable(#[from] FieldProblem),
+}
+
+/// A problem and its line, before the file is named.
+#[derive(Debug)]
+pub(super) struct Fault {
+    line: Option<usize>,
+    problem: Box<TableProblem>,
 }
 
 impl TableProblem {
-    /// The problem as an error of a file as a whole.
-    pub(super) fn of(self, path: &Path) -> TableFileError {
-        self.at(path, None)
+    /// The fault of a line.
+    pub(super) fn on(self, line: usize) -> Fault {
+        Fault {
+            line: Some(line),
+            problem: Box::new(self),
+        }
     }
+}
 
-    /// The problem as an error of a line.
-    pub(super) fn at(self, path: &Path, line: Option<usize>) -> TableFileError {
+impl<P: Into<TableProblem>> From<P> for Fault {
+    /// The fault of a file as a whole.
+    fn from(problem: P) -> Fault {
+        Fault {
+            line: None,
+            problem: Box::new(problem.into()),
+        }
+    }
+}
+
+impl Fault {
+    /// The fault as an error of a file.
+    pub(super) fn of(self, path: &Path) -> TableFileError {
         TableFileError {
             path: path.to_owned(),
-            line,
-            problem: self,
+            line: self.line,
+            problem: self.problem,
         }
     }
 }
@@ -139,12 +165,12 @@ pub(super) fn names_of(header: &str) -> Vec<&str> {
     header.split(',').map(str::trim).collect()
 }
 
-/// Reads the rows below a header whose columns are these, in any order; line and problem where a row is wrong.
+/// Reads the rows below a header whose columns are these, in any order.
 pub(super) fn rows_of<'a, const N: usize>(
     header: &str,
     lines: impl Iterator<Item = (usize, &'a str)>,
     columns: [&'static str; N],
-) -> Result<NumberTable<N>, (usize, TableProblem)> {
+) -> Result<NumberTable<N>, Fault> {
     let names = names_of(header);
     let places = columns.map(|column| {
         let place = names.iter().position(|name| *name == column);
@@ -155,7 +181,7 @@ pub(super) fn rows_of<'a, const N: usize>(
         rows: Vec::new(),
     };
     for (number, line) in lines {
-        let row = row_of(line, &places, columns).map_err(|problem| (number, problem))?;
+        let row = row_of(line, &places, columns).map_err(|problem| problem.on(number))?;
         table.lines.push(number);
         table.rows.push(row);
     }

@@ -3,7 +3,7 @@
 use std::path::Path;
 
 use super::number_table::{
-    TableFileError, TableProblem, has_columns, lines_of, quote, read_text, rows_of,
+    Fault, TableFileError, TableProblem, has_columns, lines_of, quote, read_text, rows_of,
 };
 use crate::medium::origin::PlaceList;
 
@@ -18,30 +18,29 @@ const LARGEST_FM: f64 = 100.0;
 /// # Errors
 /// [`TableFileError`] with the first problem found, its line and its remedy.
 pub fn read_place_list(path: &Path) -> Result<PlaceList, TableFileError> {
-    let text = read_text(path).map_err(|problem| problem.of(path))?;
+    read_checked(path).map_err(|fault| fault.of(path))
+}
+
+fn read_checked(path: &Path) -> Result<PlaceList, Fault> {
+    let text = read_text(path)?;
     let mut lines = lines_of(&text);
     let (header_line, header) = lines.next().unwrap_or((1, ""));
     if !has_columns(header, &COLUMNS) {
         let problem = TableProblem::Header {
             found: quote(header),
-            allowed: COLUMNS.join(","),
+            allowed: format!("\"{}\"", COLUMNS.join(",")),
             remedy: "name the columns in the first line; lengths are in fm".to_owned(),
         };
-        return Err(problem.at(path, Some(header_line)));
+        return Err(problem.on(header_line));
     }
-    let table =
-        rows_of(header, lines, COLUMNS).map_err(|(line, problem)| problem.at(path, Some(line)))?;
+    let table = rows_of(header, lines, COLUMNS)?;
     for (line, [x, y, weight]) in table.lines.iter().zip(&table.rows) {
-        check(*x, *y, *weight).map_err(|problem| problem.at(path, Some(*line)))?;
+        check(*x, *y, *weight).map_err(|problem| problem.on(*line))?;
     }
     let places = table.rows.iter().map(|[x, y, _]| [*x, *y]).collect();
     let weights: Vec<f64> = table.rows.iter().map(|[_, _, weight]| *weight).collect();
-    PlaceList::new(places, &weights).map_err(|error| {
-        TableProblem::Grid(format!(
-            "{error}; a list needs one place with a weight above 0"
-        ))
-        .of(path)
-    })
+    let empty = |error| TableProblem::Grid(format!("{error}; add a place with a weight above 0"));
+    Ok(PlaceList::new(places, &weights).map_err(empty)?)
 }
 
 fn check(x: f64, y: f64, weight: f64) -> Result<(), TableProblem> {

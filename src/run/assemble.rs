@@ -45,7 +45,7 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let (medium, origin) = match &plan.medium {
         None => (None, None),
         Some(settings) => {
-            let (field, origin) = field_and_origin(settings, &mut warnings)?;
+            let Surroundings { field, origin } = surroundings(settings, &mut warnings)?;
             (Some(Medium::new(settings, field)), Some(origin))
         }
     };
@@ -68,10 +68,16 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     })
 }
 
-fn field_and_origin(
+/// A field and where jets are born in it.
+struct Surroundings {
+    field: Box<dyn TemperatureField>,
+    origin: Box<dyn Origin>,
+}
+
+fn surroundings(
     settings: &MediumSettings,
     warnings: &mut Vec<String>,
-) -> Result<(Box<dyn TemperatureField>, Box<dyn Origin>), AssembleError> {
+) -> Result<Surroundings, AssembleError> {
     let FieldSettings {
         kind,
         end_temperature_gev,
@@ -108,5 +114,5 @@ fn field_and_origin(
             Box::new(Grid::new(data, *end_temperature_gev))
         }
     };
-    Ok((field, origin))
+    Ok(Surroundings { field, origin })
 }

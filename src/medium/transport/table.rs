@@ -141,6 +141,19 @@ impl TransportTable {
         (1.0 - up) * between(row) + up * between(next_row)
     }
 
+    /// What a user should hear where the table does not reach the temperatures from `coldest_gev` to `hottest_gev`.
+    pub fn coverage_warning(&self, coldest_gev: f64, hottest_gev: f64) -> Option<String> {
+        let (first, last) = (
+            self.temperature_gev[0],
+            self.temperature_gev[self.temperature_gev.len() - 1],
+        );
+        (first > coldest_gev || last < hottest_gev).then(|| {
+            format!(
+                "the transport table reaches from {first} to {last} GeV, the medium from {coldest_gev} to {hottest_gev} GeV: beyond the table its end values are held"
+            )
+        })
+    }
+
     /// All values times a factor.
     pub(super) fn scaled(&self, factor: f64) -> TransportTable {
         let mut scaled = self.clone();

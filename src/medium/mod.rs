@@ -2,6 +2,7 @@
 
 pub mod effects;
 pub mod field;
+pub mod origin;
 pub mod path;
 pub mod trace;
 pub mod transport;
@@ -11,7 +12,8 @@ use std::sync::Arc;
 use effects::{Effect, PathEffect, RateEffect};
 pub use effects::{EffectSettings, effect_names};
 use field::{Local, Ray, TemperatureField};
-use transport::Transport;
+pub use origin::{Nucleus, OriginSettings};
+use transport::{Transport, TransportTable};
 
 /// Everything a medium is made of.
 #[derive(Clone, Debug, PartialEq)]
@@ -93,31 +95,19 @@ pub enum FieldKind {
     },
 }
 
-/// Where jets are born in the transverse plane.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub enum OriginSettings {
-    /// Always at the same place.
-    Fixed {
-        /// x in fm.
-        x_fm: f64,
-        /// y in fm.
-        y_fm: f64,
-    },
-}
-
 /// The transport coefficient qhat.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct TransportSettings {
     /// The model and its number.
     pub kind: TransportKind,
-    /// Whose qhat the number is.
+    /// Whose qhat the number is; `Thermal` computes both.
     pub stated_for: ColourCharge,
     /// Multiply by p.u/E where the field has flow.
     pub flow: bool,
 }
 
 /// Models of qhat.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub enum TransportKind {
     /// qhat = coefficient * T^3 in natural units.
     Cubic {
@@ -129,6 +119,15 @@ pub enum TransportKind {
         /// GeV^2 per fm.
         qhat_gev2_per_fm: f64,
     },
+    /// Perturbative hot plasma.
+    Thermal {
+        /// The coupling, in (0, 1); it does not run.
+        alpha_s: f64,
+        /// Number of massless flavours in the plasma.
+        flavours: u8,
+    },
+    /// Numbers over temperature and energy.
+    Table(TransportTable),
 }
 
 /// A quark or a gluon, as bearer of colour charge.

@@ -7,6 +7,7 @@ use std::ops::Range;
 use spindrift::event::{EventBlock, EventSummary, Parton};
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
+use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
@@ -160,7 +161,7 @@ impl Setup {
             seed: self.seed,
             source,
             shower,
-            origin: self.medium.as_ref().map(|medium| medium.origin),
+            origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
             full_history: self.full_history,
         }
     }
@@ -207,5 +208,15 @@ fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
             start_fm,
         } => Arc::new(Radial::new(amplitude, q_per_fm, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
+    }
+}
+
+fn birth(settings: &OriginSettings) -> Box<dyn Origin> {
+    match settings {
+        OriginSettings::Fixed { x_fm, y_fm } => Box::new(Fixed {
+            x_fm: *x_fm,
+            y_fm: *y_fm,
+        }),
+        other => panic!("{other:?}: these set-ups know fixed origins alone"),
     }
 }

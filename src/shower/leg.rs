@@ -75,6 +75,8 @@ pub struct Leg {
     vacuum: Stream,
     height: Option<Height>,
     pending: Option<Trial>,
+    /// The pending vacuum trial became a branching: the next one is due should the evolution resume.
+    vacuum_due: bool,
     induced: Vec<Channel>,
     in_medium: bool,
     energy_gev: f64,
@@ -96,6 +98,8 @@ struct Channel {
     stream: Stream,
     envelope: Envelope,
     pending: Option<InducedTrial>,
+    /// The pending trial became a branching at this t: the next one is due should the evolution resume.
+    due_below_gev2: Option<f64>,
 }
 
 #[derive(Clone, Copy)]
@@ -143,6 +147,7 @@ impl Leg {
             vacuum: Key::event(0, 0).stream(Purpose::VACUUM),
             height: None,
             pending: None,
+            vacuum_due: false,
             induced: Vec::new(),
             in_medium: false,
             energy_gev: 0.0,
@@ -196,21 +201,16 @@ impl Leg {
         self.in_medium = true;
         self.energy_gev = entrance.energy_gev;
         if self.height.is_some() {
-            self.open_channels(tools, medium, entrance, tally);
-            self.pending = self.next_vacuum(tools.evolution, tally);
+            self.open_channels(tools, medium, entrance);
+            self.vacuum_due = true;
         } else {
             self.induced.clear();
             self.pending = None;
+            self.vacuum_due = false;
         }
     }
 
-    fn open_channels(
-        &mut self,
-        tools: Tools,
-        medium: &Medium,
-        entrance: &Entrance,
-        tally: &mut Tally,
-    ) {
+    fn open_channels(&mut self, tools: Tools, medium: &Medium, entrance: &Entrance) {
         self.induced.clear();
         if !tools.evolution.emits[self.species.is_gluon() as usize] {
             return;
@@ -223,9 +223,8 @@ impl Leg {
                     stream,
                     envelope,
                     pending: None,
+                    due_below_gev2: Some(entrance.largest_t_gev2),
                 });
-                let place = self.induced.len() - 1;
-                self.propose(tools, medium, place, entrance.largest_t_gev2, tally);
             }
         }
     }
@@ -325,6 +324,7 @@ impl Leg {
         medium: &Medium,
         tally: &mut Tally,
     ) -> Option<Branching> {
+        self.propose_due(tools, medium, tally);
         loop {
             let vacuum_t = self.pending.map_or(0.0, |trial| trial.t);
             let (leader, t) = self.leader(vacuum_t);
@@ -338,6 +338,18 @@ impl Leg {
             };
             if branching.is_some() {
                 return branching;
+            }
+        }
+    }
+
+    /// Makes the trials that the last branching left open.
+    fn propose_due(&mut self, tools: Tools, medium: &Medium, tally: &mut Tally) {
+        if std::mem::take(&mut self.vacuum_due) {
+            self.pending = self.next_vacuum(tools.evolution, tally);
+        }
+        for place in 0..self.induced.len() {
+            if let Some(t_gev2) = self.induced[place].due_below_gev2.take() {
+                self.propose(tools, medium, place, t_gev2, tally);
             }
         }
     }
@@ -370,8 +382,10 @@ impl Leg {
             verdict(ratio, &trial, VACUUM, tally).then(|| self.vacuum_branching(evolution, &trial));
         if branching.is_some() {
             self.count_regime(tools, medium, None, &splitting_of(&trial, 0.0), tally);
+            self.vacuum_due = true;
+        } else {
+            self.pending = self.next_vacuum(evolution, tally);
         }
-        self.pending = self.next_vacuum(evolution, tally);
         branching
     }
 
@@ -427,15 +441,18 @@ impl Leg {
         let splitting = splitting_of(&trial, place_fm);
         // The envelope of an induced channel keeps to small angles by itself; the vacuum's does not.
         let acts = trial.splitting != Kind::GluonToQuarks || rate.effect.makes_quark_pairs();
+        let passage = self.passage(tools, medium);
         let change = if acts && medium.allows_angle(trial.t, trial.z, self.energy_gev) {
-            rate.effect
-                .relative_change(&self.passage(tools, medium), &splitting)
-                .max(0.0)
+            rate.effect.relative_change(&passage, &splitting).max(0.0)
         } else {
             0.0
         };
         let evolution = tools.evolution;
-        let ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        let mut ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        // What is rejected even at the bound of the transport coefficient need not be looked up.
+        if !self.trace.is_exact() && (trial.uniform < ratio || ratio > 1.0) {
+            ratio *= passage.share_of_bound(place_fm);
+        }
         let accepted = verdict(ratio, &trial, number, tally);
         if accepted {
             self.count_cut(medium, place, trial.t, tally);
@@ -448,7 +465,11 @@ impl Leg {
             channel: number,
             place_fm,
         });
-        self.propose(tools, medium, place, trial.t, tally);
+        if accepted {
+            self.induced[place].due_below_gev2 = Some(trial.t);
+        } else {
+            self.propose(tools, medium, place, trial.t, tally);
+        }
         branching
     }
 

@@ -63,7 +63,9 @@ pub trait RateEffect: Send + Sync {
     /// R of a splitting of its own channel. Where the effect proposes places, the mean over places is D/f_vac.
     fn relative_change(&self, passage: &Passage, splitting: &Splitting) -> f64;
 
-    /// Whether it needs the whole path; else bounds of it will do, with single points looked up.
+    /// Whether it needs the whole path. Else bounds of it will do: [`RateEffect::relative_change`] then answers for the
+    /// bound, must be proportional to it at the splitting's place, and is multiplied by
+    /// [`Passage::share_of_bound`] there.
     fn needs_whole_path(&self) -> bool {
         true
     }

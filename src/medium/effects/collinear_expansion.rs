@@ -331,6 +331,7 @@ impl RateEffect for CollinearExpansion {
             t_gev2,
             z,
             place_fm,
+            ..
         } = *splitting;
         let k_per_fm = wave_number_per_fm(t_gev2, passage.energy_gev);
         let path = &passage.trace.path;
@@ -379,6 +380,7 @@ impl RateEffect for CollinearExpansion {
             t_gev2,
             z,
             place_fm,
+            ..
         } = *splitting;
         let formation_fm = 1.0 / wave_number_per_fm(t_gev2, passage.energy_gev);
         let qhat = passage.trace.path.qhat_gev2_per_fm(place_fm) * passage.share_of_bound(place_fm);

@@ -14,5 +14,6 @@ mod medium_sign;
 mod no_branching;
 mod parton_numbers;
 mod paths;
+mod rate_effects;
 mod support;
 mod twins;

@@ -262,10 +262,10 @@ fn the_digest_holds_the_content_of_the_field_file_not_its_name() {
     let one = plan("one.h5");
     assert_eq!(one.inputs.len(), 1);
     assert_eq!(one.inputs[0].path, folder.path().join("configs/../one.h5"));
-    let FieldKind::Grid { file } = &one.medium.as_ref().unwrap().field.kind else {
+    let FieldKind::Grid { files, .. } = &one.medium.as_ref().unwrap().field.kind else {
         panic!()
     };
-    assert_eq!(*file, one.inputs[0].path);
+    assert_eq!(files[..], [one.inputs[0].path.clone()]);
     assert_eq!(one.resolved["medium"]["field"]["file"], "../one.h5");
     assert_eq!(one.digest, plan("same.h5").digest);
     assert_ne!(one.digest, plan("other.h5").digest);

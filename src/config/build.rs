@@ -240,13 +240,11 @@ fn field(section: Checked, folder: &Path) -> FieldSettings {
             start_fm: section.number("start_fm"),
         },
         _ => FieldKind::Grid {
-            file: folder.join(section.text("file")),
+            files: vec![folder.join(section.text("file"))],
+            events_per_field: 1,
         },
     };
-    FieldSettings {
-        kind,
-        end_temperature_gev: section.number("end_temperature_GeV"),
-    }
+    FieldSettings::new(kind, section.number("end_temperature_GeV"))
 }
 
 fn origin(section: Checked) -> OriginSettings {

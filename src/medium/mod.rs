@@ -2,6 +2,7 @@
 
 pub mod effects;
 pub mod field;
+pub mod origin;
 pub mod path;
 pub mod trace;
 pub mod transport;
@@ -11,7 +12,8 @@ use std::sync::Arc;
 use effects::{Effect, PathEffect, RateEffect};
 pub use effects::{EffectSettings, effect_names};
 use field::{Local, Ray, TemperatureField};
-use transport::Transport;
+pub use origin::{Nucleus, OriginSettings};
+use transport::{Transport, TransportTable};
 
 /// Everything a medium is made of.
 #[derive(Clone, Debug, PartialEq)]
@@ -37,6 +39,25 @@ pub struct FieldSettings {
     pub kind: FieldKind,
     /// Temperature in GeV below which the medium has no effect.
     pub end_temperature_gev: f64,
+    /// Before its first proper time the field holds the values that it has then.
+    pub hold_before_start: bool,
+    /// The field is turned by this angle about the beam, from x to y.
+    pub rotation_rad: f64,
+    /// The turned field is shifted by this in x and y.
+    pub shift_fm: [f64; 2],
+}
+
+impl FieldSettings {
+    /// A field that begins with its first proper time, neither turned nor shifted.
+    pub fn new(kind: FieldKind, end_temperature_gev: f64) -> FieldSettings {
+        FieldSettings {
+            kind,
+            end_temperature_gev,
+            hold_before_start: false,
+            rotation_rad: 0.0,
+            shift_fm: [0.0; 2],
+        }
+    }
 }
 
 /// Which temperature field.
@@ -56,38 +77,37 @@ pub enum FieldKind {
         /// Proper time of the start in fm/c.
         start_fm: f64,
     },
-    /// A field file.
-    Grid {
-        /// The file, its path already resolved against the config's folder.
-        file: std::path::PathBuf,
+    /// Boost-invariant expansion with transverse flow.
+    Radial {
+        /// Amplitude of the temperature, without dimension.
+        amplitude: f64,
+        /// Inverse transverse size in 1/fm.
+        q_per_fm: f64,
+        /// Proper time of the start in fm/c.
+        start_fm: f64,
     },
-}
-
-/// Where jets are born in the transverse plane.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub enum OriginSettings {
-    /// Always at the same place.
-    Fixed {
-        /// x in fm.
-        x_fm: f64,
-        /// y in fm.
-        y_fm: f64,
+    /// Field files.
+    Grid {
+        /// The files, their paths already resolved against the config's folder.
+        files: Vec<std::path::PathBuf>,
+        /// Events in a row that share a field.
+        events_per_field: u64,
     },
 }
 
 /// The transport coefficient qhat.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct TransportSettings {
     /// The model and its number.
     pub kind: TransportKind,
-    /// Whose qhat the number is.
+    /// Whose qhat the number is; `Thermal` computes both.
     pub stated_for: ColourCharge,
     /// Multiply by p.u/E where the field has flow.
     pub flow: bool,
 }
 
 /// Models of qhat.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub enum TransportKind {
     /// qhat = coefficient * T^3 in natural units.
     Cubic {
@@ -99,6 +119,15 @@ pub enum TransportKind {
         /// GeV^2 per fm.
         qhat_gev2_per_fm: f64,
     },
+    /// Perturbative hot plasma.
+    Thermal {
+        /// The coupling, in (0, 1); it does not run.
+        alpha_s: f64,
+        /// Number of massless flavours in the plasma.
+        flavours: u8,
+    },
+    /// Numbers over temperature and energy.
+    Table(TransportTable),
 }
 
 /// A quark or a gluon, as bearer of colour charge.

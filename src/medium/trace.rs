@@ -232,6 +232,7 @@ impl Medium {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::medium::field::Fluid;
     use crate::medium::{
         ColourCharge, FieldKind, FieldSettings, MediumSettings, OriginSettings, TransportKind,
         TransportSettings,
@@ -260,6 +261,14 @@ mod tests {
                 flow_factor: 1.0,
             }
         }
+
+        fn fluid(&self, _point_fm: [f64; 4]) -> Fluid {
+            Fluid::EMPTY
+        }
+
+        fn first_tau_fm(&self) -> f64 {
+            0.0
+        }
     }
 
     /// A medium that ends inside a cell has no negative moment, however small the hot part.
@@ -267,13 +276,13 @@ mod tests {
     fn partly_hot_cells_keep_their_sign() {
         for hot_fm in [1e-6, 0.01, 0.06, 0.2, 0.31, 0.59, 0.61, 0.7, 1.1] {
             let settings = MediumSettings {
-                field: FieldSettings {
-                    kind: FieldKind::Brick {
+                field: FieldSettings::new(
+                    FieldKind::Brick {
                         temperature_gev: 0.3,
                         length_fm: 1.0,
                     },
-                    end_temperature_gev: 0.15,
-                },
+                    0.15,
+                ),
                 origin: OriginSettings::Fixed {
                     x_fm: 0.0,
                     y_fm: 0.0,

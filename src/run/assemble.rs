@@ -5,10 +5,14 @@ use std::sync::Arc;
 use thiserror::Error;
 
 use super::generator::Generator;
+use super::origins::{BirthError, FieldView, births};
 use crate::config::{History, RunPlan};
 use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{Brick, Grid, Longitudinal, TemperatureField};
-use crate::medium::{FieldKind, FieldSettings, Medium};
+use crate::medium::field::{
+    Brick, FieldData, Grid, Longitudinal, Radial, TemperatureField, placed,
+};
+use crate::medium::origin::{Origin, Placement};
+use crate::medium::{FieldKind, FieldSettings, Medium, MediumSettings};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
@@ -22,6 +26,9 @@ pub enum AssembleError {
     /// The coupling cannot be had.
     #[error(transparent)]
     Coupling(#[from] CouplingError),
+    /// There is no distribution of birth places.
+    #[error(transparent)]
+    Births(#[from] BirthError),
 }
 
 /// A generator, and what the user should hear about its inputs.
@@ -39,12 +46,12 @@ pub struct Assembled {
 pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let mut warnings = Vec::new();
     let source = source::build(&plan.source);
-    let medium = match &plan.medium {
-        None => None,
-        Some(settings) => Some(Medium::new(
-            settings,
-            field(&settings.field, &mut warnings)?,
-        )),
+    let (medium, origin) = match &plan.medium {
+        None => (None, None),
+        Some(settings) => {
+            let Surroundings { field, origin } = surroundings(settings, &mut warnings)?;
+            (Some(Medium::new(settings, field)), Some(origin))
+        }
     };
     let shower = Shower::new(
         &plan.shower,
@@ -56,7 +63,7 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
         seed: plan.seed,
         source,
         shower,
-        origin: plan.medium.as_ref().map(|medium| medium.origin),
+        origin,
         full_history: plan.record.history == History::Full,
     };
     Ok(Assembled {
@@ -65,11 +72,43 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     })
 }
 
-fn field(
-    settings: &FieldSettings,
+/// A field and where jets are born in it.
+struct Surroundings {
+    field: Arc<dyn TemperatureField>,
+    origin: Box<dyn Origin>,
+}
+
+fn surroundings(
+    settings: &MediumSettings,
     warnings: &mut Vec<String>,
-) -> Result<Arc<dyn TemperatureField>, FieldFileError> {
-    Ok(match &settings.kind {
+) -> Result<Surroundings, AssembleError> {
+    let field = &settings.field;
+    let data = match &field.kind {
+        FieldKind::Grid { files, .. } => Some(read_field(&files[0])?),
+        _ => None,
+    };
+    let view = FieldView {
+        data: data.as_ref(),
+        tabulated: None,
+        placement: Placement::new(field.rotation_rad, field.shift_fm),
+        end_temperature_gev: field.end_temperature_gev,
+    };
+    let origin = births(&settings.origin, &view, warnings)?;
+    if let Some(data) = &data {
+        warnings.extend(data.warnings.iter().cloned());
+    }
+    Ok(Surroundings {
+        field: temperature_field(field, data),
+        origin,
+    })
+}
+
+fn temperature_field(
+    settings: &FieldSettings,
+    data: Option<FieldData>,
+) -> Arc<dyn TemperatureField> {
+    let hold = settings.hold_before_start;
+    let field: Arc<dyn TemperatureField> = match &settings.kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
@@ -77,11 +116,16 @@ fn field(
         FieldKind::Longitudinal {
             temperature_gev,
             start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm)),
-        FieldKind::Grid { file } => {
-            let mut data = read_field(file)?;
-            warnings.append(&mut data.warnings);
-            Arc::new(Grid::new(data, settings.end_temperature_gev))
+        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
+        FieldKind::Radial {
+            amplitude,
+            q_per_fm,
+            start_fm,
+        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
+        FieldKind::Grid { .. } => {
+            let data = data.expect("a grid's file was read before");
+            Arc::new(Grid::held(data, settings.end_temperature_gev, hold))
         }
-    })
+    };
+    placed(field, settings.rotation_rad, settings.shift_fm)
 }

@@ -2,7 +2,7 @@
 
 use super::{EventGenerator, EventTooLarge, RunCounters};
 use crate::event::{EventBlock, EventSummary};
-use crate::medium::OriginSettings;
+use crate::medium::origin::Origin;
 use crate::random::{Key, Purpose};
 use crate::shower::Shower;
 use crate::shower::counters::ShowerCounters;
@@ -21,7 +21,7 @@ pub struct Generator {
     /// The shower with its medium.
     pub shower: Shower,
     /// Where jets are born; `None` without a medium.
-    pub origin: Option<OriginSettings>,
+    pub origin: Option<Box<dyn Origin>>,
     /// Keep branched partons.
     pub full_history: bool,
 }
@@ -42,7 +42,7 @@ impl EventGenerator for Generator {
     ) -> Result<(), EventTooLarge> {
         let key = Key::event(self.seed, id as u64);
         let hard = self.source.draw(&mut key.stream(Purpose::SOURCE));
-        let origin_fm = self.origin_fm();
+        let origin_fm = self.origin_fm(key);
         let first_row = block.partons.len();
         let mut record = Record {
             rows: &mut block.partons,
@@ -97,10 +97,11 @@ impl RunCounters for ShowerCounters {
 }
 
 impl Generator {
-    fn origin_fm(&self) -> [f64; 4] {
-        match self.origin {
-            None => [0.0; 4],
-            Some(OriginSettings::Fixed { x_fm, y_fm }) => [0.0, x_fm, y_fm, 0.0],
-        }
+    fn origin_fm(&self, key: Key) -> [f64; 4] {
+        let Some(origin) = &self.origin else {
+            return [0.0; 4];
+        };
+        let [x, y] = origin.draw(&mut key.stream(Purpose::ORIGIN));
+        [0.0, x, y, 0.0]
     }
 }

@@ -9,6 +9,7 @@ mod clock;
 mod final_partons;
 pub mod forecast;
 pub mod generator;
+mod origins;
 mod parallel;
 pub mod provenance;
 mod serial;

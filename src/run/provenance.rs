@@ -66,7 +66,9 @@ fn field(plan: &RunPlan, settings: &FieldSettings) -> FieldEntry {
     let (name, sha256) = match &settings.kind {
         FieldKind::Brick { .. } => ("brick".to_owned(), String::new()),
         FieldKind::Longitudinal { .. } => ("longitudinal".to_owned(), String::new()),
-        FieldKind::Grid { file } => {
+        FieldKind::Radial { .. } => ("radial".to_owned(), String::new()),
+        FieldKind::Grid { files, .. } => {
+            let file = &files[0];
             let input = plan.inputs.iter().find(|input| input.path == *file);
             let input = input.expect("the config hashes every input file");
             let name = file.file_name().unwrap_or(file.as_os_str());

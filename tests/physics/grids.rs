@@ -7,7 +7,7 @@
 use std::sync::Arc;
 
 use spindrift::medium::Medium;
-use spindrift::medium::field::{FieldData, Grid, Local, Ray, Stretch, TemperatureField};
+use spindrift::medium::field::{FieldData, Fluid, Grid, Local, Ray, Stretch, TemperatureField};
 use spindrift::medium::trace::{Outcome, Trace};
 use spindrift::qcd::HBAR_C_GEV_FM;
 
@@ -52,6 +52,14 @@ impl TemperatureField for Fine {
             temperature_gev: (self.flow.temperature_gev)(milne),
             flow_factor: ut - nx * ux - ny * uy - nz * uz,
         }
+    }
+
+    fn fluid(&self, _point_fm: [f64; 4]) -> Fluid {
+        Fluid::EMPTY
+    }
+
+    fn first_tau_fm(&self) -> f64 {
+        0.0
     }
 }
 
@@ -339,6 +347,12 @@ fn births_outside_the_grid() {
         Outcome::Medium { left_hot: true }
     );
     let length = (12.5_f64.powi(2) - 1.75) / (2.0 * 0.5);
+    // At rest in Milne coordinates p.u/E = (t - nz z)/tau = dtau/dl, so the path counts as long as tau grows.
+    let grown = 12.5 - 1.75_f64.sqrt();
+    let found = trace.path.qhat_integral_gev2();
+    assert!((found / (rest * grown) - 1.0).abs() < 1e-3, "{found}");
+    let still = Medium::new(&settings(false), Arc::new(flow.grid(1.0, false, false)));
+    still.trace(still.field(), &beam, 100.0, &mut trace);
     let found = trace.path.qhat_integral_gev2();
     assert!((found / (rest * length) - 1.0).abs() < 1e-5, "{found}");
 }

@@ -191,8 +191,11 @@ fn relative_changes_are_those_of_the_table() {
             medium.trace(medium.field(), &ray, 100.0, &mut trace),
             Outcome::Medium { left_hot: false }
         );
-        let effect =
-            CollinearExpansion::new("tested".into(), reference::phase(&case["effect"]), false);
+        let effect = CollinearExpansion::new(
+            "tested".into(),
+            reference::phase(&case["medium"]["effect"]),
+            false,
+        );
         for row in case["samples"].as_array().expect("a list") {
             let (t, z) = (number(row, "t_GeV2"), number(row, "z"));
             let expected = number(row, "ratio_without_limit");

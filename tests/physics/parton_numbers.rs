@@ -81,7 +81,7 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
     let tools = Tools {
         field: None,
         evolution: &evolution,
-        settings: &settings,
+        settings: &setup.shower,
     };
     let mut tally = Tally {
         trials_left: u32::MAX,

@@ -6,7 +6,7 @@
 use std::sync::Arc;
 
 use spindrift::medium::effects::collinear_expansion::{CollinearExpansion, PhaseSettings};
-use spindrift::medium::field::{Brick, Local, Longitudinal, Ray, Stretch, TemperatureField};
+use spindrift::medium::field::{Brick, Fluid, Local, Longitudinal, Ray, Stretch, TemperatureField};
 use spindrift::medium::path::Path;
 use spindrift::medium::trace::{Outcome, Trace};
 use spindrift::medium::{Medium, MediumSettings, TransportKind};
@@ -71,6 +71,14 @@ impl<F: TemperatureField> TemperatureField for Refined<F> {
 
     fn local(&self, ray: &Ray, l_fm: f64) -> Local {
         self.field.local(ray, l_fm)
+    }
+
+    fn fluid(&self, point_fm: [f64; 4]) -> Fluid {
+        self.field.fluid(point_fm)
+    }
+
+    fn first_tau_fm(&self) -> f64 {
+        self.field.first_tau_fm()
     }
 }
 

@@ -2,8 +2,8 @@
 
 mod error;
 mod flow;
-mod units;
-mod variable;
+pub(super) mod units;
+pub(super) mod variable;
 
 use std::io::Read;
 use std::path::Path;
@@ -27,9 +27,9 @@ const LARGEST_TEMPERATURE_GEV: f64 = 5.0;
 const UNUSUAL_TEMPERATURE_GEV: f64 = 1.0;
 
 /// First bytes of an HDF5 file (without a user block).
-const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
+pub(super) const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
 /// First bytes of the classic netCDF formats.
-const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
+pub(super) const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
 
 /// Axes without space-time rapidity, in the order of [`FieldData`].
 const PLANE_AXES: [&str; 3] = ["tau", "x", "y"];
@@ -106,7 +106,7 @@ fn require(file: &File, name: &'static str, quantity: &Quantity) -> Result<Varia
     })
 }
 
-fn names_in(file: &File) -> String {
+pub(super) fn names_in(file: &File) -> String {
     match file.member_names() {
         Ok(names) if names.is_empty() => "nothing".into(),
         Ok(names) => names.join(", "),

@@ -6,7 +6,8 @@ use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
-use spindrift::medium::field::{Brick, Longitudinal, TemperatureField};
+use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
+use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
@@ -79,13 +80,13 @@ pub fn running(argument: ScaleArgument, loops: Loops) -> CouplingSettings {
 /// A brick with a constant qhat of the gluon and one phase factor.
 pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> MediumSettings {
     MediumSettings {
-        field: FieldSettings {
-            kind: FieldKind::Brick {
+        field: FieldSettings::new(
+            FieldKind::Brick {
                 temperature_gev: 0.3,
                 length_fm,
             },
-            end_temperature_gev: 0.15,
-        },
+            0.15,
+        ),
         origin: OriginSettings::Fixed {
             x_fm: 0.0,
             y_fm: 0.0,
@@ -160,7 +161,7 @@ impl Setup {
             seed: self.seed,
             source,
             shower,
-            origin: self.medium.as_ref().map(|medium| medium.origin),
+            origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
             full_history: self.full_history,
         }
     }
@@ -201,6 +202,21 @@ fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
             temperature_gev,
             start_fm,
         } => Arc::new(Longitudinal::new(temperature_gev, start_fm)),
+        FieldKind::Radial {
+            amplitude,
+            q_per_fm,
+            start_fm,
+        } => Arc::new(Radial::new(amplitude, q_per_fm, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
+    }
+}
+
+fn birth(settings: &OriginSettings) -> Box<dyn Origin> {
+    match settings {
+        OriginSettings::Fixed { x_fm, y_fm } => Box::new(Fixed {
+            x_fm: *x_fm,
+            y_fm: *y_fm,
+        }),
+        other => panic!("{other:?}: these set-ups know fixed origins alone"),
     }
 }

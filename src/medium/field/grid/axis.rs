@@ -1,5 +1,7 @@
 //! One axis of a grid: from a coordinate to its cell in constant time, on uneven axes too.
 
+use std::ops::Range;
+
 /// A strictly increasing axis.
 #[derive(Clone, Debug)]
 pub(super) struct Axis {
@@ -65,6 +67,13 @@ impl Axis {
 
     pub(super) fn mean_spacing(&self) -> f64 {
         (self.last() - self.first()) / (self.points.len() - 1) as f64
+    }
+
+    /// The points of all cells that touch an interval (where the axis ends, of the cell at the end).
+    pub(super) fn around(&self, low: f64, high: f64) -> Range<usize> {
+        let from = self.points.partition_point(|point| *point <= low);
+        let to = self.points.partition_point(|point| *point < high);
+        from.saturating_sub(1)..(to + 1).min(self.points.len())
     }
 
     /// Cell and place in it (0 to 1) of a coordinate; beyond an end, the end itself.

@@ -1,12 +1,81 @@
 //! Where a gridded field reaches the end temperature, so that only that part is kept and looked at.
 
-use super::super::{FieldData, Ray};
+use super::super::Ray;
+use super::Frame;
 
-/// The hot planes of tau, and for each slab of tau the box in x and y that holds every place that is hot then or later.
+/// First and last hot index of x and of y in each plane of tau: all that must be known of a field before its hot part
+/// is read.
+#[derive(Clone, Debug)]
+pub struct HotScan {
+    end_temperature_gev: f32,
+    lengths: [usize; 4],
+    planes: Vec<HotPlane>,
+}
+
+/// First and last hot column (x) and row (y) of one plane of tau; the first beyond the last where none is.
+type HotPlane = [[usize; 2]; 2];
+const COLD: HotPlane = [[usize::MAX, 0]; 2];
+
+impl HotScan {
+    /// Nothing seen yet of a grid of so many points along tau, x, y and eta (1 for a boost-invariant field).
+    pub fn new(lengths: [usize; 4], end_temperature_gev: f64) -> HotScan {
+        // The least f32 that is not below the end temperature.
+        let nearest = end_temperature_gev as f32;
+        let below = f64::from(nearest) < end_temperature_gev;
+        HotScan {
+            end_temperature_gev: if below { nearest.next_up() } else { nearest },
+            lengths,
+            planes: vec![COLD; lengths[0]],
+        }
+    }
+
+    /// Takes note of the temperature (GeV) at a place in C order over (tau, x, y, eta).
+    #[inline]
+    pub fn see(&mut self, place: usize, temperature_gev: f32) {
+        if temperature_gev >= self.end_temperature_gev {
+            self.see_hot(place);
+        }
+    }
+
+    fn see_hot(&mut self, place: usize) {
+        let [_, columns, rows, depth] = self.lengths;
+        let point = place / depth;
+        let indices = [point / rows % columns, point % rows];
+        for (range, index) in self.planes[point / (columns * rows)]
+            .iter_mut()
+            .zip(indices)
+        {
+            *range = [range[0].min(index), range[1].max(index)];
+        }
+    }
+
+    /// First and last plane to keep of tau, x and y, one wider than what is hot; `None` where nothing is.
+    pub fn kept(&self) -> Option<[[usize; 2]; 3]> {
+        let hot = |plane: &HotPlane| *plane != COLD;
+        let first = self.planes.iter().position(hot)?;
+        let last = self.planes.iter().rposition(hot)?;
+        let [columns, rows] = [0, 1].map(|axis| self.from_plane_on(0, axis));
+        Some([widen([first, last], self.lengths[0]), columns, rows])
+    }
+
+    /// First and last plane to keep of x (axis 0) or y (axis 1) from a plane of tau on.
+    fn from_plane_on(&self, from: usize, axis: usize) -> [usize; 2] {
+        let planes = &self.planes[from..];
+        let low = planes.iter().map(|plane| plane[axis][0]).min().unwrap_or(0);
+        let high = planes.iter().map(|plane| plane[axis][1]).max().unwrap_or(0);
+        widen([low.min(high), high], self.lengths[axis + 1])
+    }
+}
+
+/// Between a hot plane and a cold one the medium reaches into the cell, so each side grows by one plane; and an axis
+/// needs two planes.
+fn widen([first, last]: [usize; 2], count: usize) -> [usize; 2] {
+    [first.saturating_sub(1), (last + 1).min(count - 1)]
+}
+
+/// For each slab of tau the box in x and y that holds every place that is hot then or later.
 #[derive(Clone, Debug)]
 pub(super) struct HotRegion {
-    /// First and last plane of tau, x and y; a plane wider than what is hot on every side.
-    pub(super) planes: [[usize; 2]; 3],
     tau_fm: [f64; 2],
     boxes: Vec<[[f64; 2]; 2]>,
 }
@@ -14,50 +83,38 @@ pub(super) struct HotRegion {
 /// Slabs of proper time that the hot region is cut into.
 const SLABS: usize = 6;
 
-/// First and last hot column (x) and row (y) of one plane of tau; the first beyond the last where none is.
-type HotPlane = [[usize; 2]; 2];
-const COLD: HotPlane = [[usize::MAX, 0]; 2];
-
 impl HotRegion {
-    /// The hot region of a field; `None` where it is cold everywhere.
-    pub(super) fn new(data: &FieldData, end_temperature_gev: f64) -> Option<HotRegion> {
-        let hot = hot_planes(data, end_temperature_gev);
-        let first = hot.iter().position(|plane| *plane != COLD)?;
-        let last = hot.iter().rposition(|plane| *plane != COLD)?;
-        let tau = widen([first, last], hot.len());
-        let tau_fm = tau.map(|plane| data.tau_fm[plane]);
-        let slab_fm = (tau_fm[1] - tau_fm[0]) / SLABS as f64;
-        let later = |from: usize, axis: usize, points: &[f64]| {
-            let low = hot[from..]
-                .iter()
-                .map(|plane| plane[axis][0])
-                .min()
-                .unwrap_or(0);
-            let high = hot[from..]
-                .iter()
-                .map(|plane| plane[axis][1])
-                .max()
-                .unwrap_or(0);
-            widen([low.min(high), high], points.len())
-        };
+    /// The hot region of a whole grid's scan, which must not be cold everywhere. With `hold` it reaches back to tau = 0
+    /// if it begins with the first plane.
+    pub(super) fn new(scan: &HotScan, frame: &Frame, hold: bool) -> Option<HotRegion> {
+        let [tau, ..] = scan.kept()?;
+        let last_hot = scan.planes.iter().rposition(|plane| *plane != COLD)?;
+        let [mut start_fm, end_fm] = tau.map(|plane| frame.tau_fm[plane]);
+        if hold && tau[0] == 0 {
+            start_fm = 0.0;
+        }
+        let slab_fm = (end_fm - start_fm) / SLABS as f64;
         let slab = |slab: usize| {
-            let start_fm = tau_fm[0] + slab as f64 * slab_fm;
+            let slab_start_fm = start_fm + slab as f64 * slab_fm;
             // The plane before the slab reaches into it; the last hot plane bounds what comes after.
-            let from = data
+            let from = frame
                 .tau_fm
-                .partition_point(|tau| *tau <= start_fm)
+                .partition_point(|tau| *tau <= slab_start_fm)
                 .saturating_sub(1)
-                .min(last);
-            let x = later(from, 0, &data.x_fm).map(|plane| data.x_fm[plane]);
-            let y = later(from, 1, &data.y_fm).map(|plane| data.y_fm[plane]);
+                .min(last_hot);
+            let x = scan.from_plane_on(from, 0).map(|plane| frame.x_fm[plane]);
+            let y = scan.from_plane_on(from, 1).map(|plane| frame.y_fm[plane]);
             [x, y]
         };
-        let planes = [tau, later(0, 0, &data.x_fm), later(0, 1, &data.y_fm)];
         Some(HotRegion {
-            planes,
-            tau_fm,
+            tau_fm: [start_fm, end_fm],
             boxes: (0..SLABS).map(slab).collect(),
         })
+    }
+
+    /// Proper times between which the region lies, fm.
+    pub(super) fn tau_fm(&self) -> [f64; 2] {
+        self.tau_fm
     }
 
     /// First and last distance between which a ray may be inside the region. The boxes only shrink with tau, so a ray
@@ -117,25 +174,4 @@ impl Sides {
         );
         [one.min(other), one.max(other)]
     }
-}
-
-/// Between a hot plane and a cold one the medium reaches into the cell, so each side grows by one plane; and an axis
-/// needs two planes.
-fn widen([first, last]: [usize; 2], count: usize) -> [usize; 2] {
-    [first.saturating_sub(1), (last + 1).min(count - 1)]
-}
-
-fn hot_planes(data: &FieldData, end_temperature_gev: f64) -> Vec<HotPlane> {
-    let [planes, columns, rows, depth] = data.shape();
-    let mut hot = vec![COLD; planes];
-    for (place, temperature) in data.temperature_gev.iter().enumerate() {
-        if f64::from(*temperature) >= end_temperature_gev {
-            let point = place / depth;
-            let indices = [point / rows % columns, point % rows];
-            for (range, index) in hot[point / (columns * rows)].iter_mut().zip(indices) {
-                *range = [range[0].min(index), range[1].max(index)];
-            }
-        }
-    }
-    hot
 }

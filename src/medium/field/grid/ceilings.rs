@@ -1,0 +1,320 @@
+//! Rigorous bounds of temperature and flow over segments of a ray, from a coarse table of block maxima.
+//!
+//! **The box of a segment.** Along a light-like ray x and y are linear in the distance; tau never falls (its derivative
+//! is c = (t - nz z)/tau >= 0 in the forward light cone); eta is monotone, as d tanh eta/dl = (nz t - z)/t^2 and
+//! nz t - z is constant. So a segment lies in the box between its ends. And c >= sqrt(1 - nz^2) >= |nx|, |ny|: the box
+//! is nowhere longer than in tau.
+//!
+//! **One look-up a segment.** Equal blocks cover each axis of the kept grid. A block's entry bounds the values at all
+//! grid points of all cells that touch the block widened by half a `reach` on every side. Multilinear interpolation
+//! gives a mean of a cell's corners, so the entry bounds the field in the widened block. A segment whose box is no longer
+//! than the reach lies within half a reach of the box's centre, hence in the widened block of that centre. Beyond the
+//! grid's ends interpolation takes the end itself; moving centre and points to the nearest place on the grid brings
+//! none farther from the other. A segment that is longer in tau takes the entry that bounds all that is not before its
+//! start; a ray that crosses more of eta than the reach takes the entries that bound all eta.
+//!
+//! **The flow factor** p.u/E = u^tau c + (tau u^eta) s - nx u^x - ny u^y, s = (z - nz t)/tau. c never grows along a ray
+//! ([`milne_flow_factor`]), and s keeps its sign and falls in size, since z - nz t is constant and tau grows. Hence
+//! p.u/E <= max(u^tau) c_a + max(0, s_a u^eta) - min(nx u^x) - min(ny u^y), a the segment's start, and extremes over the
+//! entry. u^tau = sqrt(1 + u^2) is convex in the interpolated components, so its largest value at the corners bounds it.
+
+use std::ops::{Add, Range};
+
+use wide::f32x4;
+
+use super::axis::Axis;
+use super::values::Values;
+use crate::medium::field::{Ceiling, Ray, Stretch, milne_flow_factor, proper_time_fm};
+
+/// Most segments of a stretch.
+const MOST_SEGMENTS: f64 = 8.0;
+/// A segment's reach over a segment of the longest stretch: slack for rays along which tau does not grow evenly.
+const SLACK: f64 = 1.1;
+/// Blocks of tau, x, y in a reach.
+const BLOCKS_PER_REACH: f64 = 1.0;
+/// Blocks are no narrower than this part of the axis, whatever the reach.
+const MOST_BLOCKS: f64 = 64.0;
+/// Width in eta of a block and its reach.
+const ETA_REACH: f64 = 0.5;
+/// Interpolation in single precision may overshoot its corners by rounding.
+const ROUNDING: f32 = 1.0 + 4.0 * f32::EPSILON;
+/// Widening of blocks for the rounding of coordinates.
+const WIDENING: f64 = 1.0 + 1e-6;
+
+/// Extremes over the points of some cells. `most`: T, u^x, u^y, tau u^eta; `least`: -(u^tau)^2, then the same three.
+#[derive(Clone, Copy, Debug)]
+struct Extremes {
+    most: f32x4,
+    least: f32x4,
+}
+
+impl Extremes {
+    const NOTHING: Extremes = Extremes {
+        most: f32x4::new([f32::NEG_INFINITY; 4]),
+        least: f32x4::new([f32::INFINITY; 4]),
+    };
+
+    fn of_point(value: f32x4) -> Extremes {
+        let [_, ux, uy, ueta] = value.to_array();
+        let square = 1.0 + ux * ux + uy * uy + ueta * ueta;
+        Extremes {
+            most: value,
+            least: f32x4::new([-square, ux, uy, ueta]),
+        }
+    }
+}
+
+impl Add for Extremes {
+    type Output = Extremes;
+
+    /// Extremes over both.
+    fn add(self, other: Extremes) -> Extremes {
+        Extremes {
+            most: self.most.fast_max(other.most),
+            least: self.least.fast_min(other.least),
+        }
+    }
+}
+
+/// Bounds ready for use: `[T, u^tau, u^x least, most, u^y least, most, tau u^eta least, most]`.
+#[derive(Clone, Copy, Debug)]
+#[repr(align(32))]
+struct Entry([f32; 8]);
+
+impl From<Extremes> for Entry {
+    fn from(extremes: Extremes) -> Entry {
+        let [temperature, ux_most, uy_most, ueta_most] = extremes.most.to_array();
+        let [minus_square, ux_least, uy_least, ueta_least] = extremes.least.to_array();
+        // Rounding may take a component beyond its corners by some part of their size.
+        let slack = (ROUNDING - 1.0) * (-minus_square).sqrt();
+        Entry([
+            temperature * ROUNDING,
+            (-minus_square).sqrt() * ROUNDING,
+            ux_least - slack,
+            ux_most + slack,
+            uy_least - slack,
+            uy_most + slack,
+            ueta_least - slack,
+            ueta_most + slack,
+        ])
+    }
+}
+
+/// Equal blocks of one axis.
+#[derive(Clone, Copy, Debug)]
+struct Blocks {
+    first: f64,
+    per_unit: f64,
+    count: usize,
+}
+
+impl Blocks {
+    fn new(axis: &Axis, width: f64) -> Blocks {
+        let span = axis.last() - axis.first();
+        let count = (span / width).ceil().clamp(1.0, MOST_BLOCKS);
+        Blocks {
+            first: axis.first(),
+            per_unit: count / span,
+            count: count as usize,
+        }
+    }
+
+    /// The block of a coordinate; beyond an end, the last one.
+    #[inline(always)]
+    fn of(&self, coordinate: f64) -> usize {
+        let scaled = (coordinate - self.first) * self.per_unit;
+        // A float becomes an integer by saturation; NaN becomes 0.
+        (scaled as usize).min(self.count - 1)
+    }
+
+    /// For each block the grid points of all cells that touch it when it is widened by `margin`.
+    fn points(&self, axis: &Axis, margin: f64) -> Vec<Range<usize>> {
+        let edge = |block: usize| self.first + block as f64 / self.per_unit;
+        (0..self.count)
+            .map(|block| axis.around(edge(block) - margin, edge(block + 1) + margin))
+            .collect()
+    }
+}
+
+/// The coarse table.
+#[derive(Clone, Debug)]
+pub(super) struct CeilingTable {
+    tau: Blocks,
+    x: Blocks,
+    y: Blocks,
+    eta: Option<Blocks>,
+    reach_fm: f64,
+    longest_tau_fm: f64,
+    /// Index `[layer][tau][x][y]`, layers being the blocks of eta and then one for all eta.
+    entries: Vec<Entry>,
+    /// Bounds of all that is not before a block of tau, index `[layer][tau]`.
+    later: Vec<Entry>,
+}
+
+impl CeilingTable {
+    /// The table of a kept grid with its axes tau, x, y and perhaps eta, for stretches between two proper times.
+    pub(super) fn new(
+        values: &Values,
+        axes: &[Axis; 3],
+        eta: Option<&Axis>,
+        tau_fm: [f64; 2],
+    ) -> CeilingTable {
+        let longest_tau_fm = tau_fm[1] - tau_fm[0];
+        let reach_fm = SLACK * longest_tau_fm / MOST_SEGMENTS;
+        let width = reach_fm / BLOCKS_PER_REACH;
+        let [tau, x, y] = [0, 1, 2].map(|axis| Blocks::new(&axes[axis], width));
+        let eta_blocks = eta.map(|axis| Blocks::new(axis, ETA_REACH));
+        let mut table = CeilingTable {
+            tau,
+            x,
+            y,
+            eta: eta_blocks,
+            reach_fm,
+            longest_tau_fm,
+            entries: Vec::new(),
+            later: Vec::new(),
+        };
+        let margin = 0.5 * reach_fm * WIDENING;
+        let mut layers = Vec::new();
+        if let (Some(blocks), Some(axis)) = (eta_blocks, eta) {
+            layers = blocks.points(axis, 0.5 * ETA_REACH * WIDENING);
+        }
+        layers.push(0..eta.map_or(1, Axis::len));
+        let points = [
+            tau.points(&axes[0], margin),
+            x.points(&axes[1], margin),
+            y.points(&axes[2], margin),
+        ];
+        let lengths = [axes[1].len(), axes[2].len(), eta.map_or(1, Axis::len)];
+        for layer in layers {
+            let blocks = match values {
+                Values::Resting(values) => blocks(&points, lengths, &layer, |place| {
+                    Extremes::of_point(f32x4::new([values[place], 0.0, 0.0, 0.0]))
+                }),
+                Values::Moving(values) => blocks(&points, lengths, &layer, |place| {
+                    Extremes::of_point(values[place])
+                }),
+            };
+            table.push_layer(&blocks);
+        }
+        table
+    }
+
+    fn push_layer(&mut self, blocks: &[Extremes]) {
+        self.entries
+            .extend(blocks.iter().map(|extremes| Entry::from(*extremes)));
+        let mut later = Vec::new();
+        let mut so_far = Extremes::NOTHING;
+        for plane in blocks.chunks(self.x.count * self.y.count).rev() {
+            so_far = plane.iter().fold(so_far, |sum, block| sum + *block);
+            later.push(Entry::from(so_far));
+        }
+        self.later.extend(later.into_iter().rev());
+    }
+
+    /// Bounds over equal segments of a stretch.
+    pub(super) fn ceilings(&self, ray: &Ray, stretch: &Stretch, ceilings: &mut Vec<Ceiling>) {
+        let (first, last) = (ray.at(stretch.first_fm), ray.at(stretch.last_fm));
+        let mut tau = proper_time_fm(first);
+        let grown = (proper_time_fm(last) - tau) / self.longest_tau_fm;
+        let count = (MOST_SEGMENTS * grown).ceil().clamp(1.0, MOST_SEGMENTS);
+        let step_fm = (stretch.last_fm - stretch.first_fm) / count;
+        let layer = self.layer(first, last);
+        let nz = ray.direction[2];
+        let [nx, ny] = [0, 1].map(|axis| ray.direction[axis] as f32);
+        let mut start = first;
+        ceilings.clear();
+        for segment in 0..count as usize {
+            let end = ray.at(stretch.first_fm + (segment + 1) as f64 * step_fm);
+            let end_tau = proper_time_fm(end);
+            let entry = if end_tau - tau <= self.reach_fm {
+                let i = self.tau.of(0.5 * (tau + end_tau));
+                let j = self.x.of(0.5 * (start[1] + end[1]));
+                let k = self.y.of(0.5 * (start[2] + end[2]));
+                self.entries[((layer * self.tau.count + i) * self.x.count + j) * self.y.count + k]
+            } else {
+                self.later[layer * self.tau.count + self.tau.of(tau)]
+            };
+            let [
+                temperature,
+                utau,
+                ux_least,
+                ux_most,
+                uy_least,
+                uy_most,
+                ueta_least,
+                ueta_most,
+            ] = entry.0;
+            let c = milne_flow_factor(start, nz, tau);
+            let transverse =
+                (-nx * ux_least).max(-nx * ux_most) + (-ny * uy_least).max(-ny * uy_most);
+            let s = ((start[3] - nz * start[0]) / tau.max(f64::MIN_POSITIVE)) as f32;
+            let twist = (s * ueta_least).max(s * ueta_most).max(0.0);
+            let rounding = f64::from(ROUNDING - 1.0) * (1.0 + c) * f64::from(utau);
+            ceilings.push(Ceiling {
+                temperature_gev: f64::from(temperature),
+                flow_factor: c * f64::from(utau) + f64::from(transverse + twist) + rounding,
+            });
+            (start, tau) = (end, end_tau);
+        }
+    }
+
+    /// The layer of a ray between two points: its block of eta, or all eta.
+    fn layer(&self, first: [f64; 4], last: [f64; 4]) -> usize {
+        let Some(blocks) = &self.eta else { return 0 };
+        let eta = |[t, _, _, z]: [f64; 4]| libm::atanh(z / t);
+        let (from, to) = (eta(first), eta(last));
+        // NaN (at the hard vertex) is not within the reach either.
+        if (to - from).abs() <= ETA_REACH {
+            blocks.of(0.5 * (from + to))
+        } else {
+            blocks.count
+        }
+    }
+}
+
+/// Extremes of all blocks, in C order over (tau, x, y): first along y, then x, then tau.
+fn blocks(
+    [tau, x, y]: &[Vec<Range<usize>>; 3],
+    [columns, rows, depth]: [usize; 3],
+    layer: &Range<usize>,
+    point: impl Fn(usize) -> Extremes,
+) -> Vec<Extremes> {
+    let planes = tau.iter().map(|range| range.end).max().unwrap_or(0);
+    let mut blocks = vec![Extremes::NOTHING; tau.len() * x.len() * y.len()];
+    let mut row = vec![Extremes::NOTHING; rows];
+    for plane in 0..planes {
+        let mut coarse = vec![Extremes::NOTHING; x.len() * y.len()];
+        for column in 0..columns {
+            for (k, extremes) in row.iter_mut().enumerate() {
+                let start = ((plane * columns + column) * rows + k) * depth;
+                *extremes = layer
+                    .clone()
+                    .map(|m| point(start + m))
+                    .fold(Extremes::NOTHING, Extremes::add);
+            }
+            let reduced = y.iter().map(|range| {
+                let points = row[range.clone()].iter();
+                points.fold(Extremes::NOTHING, |sum, point| sum + *point)
+            });
+            let reduced: Vec<Extremes> = reduced.collect();
+            for (target, range) in coarse.chunks_mut(y.len()).zip(x) {
+                if range.contains(&column) {
+                    merge(target, &reduced);
+                }
+            }
+        }
+        for (target, range) in blocks.chunks_mut(x.len() * y.len()).zip(tau) {
+            if range.contains(&plane) {
+                merge(target, &coarse);
+            }
+        }
+    }
+    blocks
+}
+
+fn merge(target: &mut [Extremes], more: &[Extremes]) {
+    for (extremes, other) in target.iter_mut().zip(more) {
+        *extremes = *extremes + *other;
+    }
+}

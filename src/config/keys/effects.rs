@@ -36,7 +36,10 @@ fn effect_keys(models: &[&'static Model]) -> Vec<Key> {
     let mut keys = vec![Key::required("kind", kind, "Which model.")];
     for (place, model) in models.iter().enumerate() {
         for key in model.keys {
-            if !models[..place].iter().any(|other| key_of(other, key.name).is_some()) {
+            if !models[..place]
+                .iter()
+                .any(|other| key_of(other, key.name).is_some())
+            {
                 keys.push(shared(key, models));
             }
         }
@@ -75,7 +78,8 @@ mod tests {
         for model in MODELS {
             for key in model.keys {
                 for other in MODELS.iter().filter_map(|other| key_of(other, key.name)) {
-                    let facts = |key: &Key| format!("{:?}", (key.form, key.unit, key.need, key.when));
+                    let facts =
+                        |key: &Key| format!("{:?}", (key.form, key.unit, key.need, key.when));
                     assert_eq!(facts(key), facts(other), "{} {}", model.kind, key.name);
                 }
             }

@@ -8,7 +8,7 @@ mod table;
 mod transport;
 
 pub use crate::parameters::{Choice, Form, Key, Length, Need, Range, Section, When};
-pub use field::{HOTTEST_GEV, LONGEST_FM};
+pub use field::HOTTEST_GEV;
 pub use origin::CUSTOM;
 pub use table::CONFIG;
 

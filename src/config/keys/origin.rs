@@ -4,13 +4,11 @@ use std::sync::LazyLock;
 
 use super::field::{LONGEST_FM, POSITION};
 use super::{Choice, Form, Key, Range, Section, When};
+use crate::medium::origin::field_weighted::LARGEST_POWER;
 use crate::medium::origin::nucleus::{DIFFUSENESS_FM, NAMED, RADIUS_FM};
 
 /// The nucleus that the config describes itself.
 pub const CUSTOM: &str = "custom";
-
-/// Powers beyond this leave but the hottest point of the field.
-const LARGEST_POWER: f64 = 100.0;
 
 const fn from_to([low, high]: [f64; 2]) -> Form {
     Form::Number(Range::from(low, high))
@@ -43,6 +41,20 @@ const LIST: &[When] = &[When {
     is: &["list"],
 }];
 
+const KINDS: &[Choice] = &[
+    Choice::built("fixed", "always at the same place"),
+    Choice::built("overlap", "as two smooth nuclei overlap"),
+    Choice::built(
+        "field-weighted",
+        "as a power of the first temperature of the field",
+    ),
+    Choice::built(
+        "collision-density",
+        "as the collision density in the field file; of several files each counts by its integral",
+    ),
+    Choice::built("list", "from a list of weighted places"),
+];
+
 /// The section, with the nuclei that have a name: made once, and kept.
 pub fn origin() -> &'static Section {
     static ORIGIN: LazyLock<Section> = LazyLock::new(|| Section {
@@ -54,23 +66,7 @@ pub fn origin() -> &'static Section {
 
 fn keys() -> Vec<Key> {
     vec![
-        Key::required(
-            "kind",
-            Form::Choice(&[
-                Choice::built("fixed", "always at the same place"),
-                Choice::built("overlap", "as two smooth nuclei overlap"),
-                Choice::built(
-                    "field-weighted",
-                    "as a power of the first temperature of the field",
-                ),
-                Choice::built(
-                    "collision-density",
-                    "as the collision density in the field file; of several files each counts by its integral",
-                ),
-                Choice::built("list", "from a list of weighted places"),
-            ]),
-            "Which distribution.",
-        ),
+        Key::required("kind", Form::Choice(KINDS), "Which distribution."),
         Key::default(
             "x_fm",
             POSITION,

@@ -101,6 +101,7 @@ impl EventFileWriter {
                 history: provenance.history,
                 compression: provenance.compression,
                 momentum_bits: provenance.momentum_bits,
+                medium_exit: false,
             },
             events: Progress::default(),
             partons: Progress::default(),

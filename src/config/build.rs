@@ -312,6 +312,7 @@ pub fn record(section: Checked) -> RecordSettings {
             .0
             .get("momentum_bits")
             .map(|_| section.small_count("momentum_bits")),
+        medium_exit: false,
     }
 }
 

@@ -4,6 +4,7 @@ use std::sync::Arc;
 
 use thiserror::Error;
 
+use super::exits::MediumExits;
 use super::generator::Generator;
 use super::origins::{BirthError, FieldView, births};
 use crate::config::{History, RunPlan};
@@ -46,10 +47,15 @@ pub struct Assembled {
 pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let mut warnings = Vec::new();
     let source = source::build(&plan.source);
+    let mut exits = plan.record.medium_exit.then(MediumExits::default);
     let (medium, origin) = match &plan.medium {
         None => (None, None),
         Some(settings) => {
             let Surroundings { field, origin } = surroundings(settings, &mut warnings)?;
+            if let Some(exits) = &mut exits {
+                exits.field = Some(Arc::clone(&field));
+                exits.end_temperature_gev = settings.field.end_temperature_gev;
+            }
             (Some(Medium::new(settings, field)), Some(origin))
         }
     };
@@ -65,6 +71,7 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
         shower,
         origin,
         full_history: plan.record.history == History::Full,
+        exits,
     };
     Ok(Assembled {
         generator,

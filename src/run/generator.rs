@@ -1,5 +1,6 @@
 //! Makes one event from its number: source, origin and shower put together.
 
+use super::exits::MediumExits;
 use super::{EventGenerator, EventTooLarge, RunCounters};
 use crate::event::{EventBlock, EventSummary};
 use crate::medium::origin::Origin;
@@ -24,6 +25,8 @@ pub struct Generator {
     pub origin: Option<Box<dyn Origin>>,
     /// Keep branched partons.
     pub full_history: bool,
+    /// The medium whose exits are recorded; `None` where they are not.
+    pub exits: Option<MediumExits>,
 }
 
 impl EventGenerator for Generator {
@@ -52,6 +55,13 @@ impl EventGenerator for Generator {
             .shower
             .shower(walker, &hard, key, origin_fm, &mut record)
             .map_err(|reason| EventTooLarge { id, reason })?;
+        if let Some(exits) = &self.exits {
+            exits.append(
+                walker.field.as_deref(),
+                &block.partons[first_row..],
+                &mut block.exits,
+            );
+        }
         block.events.push(EventSummary {
             id,
             source_weight: hard.weight,

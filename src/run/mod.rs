@@ -6,6 +6,7 @@
 pub mod assemble;
 mod block;
 mod clock;
+pub mod exits;
 mod final_partons;
 pub mod forecast;
 pub mod generator;
@@ -35,8 +36,8 @@ pub trait EventGenerator: Sync {
     /// A fresh worker.
     fn worker(&self) -> Self::Worker;
 
-    /// Appends the one event of number `id` to `out`: its summary and its rows. The event may depend on nothing but
-    /// the generator and `id`.
+    /// Appends the one event of number `id` to `out`: its summary, its rows, and their exits from the medium where the
+    /// run records them. The event may depend on nothing but the generator and `id`.
     ///
     /// # Errors
     /// [`EventTooLarge`] where the event would not end.

@@ -301,6 +301,7 @@ pub fn provenance(events: i64) -> Provenance {
         history: History::Final,
         compression: 1,
         momentum_bits: None,
+        medium_exit: false,
         effects: vec!["collinear-expansion".into()],
         fields: vec![FieldEntry {
             name: "fireball.h5".into(),

@@ -163,6 +163,7 @@ impl Setup {
             shower,
             origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
             full_history: self.full_history,
+            exits: None,
         }
     }
 

@@ -283,7 +283,7 @@ mod tests {
             near(found.fluid.temperature_gev, 0.25);
         }
         // The last plane of proper time is an edge as well.
-        let found = exit(&grid, &ray([0.5, 1.0, 0.0, 0.0], [0.1, 0.0, 1.0]), END_GEV).unwrap();
+        let found = exit(&grid, &ray([0.5, 1.0, 0.0, 0.0], [0.01, 0.0, 1.0]), END_GEV).unwrap();
         near(proper_time(found.point_fm), 20.0);
     }
 

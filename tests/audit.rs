@@ -14,7 +14,7 @@ use spindrift::event::{
 use spindrift::files::event_file::{
     AuditReport, EventFileWriter, Kinematics, Provenance, WriteOptions, audit,
 };
-use spindrift::run::{EventGenerator, EventTooLarge, Sink, run};
+use spindrift::run::{EventError, EventGenerator, Sink, run};
 
 const EVENTS: i64 = 300;
 const SPOILED: i64 = 217;
@@ -38,7 +38,7 @@ impl<F: Fn(&mut EventBlock, usize) + Sync> EventGenerator for Spoiler<F> {
         worker: &mut FakeCounters,
         id: i64,
         out: &mut EventBlock,
-    ) -> Result<(), EventTooLarge> {
+    ) -> Result<(), EventError> {
         let first_row = out.partons.len();
         self.inner.generate(worker, id, out)?;
         if id == SPOILED {

@@ -296,7 +296,7 @@ impl ChannelSummary {
             acceptance: ratio(counts.accepted as f64, counts.trials as f64),
             overshoots: counts.overshoots,
             share_cut_by_angle_limit: ratio(cut, cut + counts.accepted as f64)
-                .filter(|_| regime.is_some()),
+                .filter(|_| regime.is_some() && counts.trials > 0),
             share_outside_regime: ratio(counts.outside_regime as f64, counts.accepted as f64)
                 .filter(|_| regime.is_some()),
             regime,

@@ -6,6 +6,8 @@
 
 use rand::RngExt;
 
+use std::f64::consts::TAU;
+
 use super::accept::judge;
 use super::counters::{CUT_UNIT, ShowerCounters};
 use super::proposal::Trial;
@@ -13,7 +15,7 @@ use super::proposal::induced::{Emitter, InducedEnvelope};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
 use super::tree::Tools;
 use crate::medium::Medium;
-use crate::medium::effects::{Journey, Passage, RateBound, Splitting};
+use crate::medium::effects::{Emission, EmissionLimits, Journey, Passage, RateBound, Splitting};
 use crate::medium::field::Ray;
 use crate::medium::trace::{Outcome, Trace};
 use crate::qcd::Species;
@@ -78,6 +80,9 @@ pub struct Leg {
     /// The pending vacuum trial became a branching: the next one is due should the evolution resume.
     vacuum_due: bool,
     induced: Vec<Channel>,
+    /// Trials that effects drew beforehand, by their place among the effects on rates, from the highest t down.
+    lists: Vec<Vec<InducedTrial>>,
+    emissions: Vec<Emission>,
     in_medium: bool,
     energy_gev: f64,
     order: AngularOrder,
@@ -90,6 +95,8 @@ enum Envelope {
     Induced(InducedEnvelope),
     /// So many times the vacuum's.
     Vacuum { height: Height, times: f64 },
+    /// The effect drew all trials beforehand: the next place in the leg's list.
+    List { next: usize },
 }
 
 struct Channel {
@@ -106,6 +113,7 @@ struct Channel {
 struct InducedTrial {
     trial: Trial,
     place_fm: f64,
+    emits_first: bool,
 }
 
 /// What ordering in angle asks of a parton's vacuum emissions.
@@ -149,6 +157,8 @@ impl Leg {
             pending: None,
             vacuum_due: false,
             induced: Vec::new(),
+            lists: Vec::new(),
+            emissions: Vec::new(),
             in_medium: false,
             energy_gev: 0.0,
             order: AngularOrder::NONE,
@@ -217,7 +227,10 @@ impl Leg {
         }
         for rate in 0..medium.rates().len() {
             if let Some(envelope) = self.envelope(tools, medium, rate, entrance) {
-                let stream = entrance.key.stream(tools.evolution.effect_purposes[rate]);
+                let mut stream = entrance.key.stream(tools.evolution.effect_purposes[rate]);
+                if let Envelope::List { .. } = envelope {
+                    self.list_trials(tools, medium, rate, entrance, &mut stream);
+                }
                 self.induced.push(Channel {
                     rate,
                     stream,
@@ -241,6 +254,7 @@ impl Leg {
         let bound = effect.bound(&self.passage(tools, medium));
         match bound {
             RateBound::Nothing => None,
+            RateBound::Emissions => Some(Envelope::List { next: 0 }),
             RateBound::TimesVacuum(times) if times <= 0.0 => None,
             RateBound::TimesVacuum(times) => Some(Envelope::Vacuum {
                 height: evolution.stairs[self.species.is_gluon() as usize]
@@ -266,6 +280,80 @@ impl Leg {
         }
     }
 
+    /// Lets an effect draw all its trials, and puts those inside the exact range in order.
+    fn list_trials(
+        &mut self,
+        tools: Tools,
+        medium: &Medium,
+        rate: usize,
+        entrance: &Entrance,
+        stream: &mut Stream,
+    ) {
+        let evolution = tools.evolution;
+        let range = &evolution.rate.range;
+        let largest_alpha_s = evolution.rate.largest_alpha_s();
+        let smallest = range.smallest(entrance.largest_t_gev2);
+        let limits = EmissionLimits {
+            fractions: [smallest, 1.0 - smallest],
+            least_kappa2_gev2: range.smallest_kappa2_gev2(),
+            largest_t_gev2: entrance.largest_t_gev2,
+            limit_to_small_angles: medium.limits_angles(),
+            largest_rate: largest_alpha_s / TAU * evolution.envelope_factor,
+        };
+        let effect = &medium.rates()[rate].effect;
+        let mut emissions = std::mem::take(&mut self.emissions);
+        emissions.clear();
+        effect.propose_emissions(
+            &self.passage(tools, medium),
+            &limits,
+            stream,
+            &mut emissions,
+        );
+        self.lists.resize_with(medium.rates().len(), Vec::new);
+        let mut list = std::mem::take(&mut self.lists[rate]);
+        list.clear();
+        let is_gluon = self.species.is_gluon();
+        for emission in &emissions {
+            let emits_first = is_gluon && stream.random::<bool>();
+            let Emission {
+                fraction,
+                kappa2_gev2,
+                density,
+            } = *emission;
+            let z = if emits_first {
+                fraction
+            } else {
+                1.0 - fraction
+            };
+            let t = kappa2_gev2 / (fraction * (1.0 - fraction));
+            let uniform = stream.random();
+            if t < entrance.largest_t_gev2 && t > range.end_t_gev2 && range.allows(z, kappa2_gev2) {
+                // Each of the two gluons is the emitted one in half of the trials.
+                let images = if is_gluon { 2.0 } else { 1.0 };
+                let envelope = largest_alpha_s * evolution.envelope_factor * density / fraction;
+                let trial = Trial {
+                    t,
+                    z,
+                    splitting: if is_gluon {
+                        Kind::GluonToGluons
+                    } else {
+                        Kind::QuarkToQuarkGluon
+                    },
+                    uniform,
+                    inverse_envelope: images / envelope,
+                };
+                list.push(InducedTrial {
+                    trial,
+                    place_fm: 0.0,
+                    emits_first,
+                });
+            }
+        }
+        list.sort_unstable_by(|one, other| other.trial.t.total_cmp(&one.trial.t));
+        self.lists[rate] = list;
+        self.emissions = emissions;
+    }
+
     /// The next trial of an induced channel below `t_gev2`.
     fn propose(
         &mut self,
@@ -280,6 +368,13 @@ impl Leg {
         let channel = &mut self.induced[place];
         let stairs = &tools.evolution.stairs[self.species.is_gluon() as usize];
         let trial = match &mut channel.envelope {
+            Envelope::List { next } => {
+                let pending = self.lists[channel.rate].get(*next).copied();
+                *next += 1;
+                *trials += 1;
+                channel.pending = pending;
+                return;
+            }
             Envelope::Induced(envelope) => envelope.propose(t_gev2, &mut channel.stream, trials),
             Envelope::Vacuum { height, times } => {
                 stairs.propose_times(*times, height, &mut channel.stream, trials)
@@ -291,7 +386,11 @@ impl Leg {
             let place_fm =
                 effect.propose_place_fm(&self.passage(tools, medium), trial.t, &mut stream);
             self.induced[place].stream = stream;
-            InducedTrial { trial, place_fm }
+            InducedTrial {
+                trial,
+                place_fm,
+                emits_first: false,
+            }
         });
     }
 
@@ -432,23 +531,37 @@ impl Leg {
         place: usize,
         tally: &mut Tally,
     ) -> Option<Branching> {
-        let InducedTrial { trial, place_fm } = self.induced[place]
+        let InducedTrial {
+            trial,
+            place_fm,
+            emits_first,
+        } = self.induced[place]
             .pending
             .take()
             .expect("the leader has a pending trial");
         let rate = &medium.rates()[self.induced[place].rate];
         let number = rate.place + 1;
-        let splitting = splitting_of(&trial, place_fm);
+        let splitting = Splitting {
+            emits_first,
+            ..splitting_of(&trial, place_fm)
+        };
         // The envelope of an induced channel keeps to small angles by itself; the vacuum's does not.
         let acts = trial.splitting != Kind::GluonToQuarks || rate.effect.makes_quark_pairs();
         let passage = self.passage(tools, medium);
-        let change = if acts && medium.allows_angle(trial.t, trial.z, self.energy_gev) {
+        let change = if acts {
             rate.effect.relative_change(&passage, &splitting).max(0.0)
         } else {
             0.0
         };
         let evolution = tools.evolution;
         let mut ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        if !medium.allows_angle(trial.t, trial.z, self.energy_gev) {
+            // What would have been accepted without the limit; other envelopes keep to small angles by themselves.
+            if let Envelope::Vacuum { .. } = self.induced[place].envelope {
+                tally.counters.channels[number].cut_units += (ratio.min(1.0) / CUT_UNIT) as u64;
+            }
+            ratio = 0.0;
+        }
         // What is rejected even at the bound of the transport coefficient need not be looked up.
         if !self.trace.is_exact() && (trial.uniform < ratio || ratio > 1.0) {
             ratio *= passage.share_of_bound(place_fm);
@@ -476,7 +589,7 @@ impl Leg {
     fn density_over_envelope(&self, evolution: &Evolution, place: usize, trial: &Trial) -> f64 {
         let ratio = evolution.rate.density(trial) * trial.inverse_envelope;
         match self.induced[place].envelope {
-            Envelope::Induced(_) => ratio,
+            Envelope::Induced(_) | Envelope::List { .. } => ratio,
             Envelope::Vacuum { times, .. } => ratio / times,
         }
     }
@@ -586,6 +699,7 @@ impl Leg {
             t_gev2: branching.t,
             z: branching.z,
             place_fm: branching.place_fm,
+            emits_first: false,
         };
         rate.effect.vertex_fm(
             &self.passage(tools, medium),
@@ -612,6 +726,7 @@ fn splitting_of(trial: &Trial, place_fm: f64) -> Splitting {
         t_gev2: trial.t,
         z: trial.z,
         place_fm,
+        emits_first: false,
     }
 }
 

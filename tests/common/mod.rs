@@ -13,7 +13,7 @@ use spindrift::event::{
     Status,
 };
 use spindrift::files::event_file::{FieldEntry, Kinematics, Provenance};
-use spindrift::run::{EventGenerator, EventTooLarge, RunCounters};
+use spindrift::run::{EventError, EventGenerator, RunCounters};
 
 pub const ENERGY_GEV: f64 = 100.0;
 
@@ -67,7 +67,7 @@ impl EventGenerator for FakeGenerator {
         worker: &mut FakeCounters,
         id: i64,
         out: &mut EventBlock,
-    ) -> Result<(), EventTooLarge> {
+    ) -> Result<(), EventError> {
         assert_ne!(self.panic_at, Some(id), "told to panic");
         let mut random = Pcg64::seed_from_u64(id.unsigned_abs());
         let branchings = random.random_range(0..=2 * self.mean_branchings);

@@ -12,6 +12,9 @@ pub const EVENT_CHUNK_ROWS: usize = 2048;
 /// Rows in a chunk of every parton column.
 pub const PARTON_CHUNK_ROWS: usize = 32_768;
 
+/// Most temperature fields of a file.
+pub const MOST_FIELDS: usize = 4096;
+
 /// Bits of a double's mantissa, the value of the `momentum_bits` attribute of a lossless file.
 pub(super) const FULL_MANTISSA_BITS: u8 = 52;
 

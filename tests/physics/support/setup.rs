@@ -164,6 +164,7 @@ impl Setup {
             origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
             fields: None,
             full_history: self.full_history,
+            exits: None,
         }
     }
 

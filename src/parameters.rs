@@ -27,6 +27,8 @@ pub struct Key {
     pub need: Need,
     /// The choices that use it: all must hold.
     pub when: &'static [When],
+    /// The other key of the section without which it is not used.
+    pub with: Option<&'static str>,
     /// False for a key that a later version will know.
     pub built: bool,
     /// What it means.
@@ -44,6 +46,8 @@ pub enum Need {
     Optional,
     /// No; absent means this JSON text.
     Default(&'static str),
+    /// Where it is used, either it or this other key must be there, and not both. The two name each other.
+    Either(&'static str),
 }
 
 /// A key is used when another key of the same section has one of some values.
@@ -72,6 +76,8 @@ pub enum Form {
     Direction,
     /// The path of a file.
     File,
+    /// Paths of files: a list, or a pattern that stands for all that match, sorted. At most so many.
+    Files(usize),
     /// The address of a JSON Schema, for editors; not looked at.
     SchemaAddress,
     /// A list of so many values of one form.
@@ -178,6 +184,7 @@ impl Key {
             unit: None,
             need,
             when: &[],
+            with: None,
             built: true,
             about,
             hint: None,
@@ -204,6 +211,16 @@ impl Key {
         Key::new(name, form, Need::Default(default), about)
     }
 
+    /// One of two keys, of which exactly one must be there.
+    pub const fn either(
+        name: &'static str,
+        form: Form,
+        other: &'static str,
+        about: &'static str,
+    ) -> Self {
+        Key::new(name, form, Need::Either(other), about)
+    }
+
     /// A key that a later version will know.
     pub const fn planned(name: &'static str, about: &'static str) -> Self {
         Key {
@@ -225,6 +242,14 @@ impl Key {
         Key { when, ..self }
     }
 
+    /// Used together with another key alone.
+    pub const fn with(self, other: &'static str) -> Self {
+        Key {
+            with: Some(other),
+            ..self
+        }
+    }
+
     /// With the likely mistake behind a value out of range.
     pub const fn hint(self, hint: &'static str) -> Self {
         Key {
@@ -237,7 +262,7 @@ impl Key {
     pub fn default_text(&self) -> Option<&'static str> {
         match self.need {
             Need::Default(text) => Some(text),
-            Need::Required | Need::Optional => None,
+            Need::Required | Need::Optional | Need::Either(_) => None,
         }
     }
 }
@@ -299,6 +324,10 @@ impl Form {
                 "\"transverse\" or a vector [x, y, z] of numbers that is not zero".to_owned()
             }
             Form::File => "the path of a file, relative to the folder of the config".to_owned(),
+            Form::Files(most) => format!(
+                "a list of 1 to {most} paths of files, or one pattern like \"fields/*.h5\" (sorted by name), relative to \
+                 the folder of the config"
+            ),
             Form::SchemaAddress => "a string".to_owned(),
             Form::List(of, length) => length.words(&of.words()),
             Form::EmptyList => "an empty list, [], in this version".to_owned(),

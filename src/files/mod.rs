@@ -7,3 +7,4 @@ mod global_heap;
 mod hdf5_calls;
 pub mod number_table;
 pub mod place_list;
+pub mod transport_table;

@@ -11,7 +11,7 @@ use crossbeam_channel::{Receiver, RecvTimeoutError, Sender, unbounded};
 
 use super::block::{block_count, block_ids, event_count, fill, settle};
 use super::{
-    EventGenerator, EventTooLarge, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
+    EventError, EventGenerator, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
     close, panic_message,
 };
 use crate::config::RecordSettings;
@@ -117,7 +117,7 @@ enum Task {
 enum Report {
     Made(u64, EventBlock, FinalPartons),
     Packed(PackedGroup),
-    TooLarge(EventTooLarge),
+    Failed(EventError),
     Panicked(String),
 }
 
@@ -224,7 +224,7 @@ fn work<G: EventGenerator>(
                     let mut block: EventBlock = take(&board.spare_blocks);
                     match fill(generator, &mut worker, block_ids(ids, index), &mut block) {
                         Ok(finals) => Report::Made(index, block, finals),
-                        Err(event) => Report::TooLarge(event),
+                        Err(error) => Report::Failed(error),
                     }
                 }
                 Task::Pack(group) => {
@@ -312,7 +312,7 @@ impl<C> Coordinator<'_, C> {
                 self.early_groups[slot].insert(group.index, group);
                 self.write_groups(slot)
             }
-            Ok(Report::TooLarge(event)) => Err(event.into()),
+            Ok(Report::Failed(error)) => Err(error.into()),
             Ok(Report::Panicked(message)) => Err(RunError::Defect(message)),
             Err(RecvTimeoutError::Timeout) => Ok(()),
             Err(RecvTimeoutError::Disconnected) => {

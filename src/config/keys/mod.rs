@@ -1,9 +1,15 @@
-//! The table of keys: [`table`] and [`medium`] hold the entries.
+//! The table of keys: [`table`], [`medium`] and what belongs to it hold the entries.
 
+mod effects;
+mod field;
 mod medium;
+mod origin;
 mod table;
+mod transport;
 
 pub use crate::parameters::{Choice, Form, Key, Length, Need, Range, Section, When};
+pub use field::HOTTEST_GEV;
+pub use origin::CUSTOM;
 pub use table::CONFIG;
 
 /// Every section with its path, and every key in it, from the root down.
@@ -73,7 +79,15 @@ mod tests {
             let name = join(path, key.name);
             let same = section.keys.iter().filter(|other| other.name == key.name);
             assert_eq!(same.count(), 1, "{name}");
-            let expected = [("_GeV2_per_fm", "GeV^2/fm"), ("_GeV", "GeV"), ("_fm", "fm")]
+            let endings = [
+                ("_GeV2_per_fm", "GeV^2/fm"),
+                ("_per_GeV2", "GeV^-2"),
+                ("_per_fm", "1/fm"),
+                ("_GeV", "GeV"),
+                ("_fm", "fm"),
+                ("_rad", "rad"),
+            ];
+            let expected = endings
                 .into_iter()
                 .find(|(ending, _)| key.name.ends_with(ending))
                 .map(|(_, unit)| unit);
@@ -98,9 +112,16 @@ mod tests {
                     );
                 }
             }
-            // The schema states the need of a conditional key under its one selector.
-            if key.need == Need::Required {
-                assert!(key.when.len() <= 1, "{path} {}", key.name);
+            let names = |name: &str| section.key(name).filter(|key| key.built);
+            if let Some(other) = key.with {
+                assert!(names(other).is_some(), "{path} {}", key.name);
+            }
+            // Two keys of which one must be there name each other, and the same choices use them.
+            if let Need::Either(other) = key.need {
+                let other = names(other).expect("the other key exists");
+                assert_eq!(other.need, Need::Either(key.name), "{path} {}", key.name);
+                let facts = |key: &Key| format!("{:?}", (key.when, key.with));
+                assert_eq!(facts(key), facts(other), "{path} {}", key.name);
             }
         });
     }

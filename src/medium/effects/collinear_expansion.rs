@@ -273,9 +273,9 @@ impl CollinearExpansion {
         let mut l = path.end_fm();
         for _ in 0..MOST_DRAWS {
             l = if short {
-                path.draw_by_qhat_l2(path.end_fm(), stream)
+                path.draw_by_qhat_l2(stream)
             } else {
-                path.draw_by_qhat(path.end_fm(), stream)
+                path.draw_by_qhat(stream)
             };
             let phi = k_per_fm * l;
             let envelope = if short { 0.25 * phi * phi } else { 1.0 };
@@ -319,9 +319,9 @@ impl RateEffect for CollinearExpansion {
         if self.soft_gradient() {
             0.0
         } else if self.is_short(passage, wave_number_per_fm(t_gev2, passage.energy_gev)) {
-            path.draw_by_qhat_l2(path.end_fm(), stream)
+            path.draw_by_qhat_l2(stream)
         } else {
-            path.draw_by_qhat(path.end_fm(), stream)
+            path.draw_by_qhat(stream)
         }
     }
 

@@ -179,14 +179,16 @@ impl Setup {
             source,
             shower,
             origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
+            fields: None,
             full_history: self.full_history,
+            exits: None,
         }
     }
 
     /// Calls `visit` with the first branching of the first hard parton and the weight, for `events` events.
     pub fn first_branchings(&self, events: u64, mut visit: impl FnMut(Option<Branching>, f64)) {
         let generator = self.generator();
-        let mut walker = generator.worker();
+        let mut walker = generator.worker().walker;
         for id in 0..events {
             let key = Key::event(self.seed, id);
             let hard = generator.source.draw(&mut key.stream(Purpose::SOURCE));
@@ -199,11 +201,11 @@ impl Setup {
     /// Calls `visit` with each event and its rows.
     pub fn events(&self, ids: Range<i64>, mut visit: impl FnMut(&EventSummary, &[Parton])) {
         let generator = self.generator();
-        let mut walker = generator.worker();
+        let mut worker = generator.worker();
         let mut block = EventBlock::default();
         for id in ids {
             block.clear();
-            generator.generate(&mut walker, id, &mut block).unwrap();
+            generator.generate(&mut worker, id, &mut block).unwrap();
             visit(&block.events[0], &block.partons);
         }
     }
@@ -228,9 +230,9 @@ fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
     }
 }
 
-fn birth(settings: &OriginSettings) -> Box<dyn Origin> {
+fn birth(settings: &OriginSettings) -> Arc<dyn Origin> {
     match settings {
-        OriginSettings::Fixed { x_fm, y_fm } => Box::new(Fixed {
+        OriginSettings::Fixed { x_fm, y_fm } => Arc::new(Fixed {
             x_fm: *x_fm,
             y_fm: *y_fm,
         }),

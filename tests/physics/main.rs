@@ -15,6 +15,7 @@ mod medium_sign;
 mod no_branching;
 mod origins;
 mod parton_numbers;
+mod path_effects;
 mod paths;
 mod rate_effects;
 mod support;

@@ -5,6 +5,7 @@ mod common;
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
+use std::sync::{Mutex, MutexGuard, PoisonError};
 
 use common::field_maker::FieldMaker;
 use serde_json::{Value, json};
@@ -18,8 +19,23 @@ const EVENTS: i64 = 450;
 const TAU_FM: [f64; 3] = [0.5, 3.0, 6.0];
 const PLACE_FM: [f64; 3] = [-8.0, 0.0, 8.0];
 
+/// Programs inherit the locks of HDF5 files that are open where they are started, so one test at a time.
+static ALONE: Mutex<()> = Mutex::new(());
+
 /// A folder with three fields, of which the one in the middle is the hottest.
-fn folder() -> tempfile::TempDir {
+struct Desk {
+    folder: tempfile::TempDir,
+    _alone: MutexGuard<'static, ()>,
+}
+
+impl Desk {
+    fn path(&self) -> &Path {
+        self.folder.path()
+    }
+}
+
+fn folder() -> Desk {
+    let alone = ALONE.lock().unwrap_or_else(PoisonError::into_inner);
     let folder = tempfile::tempdir().unwrap();
     for (place, temperature) in TEMPERATURES_GEV.iter().enumerate() {
         write_field(
@@ -28,7 +44,10 @@ fn folder() -> tempfile::TempDir {
             1.0 + place as f64,
         );
     }
-    folder
+    Desk {
+        folder,
+        _alone: alone,
+    }
 }
 
 fn name(place: usize) -> String {
@@ -97,8 +116,8 @@ fn events(path: &Path) -> Vec<(EventSummary, Vec<Parton>)> {
 /// Bit for bit, an event is the one that a run with its field alone makes; whatever the number of threads.
 #[test]
 fn each_event_is_that_of_its_own_field() {
-    let folder = folder();
-    let folder = folder.path();
+    let desk = folder();
+    let folder = desk.path();
     let one = made(folder, &several(), &["--out", "one.h5", "--threads", "1"]);
     let four = made(folder, &several(), &["--out", "four.h5", "--threads", "4"]);
     let (one, four) = (events(&one), events(&four));

@@ -39,7 +39,7 @@ fn read_checked(path: &Path) -> Result<PlaceList, Fault> {
     }
     let places = table.rows.iter().map(|[x, y, _]| [*x, *y]).collect();
     let weights: Vec<f64> = table.rows.iter().map(|[_, _, weight]| *weight).collect();
-    let empty = |error| TableProblem::Grid(format!("{error}; add a place with a weight above 0"));
+    let empty = |error| TableProblem::Grid(format!("{error}"));
     Ok(PlaceList::new(places, &weights).map_err(empty)?)
 }
 

@@ -91,13 +91,27 @@ impl Medium {
             self.sample_path(field, &stretch, energy_gev, trace)
         } else {
             self.bound_path(&stretch, energy_gev, trace);
-            field.local(ray, stretch.last_fm).temperature_gev
+            self.temperature_at_end(field, ray, &stretch, trace)
         };
         if trace.path.qhat_integral_gev2() <= 0.0 {
             return Outcome::Empty;
         }
         Outcome::Medium {
             left_hot: field.has_artificial_edge() && at_end_gev >= self.end_temperature_gev,
+        }
+    }
+
+    fn temperature_at_end(
+        &self,
+        field: &dyn TemperatureField,
+        ray: &Ray,
+        stretch: &Stretch,
+        trace: &Trace,
+    ) -> f64 {
+        match trace.ceilings.last() {
+            Some(last) if last.temperature_gev < self.end_temperature_gev => 0.0,
+            _ if !field.has_artificial_edge() => 0.0,
+            _ => field.local(ray, stretch.last_fm).temperature_gev,
         }
     }
 

@@ -135,6 +135,7 @@ impl RunCounters for ShowerCounters {
             named.push((name("accepted"), channel.accepted));
             named.push((name("overshoots"), channel.overshoots));
             named.push((name("cut_by_angle_limit"), channel.cut_by_angle_limit()));
+            named.push((name("outside_regime"), channel.outside_regime));
         }
         named
     }

@@ -6,6 +6,8 @@
 
 use rand::RngExt;
 
+use std::f64::consts::TAU;
+
 use super::accept::judge;
 use super::counters::{CUT_UNIT, ShowerCounters};
 use super::proposal::Trial;
@@ -13,7 +15,7 @@ use super::proposal::induced::{Emitter, InducedEnvelope};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
 use super::tree::Tools;
 use crate::medium::Medium;
-use crate::medium::effects::{Journey, Passage, RateBound, Splitting};
+use crate::medium::effects::{Emission, EmissionLimits, Journey, Passage, RateBound, Splitting};
 use crate::medium::field::Ray;
 use crate::medium::trace::{Outcome, Trace};
 use crate::qcd::Species;
@@ -75,7 +77,12 @@ pub struct Leg {
     vacuum: Stream,
     height: Option<Height>,
     pending: Option<Trial>,
+    /// The pending vacuum trial became a branching: the next one is due should the evolution resume.
+    vacuum_due: bool,
     induced: Vec<Channel>,
+    /// Trials that effects drew beforehand, by their place among the effects on rates, from the highest t down.
+    lists: Vec<Vec<InducedTrial>>,
+    emissions: Vec<Emission>,
     in_medium: bool,
     energy_gev: f64,
     order: AngularOrder,
@@ -88,6 +95,8 @@ enum Envelope {
     Induced(InducedEnvelope),
     /// So many times the vacuum's.
     Vacuum { height: Height, times: f64 },
+    /// The effect drew all trials beforehand: the next place in the leg's list.
+    List { next: usize },
 }
 
 struct Channel {
@@ -96,12 +105,15 @@ struct Channel {
     stream: Stream,
     envelope: Envelope,
     pending: Option<InducedTrial>,
+    /// The pending trial became a branching at this t: the next one is due should the evolution resume.
+    due_below_gev2: Option<f64>,
 }
 
 #[derive(Clone, Copy)]
 struct InducedTrial {
     trial: Trial,
     place_fm: f64,
+    emits_first: bool,
 }
 
 /// What ordering in angle asks of a parton's vacuum emissions.
@@ -143,7 +155,10 @@ impl Leg {
             vacuum: Key::event(0, 0).stream(Purpose::VACUUM),
             height: None,
             pending: None,
+            vacuum_due: false,
             induced: Vec::new(),
+            lists: Vec::new(),
+            emissions: Vec::new(),
             in_medium: false,
             energy_gev: 0.0,
             order: AngularOrder::NONE,
@@ -196,36 +211,33 @@ impl Leg {
         self.in_medium = true;
         self.energy_gev = entrance.energy_gev;
         if self.height.is_some() {
-            self.open_channels(tools, medium, entrance, tally);
-            self.pending = self.next_vacuum(tools.evolution, tally);
+            self.open_channels(tools, medium, entrance);
+            self.vacuum_due = true;
         } else {
             self.induced.clear();
             self.pending = None;
+            self.vacuum_due = false;
         }
     }
 
-    fn open_channels(
-        &mut self,
-        tools: Tools,
-        medium: &Medium,
-        entrance: &Entrance,
-        tally: &mut Tally,
-    ) {
+    fn open_channels(&mut self, tools: Tools, medium: &Medium, entrance: &Entrance) {
         self.induced.clear();
         if !tools.evolution.emits[self.species.is_gluon() as usize] {
             return;
         }
         for rate in 0..medium.rates().len() {
             if let Some(envelope) = self.envelope(tools, medium, rate, entrance) {
-                let stream = entrance.key.stream(tools.evolution.effect_purposes[rate]);
+                let mut stream = entrance.key.stream(tools.evolution.effect_purposes[rate]);
+                if let Envelope::List { .. } = envelope {
+                    self.list_trials(tools, medium, rate, entrance, &mut stream);
+                }
                 self.induced.push(Channel {
                     rate,
                     stream,
                     envelope,
                     pending: None,
+                    due_below_gev2: Some(entrance.largest_t_gev2),
                 });
-                let place = self.induced.len() - 1;
-                self.propose(tools, medium, place, entrance.largest_t_gev2, tally);
             }
         }
     }
@@ -242,6 +254,7 @@ impl Leg {
         let bound = effect.bound(&self.passage(tools, medium));
         match bound {
             RateBound::Nothing => None,
+            RateBound::Emissions => Some(Envelope::List { next: 0 }),
             RateBound::TimesVacuum(times) if times <= 0.0 => None,
             RateBound::TimesVacuum(times) => Some(Envelope::Vacuum {
                 height: evolution.stairs[self.species.is_gluon() as usize]
@@ -267,6 +280,80 @@ impl Leg {
         }
     }
 
+    /// Lets an effect draw all its trials, and puts those inside the exact range in order.
+    fn list_trials(
+        &mut self,
+        tools: Tools,
+        medium: &Medium,
+        rate: usize,
+        entrance: &Entrance,
+        stream: &mut Stream,
+    ) {
+        let evolution = tools.evolution;
+        let range = &evolution.rate.range;
+        let largest_alpha_s = evolution.rate.largest_alpha_s();
+        let smallest = range.smallest(entrance.largest_t_gev2);
+        let limits = EmissionLimits {
+            fractions: [smallest, 1.0 - smallest],
+            least_kappa2_gev2: range.smallest_kappa2_gev2(),
+            largest_t_gev2: entrance.largest_t_gev2,
+            limit_to_small_angles: medium.limits_angles(),
+            largest_rate: largest_alpha_s / TAU * evolution.envelope_factor,
+        };
+        let effect = &medium.rates()[rate].effect;
+        let mut emissions = std::mem::take(&mut self.emissions);
+        emissions.clear();
+        effect.propose_emissions(
+            &self.passage(tools, medium),
+            &limits,
+            stream,
+            &mut emissions,
+        );
+        self.lists.resize_with(medium.rates().len(), Vec::new);
+        let mut list = std::mem::take(&mut self.lists[rate]);
+        list.clear();
+        let is_gluon = self.species.is_gluon();
+        for emission in &emissions {
+            let emits_first = is_gluon && stream.random::<bool>();
+            let Emission {
+                fraction,
+                kappa2_gev2,
+                density,
+            } = *emission;
+            let z = if emits_first {
+                fraction
+            } else {
+                1.0 - fraction
+            };
+            let t = kappa2_gev2 / (fraction * (1.0 - fraction));
+            let uniform = stream.random();
+            if t < entrance.largest_t_gev2 && t > range.end_t_gev2 && range.allows(z, kappa2_gev2) {
+                // Each of the two gluons is the emitted one in half of the trials.
+                let images = if is_gluon { 2.0 } else { 1.0 };
+                let envelope = largest_alpha_s * evolution.envelope_factor * density / fraction;
+                let trial = Trial {
+                    t,
+                    z,
+                    splitting: if is_gluon {
+                        Kind::GluonToGluons
+                    } else {
+                        Kind::QuarkToQuarkGluon
+                    },
+                    uniform,
+                    inverse_envelope: images / envelope,
+                };
+                list.push(InducedTrial {
+                    trial,
+                    place_fm: 0.0,
+                    emits_first,
+                });
+            }
+        }
+        list.sort_unstable_by(|one, other| other.trial.t.total_cmp(&one.trial.t));
+        self.lists[rate] = list;
+        self.emissions = emissions;
+    }
+
     /// The next trial of an induced channel below `t_gev2`.
     fn propose(
         &mut self,
@@ -281,6 +368,13 @@ impl Leg {
         let channel = &mut self.induced[place];
         let stairs = &tools.evolution.stairs[self.species.is_gluon() as usize];
         let trial = match &mut channel.envelope {
+            Envelope::List { next } => {
+                let pending = self.lists[channel.rate].get(*next).copied();
+                *next += 1;
+                *trials += 1;
+                channel.pending = pending;
+                return;
+            }
             Envelope::Induced(envelope) => envelope.propose(t_gev2, &mut channel.stream, trials),
             Envelope::Vacuum { height, times } => {
                 stairs.propose_times(*times, height, &mut channel.stream, trials)
@@ -292,7 +386,11 @@ impl Leg {
             let place_fm =
                 effect.propose_place_fm(&self.passage(tools, medium), trial.t, &mut stream);
             self.induced[place].stream = stream;
-            InducedTrial { trial, place_fm }
+            InducedTrial {
+                trial,
+                place_fm,
+                emits_first: false,
+            }
         });
     }
 
@@ -325,6 +423,7 @@ impl Leg {
         medium: &Medium,
         tally: &mut Tally,
     ) -> Option<Branching> {
+        self.propose_due(tools, medium, tally);
         loop {
             let vacuum_t = self.pending.map_or(0.0, |trial| trial.t);
             let (leader, t) = self.leader(vacuum_t);
@@ -338,6 +437,18 @@ impl Leg {
             };
             if branching.is_some() {
                 return branching;
+            }
+        }
+    }
+
+    /// Makes the trials that the last branching left open.
+    fn propose_due(&mut self, tools: Tools, medium: &Medium, tally: &mut Tally) {
+        if std::mem::take(&mut self.vacuum_due) {
+            self.pending = self.next_vacuum(tools.evolution, tally);
+        }
+        for place in 0..self.induced.len() {
+            if let Some(t_gev2) = self.induced[place].due_below_gev2.take() {
+                self.propose(tools, medium, place, t_gev2, tally);
             }
         }
     }
@@ -370,8 +481,10 @@ impl Leg {
             verdict(ratio, &trial, VACUUM, tally).then(|| self.vacuum_branching(evolution, &trial));
         if branching.is_some() {
             self.count_regime(tools, medium, None, &splitting_of(&trial, 0.0), tally);
+            self.vacuum_due = true;
+        } else {
+            self.pending = self.next_vacuum(evolution, tally);
         }
-        self.pending = self.next_vacuum(evolution, tally);
         branching
     }
 
@@ -418,24 +531,41 @@ impl Leg {
         place: usize,
         tally: &mut Tally,
     ) -> Option<Branching> {
-        let InducedTrial { trial, place_fm } = self.induced[place]
+        let InducedTrial {
+            trial,
+            place_fm,
+            emits_first,
+        } = self.induced[place]
             .pending
             .take()
             .expect("the leader has a pending trial");
         let rate = &medium.rates()[self.induced[place].rate];
         let number = rate.place + 1;
-        let splitting = splitting_of(&trial, place_fm);
+        let splitting = Splitting {
+            emits_first,
+            ..splitting_of(&trial, place_fm)
+        };
         // The envelope of an induced channel keeps to small angles by itself; the vacuum's does not.
         let acts = trial.splitting != Kind::GluonToQuarks || rate.effect.makes_quark_pairs();
-        let change = if acts && medium.allows_angle(trial.t, trial.z, self.energy_gev) {
-            rate.effect
-                .relative_change(&self.passage(tools, medium), &splitting)
-                .max(0.0)
+        let passage = self.passage(tools, medium);
+        let change = if acts {
+            rate.effect.relative_change(&passage, &splitting).max(0.0)
         } else {
             0.0
         };
         let evolution = tools.evolution;
-        let ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        let mut ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        if !medium.allows_angle(trial.t, trial.z, self.energy_gev) {
+            // What would have been accepted without the limit; other envelopes keep to small angles by themselves.
+            if let Envelope::Vacuum { .. } = self.induced[place].envelope {
+                tally.counters.channels[number].cut_units += (ratio.min(1.0) / CUT_UNIT) as u64;
+            }
+            ratio = 0.0;
+        }
+        // What is rejected even at the bound of the transport coefficient need not be looked up.
+        if !self.trace.is_exact() && (trial.uniform < ratio || ratio > 1.0) {
+            ratio *= passage.share_of_bound(place_fm);
+        }
         let accepted = verdict(ratio, &trial, number, tally);
         if accepted {
             self.count_cut(medium, place, trial.t, tally);
@@ -448,14 +578,18 @@ impl Leg {
             channel: number,
             place_fm,
         });
-        self.propose(tools, medium, place, trial.t, tally);
+        if accepted {
+            self.induced[place].due_below_gev2 = Some(trial.t);
+        } else {
+            self.propose(tools, medium, place, trial.t, tally);
+        }
         branching
     }
 
     fn density_over_envelope(&self, evolution: &Evolution, place: usize, trial: &Trial) -> f64 {
         let ratio = evolution.rate.density(trial) * trial.inverse_envelope;
         match self.induced[place].envelope {
-            Envelope::Induced(_) => ratio,
+            Envelope::Induced(_) | Envelope::List { .. } => ratio,
             Envelope::Vacuum { times, .. } => ratio / times,
         }
     }
@@ -565,6 +699,7 @@ impl Leg {
             t_gev2: branching.t,
             z: branching.z,
             place_fm: branching.place_fm,
+            emits_first: false,
         };
         rate.effect.vertex_fm(
             &self.passage(tools, medium),
@@ -591,6 +726,7 @@ fn splitting_of(trial: &Trial, place_fm: f64) -> Splitting {
         t_gev2: trial.t,
         z: trial.z,
         place_fm,
+        emits_first: false,
     }
 }
 

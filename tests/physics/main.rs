@@ -6,13 +6,16 @@
 
 mod collinear;
 mod conservation;
+mod fields;
 mod first_branching;
 mod grids;
 mod medium;
 mod medium_limits;
 mod medium_sign;
 mod no_branching;
+mod origins;
 mod parton_numbers;
 mod paths;
 mod support;
+mod thermal;
 mod twins;

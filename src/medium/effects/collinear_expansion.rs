@@ -273,9 +273,9 @@ impl CollinearExpansion {
         let mut l = path.end_fm();
         for _ in 0..MOST_DRAWS {
             l = if short {
-                path.draw_by_qhat_l2(path.end_fm(), stream)
+                path.draw_by_qhat_l2(stream)
             } else {
-                path.draw_by_qhat(path.end_fm(), stream)
+                path.draw_by_qhat(stream)
             };
             let phi = k_per_fm * l;
             let envelope = if short { 0.25 * phi * phi } else { 1.0 };
@@ -319,9 +319,9 @@ impl RateEffect for CollinearExpansion {
         if self.soft_gradient() {
             0.0
         } else if self.is_short(passage, wave_number_per_fm(t_gev2, passage.energy_gev)) {
-            path.draw_by_qhat_l2(path.end_fm(), stream)
+            path.draw_by_qhat_l2(stream)
         } else {
-            path.draw_by_qhat(path.end_fm(), stream)
+            path.draw_by_qhat(stream)
         }
     }
 
@@ -331,6 +331,7 @@ impl RateEffect for CollinearExpansion {
             t_gev2,
             z,
             place_fm,
+            ..
         } = *splitting;
         let k_per_fm = wave_number_per_fm(t_gev2, passage.energy_gev);
         let path = &passage.trace.path;
@@ -338,13 +339,12 @@ impl RateEffect for CollinearExpansion {
             self.strength_gev2(path, k_per_fm)
         } else {
             let phi = k_per_fm * place_fm;
-            let integrand = if self.is_short(passage, k_per_fm) {
+            if self.is_short(passage, k_per_fm) {
                 let phase = self.phase_factor_over_square(phi);
                 k_per_fm * k_per_fm * path.second_moment_gev2_fm2() * phase
             } else {
                 path.qhat_integral_gev2() * self.phase_factor(phi)
-            };
-            integrand * passage.share_of_bound(place_fm)
+            }
         };
         strength / (z * (1.0 - z) * t_gev2)
     }
@@ -376,9 +376,14 @@ impl RateEffect for CollinearExpansion {
 
     /// More transverse momentum than its own comes from the medium within a formation time.
     fn is_outside_regime(&self, passage: &Passage, splitting: &Splitting) -> bool {
-        let Splitting { t_gev2, z, .. } = *splitting;
+        let Splitting {
+            t_gev2,
+            z,
+            place_fm,
+            ..
+        } = *splitting;
         let formation_fm = 1.0 / wave_number_per_fm(t_gev2, passage.energy_gev);
-        let path = &passage.trace.path;
-        path.integral_to(formation_fm) > z * (1.0 - z) * t_gev2
+        let qhat = passage.trace.path.qhat_gev2_per_fm(place_fm) * passage.share_of_bound(place_fm);
+        qhat * formation_fm > z * (1.0 - z) * t_gev2
     }
 }

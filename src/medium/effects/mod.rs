@@ -14,7 +14,7 @@ pub mod resolved_only;
 pub mod singular_enhancement;
 pub mod virtuality_diffusion;
 
-pub use bound::{PowerLaw, RateBound};
+pub use bound::{Emission, EmissionLimits, PowerLaw, RateBound};
 pub use model::{Effect, EffectSettings, Model, Physics};
 pub use path_effect::{Flight, Journey, PathEffect};
 pub use rate_effect::{Passage, RateEffect, Splitting};

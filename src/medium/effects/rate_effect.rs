@@ -5,7 +5,7 @@
 //!
 //! f_vacuum channel = f_vac (product of the factors + sum of min(R, 0)),   f_channel i = f_vac max(R_i, 0).
 
-use super::bound::RateBound;
+use super::bound::{Emission, EmissionLimits, RateBound};
 use crate::medium::trace::Trace;
 use crate::medium::{Medium, field::TemperatureField};
 use crate::qcd::Species;
@@ -50,6 +50,8 @@ pub struct Splitting {
     pub z: f64,
     /// Where along the path it was proposed (fm from birth), by [`RateEffect::propose_place_fm`]; 0 for vacuum trials.
     pub place_fm: f64,
+    /// The first daughter is the emitted gluon, not the second (for gluons, where both are).
+    pub emits_first: bool,
 }
 
 /// A change of the branching rates by the medium.
@@ -63,7 +65,9 @@ pub trait RateEffect: Send + Sync {
     /// R of a splitting of its own channel. Where the effect proposes places, the mean over places is D/f_vac.
     fn relative_change(&self, passage: &Passage, splitting: &Splitting) -> f64;
 
-    /// Whether it needs the whole path; else bounds of it will do, with single points looked up.
+    /// Whether it needs the whole path. Else bounds of it will do: [`RateEffect::relative_change`] then answers for the
+    /// bound, must be proportional to it at the splitting's place, and is multiplied by
+    /// [`Passage::share_of_bound`] there.
     fn needs_whole_path(&self) -> bool {
         true
     }
@@ -71,6 +75,18 @@ pub trait RateEffect: Send + Sync {
     /// A place along the path for a trial at t, fm from birth.
     fn propose_place_fm(&self, _passage: &Passage, _t_gev2: f64, _stream: &mut Stream) -> f64 {
         0.0
+    }
+
+    /// Draws all trials of a parton's evolution, in any order, where the bound is [`RateBound::Emissions`]: a Poisson
+    /// process in (ln omega, ln kappa^2) that covers at least the limits, with any of the two gluons of g -> g g as
+    /// the emitted one.
+    fn propose_emissions(
+        &self,
+        _passage: &Passage,
+        _limits: &EmissionLimits,
+        _stream: &mut Stream,
+        _emissions: &mut Vec<Emission>,
+    ) {
     }
 
     /// Where along the path an induced branching happens, fm from birth; `None` where its lifetime is that of a vacuum

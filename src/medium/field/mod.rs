@@ -137,7 +137,7 @@ impl Fluid {
 pub struct Ceiling {
     /// No point of the segment is hotter, GeV.
     pub temperature_gev: f64,
-    /// p.u/E is nowhere larger.
+    /// p.u/E is nowhere larger where there is a medium.
     pub flow_factor: f64,
 }
 

@@ -38,8 +38,8 @@ impl PlaceList {
             }
         }
         let count = places_fm.len().min(weights.len());
-        let chooser = Chooser::new(&weights[..count])
-            .ok_or(OriginError::Empty("every weight of the list"))?;
+        let chooser =
+            Chooser::new(&weights[..count]).ok_or(OriginError::Empty("the weight of a place"))?;
         Ok(PlaceList { places_fm, chooser })
     }
 }

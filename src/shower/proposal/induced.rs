@@ -80,11 +80,7 @@ impl InducedEnvelope {
         bound: RateBound,
         envelope_factor: f64,
     ) -> Option<InducedEnvelope> {
-        let kappa2 = rate.range.smallest_kappa2_gev2();
-        let largest_alpha_s = rate
-            .coupling
-            .alpha_s(rate.coupling.scale_gev2(kappa2, rate.range.end_t_gev2));
-        let factor = largest_alpha_s / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
+        let factor = rate.largest_alpha_s() / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
         let strength = Broken::strength(bound)?;
         let width = Broken::inverse_smallest(&rate.range, &emitter);
         let over_z = if emitter.is_gluon {
@@ -193,7 +189,7 @@ impl Broken {
         let (first, second, least) = match bound {
             RateBound::LeastOf(first, second) => (first, second, true),
             RateBound::GreatestOf(first, second) => (first, second, false),
-            RateBound::Nothing | RateBound::TimesVacuum(_) => return None,
+            RateBound::Nothing | RateBound::TimesVacuum(_) | RateBound::Emissions => return None,
         };
         let positive = [first.coefficient > 0.0, second.coefficient > 0.0];
         if !(positive[0] && positive[1] || !least && (positive[0] || positive[1])) {

@@ -88,6 +88,14 @@ pub struct VacuumRate {
 }
 
 impl VacuumRate {
+    /// alpha_s at the smallest scale that a branching can have, its largest value.
+    #[inline]
+    pub fn largest_alpha_s(&self) -> f64 {
+        let kappa2 = self.range.smallest_kappa2_gev2();
+        let scale = self.coupling.scale_gev2(kappa2, self.range.end_t_gev2);
+        self.coupling.alpha_s(scale)
+    }
+
     /// The vacuum density of a trial over 2 pi: alpha_s times the kernel.
     #[inline]
     pub fn density(&self, trial: &Trial) -> f64 {

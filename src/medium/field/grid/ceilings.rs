@@ -27,17 +27,18 @@ use super::values::Values;
 use crate::medium::field::{Ceiling, Ray, Stretch, milne_flow_factor, proper_time_fm};
 
 /// Most segments of a stretch.
-const MOST_SEGMENTS: f64 = 8.0;
-/// A segment's reach over a segment of the longest stretch: slack for rays along which tau does not grow evenly.
+const MOST_SEGMENTS: usize = 12;
+/// A segment's reach over a segment of the longest stretch: slack for rays along which tau does not grow evenly, and for
+/// the segments of a stretch that are a whole number.
 const SLACK: f64 = 1.1;
 /// Blocks of tau, x, y in a reach.
-const BLOCKS_PER_REACH: f64 = 1.0;
+const BLOCKS_PER_REACH: f64 = 2.0;
 /// Blocks are no narrower than this part of the axis, whatever the reach.
 const MOST_BLOCKS: f64 = 64.0;
 /// Width in eta of a block and its reach.
 const ETA_REACH: f64 = 0.5;
 /// Interpolation in single precision may overshoot its corners by rounding.
-const ROUNDING: f32 = 1.0 + 4.0 * f32::EPSILON;
+const ROUNDING: f32 = 8.0 * f32::EPSILON;
 /// Widening of blocks for the rounding of coordinates.
 const WIDENING: f64 = 1.0 + 1e-6;
 
@@ -85,11 +86,12 @@ impl From<Extremes> for Entry {
     fn from(extremes: Extremes) -> Entry {
         let [temperature, ux_most, uy_most, ueta_most] = extremes.most.to_array();
         let [minus_square, ux_least, uy_least, ueta_least] = extremes.least.to_array();
+        let utau = (-minus_square).sqrt();
         // Rounding may take a component beyond its corners by some part of their size.
-        let slack = (ROUNDING - 1.0) * (-minus_square).sqrt();
+        let slack = ROUNDING * utau;
         Entry([
-            temperature * ROUNDING,
-            (-minus_square).sqrt() * ROUNDING,
+            temperature * (1.0 + ROUNDING),
+            utau * (1.0 + ROUNDING),
             ux_least - slack,
             ux_most + slack,
             uy_least - slack,
@@ -123,8 +125,9 @@ impl Blocks {
     #[inline(always)]
     fn of(&self, coordinate: f64) -> usize {
         let scaled = (coordinate - self.first) * self.per_unit;
-        // A float becomes an integer by saturation; NaN becomes 0.
-        (scaled as usize).min(self.count - 1)
+        let last = (self.count - 1) as f64;
+        // SAFETY: max and min leave a number from 0 to the last block, also of NaN.
+        unsafe { scaled.max(0.0).min(last).to_int_unchecked::<i64>() as usize }
     }
 
     /// For each block the grid points of all cells that touch it when it is widened by `margin`.
@@ -139,12 +142,11 @@ impl Blocks {
 /// The coarse table.
 #[derive(Clone, Debug)]
 pub(super) struct CeilingTable {
-    tau: Blocks,
-    x: Blocks,
-    y: Blocks,
+    /// Blocks of tau, x and y.
+    blocks: [Blocks; 3],
     eta: Option<Blocks>,
     reach_fm: f64,
-    longest_tau_fm: f64,
+    segments_per_fm: f64,
     /// Index `[layer][tau][x][y]`, layers being the blocks of eta and then one for all eta.
     entries: Vec<Entry>,
     /// Bounds of all that is not before a block of tau, index `[layer][tau]`.
@@ -159,18 +161,16 @@ impl CeilingTable {
         eta: Option<&Axis>,
         tau_fm: [f64; 2],
     ) -> CeilingTable {
-        let longest_tau_fm = tau_fm[1] - tau_fm[0];
-        let reach_fm = SLACK * longest_tau_fm / MOST_SEGMENTS;
+        let longest_fm = tau_fm[1] - tau_fm[0];
+        let reach_fm = SLACK * longest_fm / MOST_SEGMENTS as f64;
         let width = reach_fm / BLOCKS_PER_REACH;
-        let [tau, x, y] = [0, 1, 2].map(|axis| Blocks::new(&axes[axis], width));
+        let blocks = [0, 1, 2].map(|axis| Blocks::new(&axes[axis], width));
         let eta_blocks = eta.map(|axis| Blocks::new(axis, ETA_REACH));
         let mut table = CeilingTable {
-            tau,
-            x,
-            y,
+            blocks,
             eta: eta_blocks,
             reach_fm,
-            longest_tau_fm,
+            segments_per_fm: MOST_SEGMENTS as f64 / longest_fm,
             entries: Vec::new(),
             later: Vec::new(),
         };
@@ -180,22 +180,18 @@ impl CeilingTable {
             layers = blocks.points(axis, 0.5 * ETA_REACH * WIDENING);
         }
         layers.push(0..eta.map_or(1, Axis::len));
-        let points = [
-            tau.points(&axes[0], margin),
-            x.points(&axes[1], margin),
-            y.points(&axes[2], margin),
-        ];
+        let points = [0, 1, 2].map(|axis| blocks[axis].points(&axes[axis], margin));
         let lengths = [axes[1].len(), axes[2].len(), eta.map_or(1, Axis::len)];
         for layer in layers {
-            let blocks = match values {
-                Values::Resting(values) => blocks(&points, lengths, &layer, |place| {
+            let extremes = match values {
+                Values::Resting(values) => block_extremes(&points, lengths, &layer, |place| {
                     Extremes::of_point(f32x4::new([values[place], 0.0, 0.0, 0.0]))
                 }),
-                Values::Moving(values) => blocks(&points, lengths, &layer, |place| {
+                Values::Moving(values) => block_extremes(&points, lengths, &layer, |place| {
                     Extremes::of_point(values[place])
                 }),
             };
-            table.push_layer(&blocks);
+            table.push_layer(&extremes);
         }
         table
     }
@@ -203,9 +199,10 @@ impl CeilingTable {
     fn push_layer(&mut self, blocks: &[Extremes]) {
         self.entries
             .extend(blocks.iter().map(|extremes| Entry::from(*extremes)));
+        let plane = self.blocks[1].count * self.blocks[2].count;
         let mut later = Vec::new();
         let mut so_far = Extremes::NOTHING;
-        for plane in blocks.chunks(self.x.count * self.y.count).rev() {
+        for plane in blocks.chunks(plane).rev() {
             so_far = plane.iter().fold(so_far, |sum, block| sum + *block);
             later.push(Entry::from(so_far));
         }
@@ -215,48 +212,41 @@ impl CeilingTable {
     /// Bounds over equal segments of a stretch.
     pub(super) fn ceilings(&self, ray: &Ray, stretch: &Stretch, ceilings: &mut Vec<Ceiling>) {
         let (first, last) = (ray.at(stretch.first_fm), ray.at(stretch.last_fm));
-        let mut tau = proper_time_fm(first);
-        let grown = (proper_time_fm(last) - tau) / self.longest_tau_fm;
-        let count = (MOST_SEGMENTS * grown).ceil().clamp(1.0, MOST_SEGMENTS);
+        let first_tau = proper_time_fm(first);
+        let wanted = (proper_time_fm(last) - first_tau) * self.segments_per_fm;
+        let count = wanted.ceil().clamp(1.0, MOST_SEGMENTS as f64);
         let step_fm = (stretch.last_fm - stretch.first_fm) / count;
         let layer = self.layer(first, last);
-        let nz = ray.direction[2];
-        let [nx, ny] = [0, 1].map(|axis| ray.direction[axis] as f32);
-        let mut start = first;
-        ceilings.clear();
-        for segment in 0..count as usize {
-            let end = ray.at(stretch.first_fm + (segment + 1) as f64 * step_fm);
-            let end_tau = proper_time_fm(end);
-            let entry = if end_tau - tau <= self.reach_fm {
-                let i = self.tau.of(0.5 * (tau + end_tau));
-                let j = self.x.of(0.5 * (start[1] + end[1]));
-                let k = self.y.of(0.5 * (start[2] + end[2]));
-                self.entries[((layer * self.tau.count + i) * self.x.count + j) * self.y.count + k]
-            } else {
-                self.later[layer * self.tau.count + self.tau.of(tau)]
-            };
-            let [
-                temperature,
-                utau,
-                ux_least,
-                ux_most,
-                uy_least,
-                uy_most,
-                ueta_least,
-                ueta_most,
-            ] = entry.0;
-            let c = milne_flow_factor(start, nz, tau);
-            let transverse =
-                (-nx * ux_least).max(-nx * ux_most) + (-ny * uy_least).max(-ny * uy_most);
-            let s = ((start[3] - nz * start[0]) / tau.max(f64::MIN_POSITIVE)) as f32;
-            let twist = (s * ueta_least).max(s * ueta_most).max(0.0);
-            let rounding = f64::from(ROUNDING - 1.0) * (1.0 + c) * f64::from(utau);
-            ceilings.push(Ceiling {
-                temperature_gev: f64::from(temperature),
-                flow_factor: c * f64::from(utau) + f64::from(transverse + twist) + rounding,
-            });
-            (start, tau) = (end, end_tau);
+        let mut points = [first; MOST_SEGMENTS + 1];
+        let mut taus = [first_tau; MOST_SEGMENTS + 1];
+        let count = count as usize;
+        for segment in 1..=count {
+            points[segment] = ray.at(stretch.first_fm + segment as f64 * step_fm);
+            taus[segment] = proper_time_fm(points[segment]);
         }
+        ceilings.clear();
+        ceilings.extend((0..count).map(|segment| {
+            let ends = [segment, segment + 1];
+            let entry = self.entry(
+                layer,
+                ends.map(|end| points[end]),
+                ends.map(|end| taus[end]),
+            );
+            bound(entry, ray, points[segment], taus[segment])
+        }));
+    }
+
+    /// The entry that bounds a segment between two points with their proper times.
+    #[inline(always)]
+    fn entry(&self, layer: usize, [from, to]: [[f64; 4]; 2], [tau, end_tau]: [f64; 2]) -> &Entry {
+        let [taus, xs, ys] = &self.blocks;
+        if end_tau - tau > self.reach_fm {
+            return &self.later[layer * taus.count + taus.of(tau)];
+        }
+        let i = taus.of(0.5 * (tau + end_tau));
+        let j = xs.of(0.5 * (from[1] + to[1]));
+        let k = ys.of(0.5 * (from[2] + to[2]));
+        &self.entries[((layer * taus.count + i) * xs.count + j) * ys.count + k]
     }
 
     /// The layer of a ray between two points: its block of eta, or all eta.
@@ -273,8 +263,45 @@ impl CeilingTable {
     }
 }
 
+/// The ceiling of a segment that starts at a point with a proper time.
+#[inline(always)]
+fn bound(entry: &Entry, ray: &Ray, start: [f64; 4], tau: f64) -> Ceiling {
+    let [
+        temperature,
+        utau,
+        ux_least,
+        ux_most,
+        uy_least,
+        uy_most,
+        ueta_least,
+        ueta_most,
+    ] = entry.0;
+    let [nx, ny, nz] = ray.direction;
+    let c = milne_flow_factor(start, nz, tau) as f32;
+    let s = if tau > 0.0 {
+        ((start[3] - nz * start[0]) / tau) as f32
+    } else {
+        0.0
+    };
+    let (nx, ny) = (nx as f32, ny as f32);
+    let transverse =
+        largest(-nx * ux_least, -nx * ux_most) + largest(-ny * uy_least, -ny * uy_most);
+    let twist = largest(largest(s * ueta_least, s * ueta_most), 0.0);
+    let rounding = ROUNDING * (1.0 + c) * utau;
+    Ceiling {
+        temperature_gev: f64::from(temperature),
+        flow_factor: f64::from(c * utau + transverse + twist + rounding),
+    }
+}
+
+/// The larger of two numbers, neither of them NaN.
+#[inline(always)]
+fn largest(one: f32, other: f32) -> f32 {
+    if one > other { one } else { other }
+}
+
 /// Extremes of all blocks, in C order over (tau, x, y): first along y, then x, then tau.
-fn blocks(
+fn block_extremes(
     [tau, x, y]: &[Vec<Range<usize>>; 3],
     [columns, rows, depth]: [usize; 3],
     layer: &Range<usize>,

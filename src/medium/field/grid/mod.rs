@@ -184,7 +184,9 @@ impl Hot {
     ) -> Option<V> {
         // The limit of tanh eta along a ray from the hard vertex.
         let eta = || libm::atanh(if t > 0.0 { z / t } else { ray.direction[2] });
-        Some(self.place(tau, [x, y], eta)?.value(values))
+        let place = self.place(tau, [x, y], eta)?;
+        // SAFETY: an axis locates a coordinate in a cell, whose next point is on the axis; `values` has all points.
+        Some(unsafe { place.value(values) })
     }
 
     #[inline(always)]
@@ -230,8 +232,10 @@ impl Hot {
             return Fluid::EMPTY;
         };
         let [temperature, ux, uy, ueta] = match &self.values {
-            Values::Resting(values) => [place.value(values), 0.0, 0.0, 0.0],
-            Values::Moving(values) => place.value(values).to_array(),
+            // SAFETY: as in `value`.
+            Values::Resting(values) => [unsafe { place.value(values) }, 0.0, 0.0, 0.0],
+            // SAFETY: as in `value`.
+            Values::Moving(values) => unsafe { place.value(values) }.to_array(),
         }
         .map(f64::from);
         Fluid::from_milne(temperature, [ux, uy, ueta], point_fm)
@@ -257,12 +261,13 @@ fn moving(value: Option<f32x4>, ray: &Ray, point: [f64; 4], tau: f64) -> Local {
     let ([t, _, _, z], [nx, ny, nz]) = (point, ray.direction);
     let utau = f64::from((1.0 + ux * ux + uy * uy + ueta * ueta).sqrt());
     // Milne to lab: u^t = u^tau cosh eta + (tau u^eta) sinh eta and u^z likewise, with cosh eta = t/tau.
-    let longitudinal = if tau > 0.0 {
-        (utau * (t - nz * z) + f64::from(ueta) * (z - nz * t)) / tau
+    let across = if tau > 0.0 {
+        (z - nz * t) / tau
     } else {
-        // The limit along a ray from the hard vertex, where t = z = 0.
-        utau * (1.0 - nz * nz).sqrt()
+        // Along a ray from the hard vertex, where t = z = 0.
+        0.0
     };
+    let longitudinal = utau * milne_flow_factor(point, nz, tau) + f64::from(ueta) * across;
     let flow_factor = longitudinal - nx * f64::from(ux) - ny * f64::from(uy);
     Local {
         temperature_gev: f64::from(temperature),

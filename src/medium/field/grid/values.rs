@@ -1,6 +1,6 @@
 //! The numbers of a grid, the four of a moving fluid side by side, and their interpolation.
 
-use std::ops::{Add, Mul, Sub};
+use std::ops::{Add, Mul};
 
 use wide::f32x4;
 
@@ -14,10 +14,7 @@ pub(super) enum Values {
 }
 
 /// What can be interpolated: a number or a few side by side.
-pub(super) trait Point:
-    Copy + Add<Output = Self> + Sub<Output = Self> + Mul<f32, Output = Self>
-{
-}
+pub(super) trait Point: Copy + Add<Output = Self> + Mul<f32, Output = Self> {}
 impl Point for f32 {}
 impl Point for f32x4 {}
 
@@ -35,31 +32,44 @@ pub(super) struct Place {
 }
 
 impl Place {
-    /// Multilinear interpolation.
+    /// Multilinear interpolation: the corners of the cell, each with its weight.
+    ///
+    /// # Safety
+    /// The corner with the highest indices, `corner` + all strides (and 1 with eta), must be one of `values`.
     #[inline(always)]
-    pub(super) fn value<V: Point>(&self, values: &[V]) -> V {
-        let low = trilinear(values, self.corner, self.strides, self.shares);
+    pub(super) unsafe fn value<V: Point>(&self, values: &[V]) -> V {
         match self.eta_share {
-            None => low,
+            None => {
+                // SAFETY: the caller's promise.
+                unsafe { self.corners(values, 0, 1.0) }
+            }
             Some(share) => {
-                let high = trilinear(values, self.corner + 1, self.strides, self.shares);
-                low + (high - low) * share
+                // SAFETY: the caller's promise.
+                unsafe { self.corners(values, 0, 1.0 - share) + self.corners(values, 1, share) }
             }
         }
     }
-}
 
-/// The eight corners of a cell from `corner` on, `strides` apart, mixed by the place in the cell.
-#[inline(always)]
-fn trilinear<V: Point>(values: &[V], corner: usize, strides: [usize; 3], [u, v, w]: [f32; 3]) -> V {
-    let edge = |point: usize| {
-        let (low, high) = (values[point], values[point + strides[2]]);
-        low + (high - low) * w
-    };
-    let face = |point: usize| {
-        let (low, high) = (edge(point), edge(point + strides[1]));
-        low + (high - low) * v
-    };
-    let (low, high) = (face(corner), face(corner + strides[0]));
-    low + (high - low) * u
+    /// The eight corners of a cell, one `step` further along eta, with a common weight.
+    ///
+    /// # Safety
+    /// As for [`Place::value`].
+    #[inline(always)]
+    unsafe fn corners<V: Point>(&self, values: &[V], step: usize, weight: f32) -> V {
+        let corner = self.corner + step;
+        let [along_tau, along_x, along_y] = self.strides;
+        debug_assert!(corner + along_tau + along_x + along_y < values.len());
+        // SAFETY: the highest corner is inside, so all are.
+        let at = |place: usize| unsafe { *values.get_unchecked(corner + place) };
+        let [u, v, w] = self.shares;
+        let (late, early) = (u * weight, weight - u * weight);
+        let (early_far, late_far) = (early * v, late * v);
+        let (early_near, late_near) = (early - early_far, late - late_far);
+        let row = |place: usize, weight: f32| {
+            let high = weight * w;
+            at(place) * (weight - high) + at(place + along_y) * high
+        };
+        (row(0, early_near) + row(along_x, early_far))
+            + (row(along_tau, late_near) + row(along_tau + along_x, late_far))
+    }
 }

@@ -15,7 +15,7 @@ import quadrature
 
 QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching", "thermal_transport")
 # Of these some cases are recomputed; each names them and offers cases(chosen).
-PARTLY = ("rate_effects", "radial_paths", "path_effects")
+PARTLY = ("rate_effects", "radial_paths", "path_effects", "expanding_scaling")
 SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower")
 # Numbers are stored to 12 digits, long columns to 8.
 RELATIVE_TOLERANCE, ABSOLUTE_TOLERANCE = 1e-7, 1e-9

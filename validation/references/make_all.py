@@ -13,8 +13,8 @@ import numpy as np
 
 import quadrature
 
-QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching")
-SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower")
+QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching", "thermal")
+SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower", "overlap")
 # Numbers are stored to 12 digits, long columns to 8.
 RELATIVE_TOLERANCE, ABSOLUTE_TOLERANCE = 1e-7, 1e-9
 # Twice what linear interpolation costs in a stored curve.

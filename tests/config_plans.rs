@@ -6,7 +6,8 @@ use std::path::{Path, PathBuf};
 use proptest::prelude::*;
 use serde_json::{Value, json};
 use spindrift::config::{History, Overrides, RunPlan, load_text, schema};
-use spindrift::medium::{ColourCharge, EffectSettings, FieldKind, PhaseSettings, TransportKind};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::{ColourCharge, FieldKind, TransportKind};
 use spindrift::qcd::{CouplingLaw, Loops, ScaleArgument, Species};
 use spindrift::shower::{FlavourOpening, Kernels, Lifetime, Ordering, ZRange};
 use spindrift::source::{Direction, SourceSettings};
@@ -92,8 +93,7 @@ fn defaults_of_the_medium() {
     assert!(medium.limit_to_small_angles && medium.transport.flow);
     assert_eq!(medium.min_energy_gev, 2.0);
     assert_eq!(medium.transport.stated_for, ColourCharge::Gluon);
-    let EffectSettings::CollinearExpansion { phase } = &medium.effects[0];
-    assert_eq!(*phase, PhaseSettings::Interference);
+    assert_eq!(medium.effects[0], PhaseSettings::Interference.into());
 }
 
 #[test]
@@ -171,8 +171,10 @@ fn every_value_reaches_the_plan() {
     );
     assert_eq!(medium.transport.stated_for, ColourCharge::Quark);
     assert!(!medium.transport.flow && !medium.limit_to_small_angles);
-    let EffectSettings::CollinearExpansion { phase } = &medium.effects[0];
-    assert_eq!(*phase, PhaseSettings::Rescattering { window: 0.9 });
+    assert_eq!(
+        medium.effects[0],
+        PhaseSettings::Rescattering { window: 0.9 }.into()
+    );
     assert_eq!(medium.min_energy_gev, 3.0);
     assert_eq!(plan.record.history, History::Full);
     assert_eq!(
@@ -260,10 +262,10 @@ fn the_digest_holds_the_content_of_the_field_file_not_its_name() {
     let one = plan("one.h5");
     assert_eq!(one.inputs.len(), 1);
     assert_eq!(one.inputs[0].path, folder.path().join("configs/../one.h5"));
-    let FieldKind::Grid { file } = &one.medium.as_ref().unwrap().field.kind else {
+    let FieldKind::Grid { files, .. } = &one.medium.as_ref().unwrap().field.kind else {
         panic!()
     };
-    assert_eq!(*file, one.inputs[0].path);
+    assert_eq!(files[..], [one.inputs[0].path.clone()]);
     assert_eq!(one.resolved["medium"]["field"]["file"], "../one.h5");
     assert_eq!(one.digest, plan("same.h5").digest);
     assert_ne!(one.digest, plan("other.h5").digest);

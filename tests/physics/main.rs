@@ -6,6 +6,7 @@
 
 mod collinear;
 mod conservation;
+mod fields;
 mod first_branching;
 mod grids;
 mod medium;
@@ -15,6 +16,7 @@ mod no_branching;
 mod origins;
 mod parton_numbers;
 mod paths;
+mod rate_effects;
 mod support;
 mod thermal;
 mod twins;

@@ -3,13 +3,14 @@
 //! Deterministic; tolerances are stated where they are used. Outside truth: longitudinal.json (quadrature in arbitrary
 //! precision) and closed forms. The linear cells converge with the fourth power of their size (Simpson's mean).
 
-use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
-use spindrift::medium::effects::{Passage, RateEffect};
-use spindrift::medium::field::{Brick, Local, Longitudinal, Ray, Stretch, TemperatureField};
+use std::sync::Arc;
+
+use spindrift::medium::effects::collinear_expansion::{CollinearExpansion, PhaseSettings};
+use spindrift::medium::field::{Brick, Fluid, Local, Longitudinal, Ray, Stretch, TemperatureField};
 use spindrift::medium::path::Path;
 use spindrift::medium::trace::{Outcome, Trace};
-use spindrift::medium::{Medium, MediumSettings, PhaseSettings, TransportKind};
-use spindrift::qcd::{HBAR_C_GEV_FM, Species};
+use spindrift::medium::{Medium, MediumSettings, TransportKind};
+use spindrift::qcd::HBAR_C_GEV_FM;
 
 use super::support::reference::{self, number};
 use super::support::setup::brick;
@@ -21,6 +22,8 @@ pub const COEFFICIENT: f64 = 4.0;
 
 pub fn settings(flow: bool) -> MediumSettings {
     let mut settings = brick(1.0, 1.0, PhaseSettings::Interference);
+    // Without effects the path is traced whole.
+    settings.effects.clear();
     settings.transport.kind = TransportKind::Cubic {
         coefficient: COEFFICIENT,
     };
@@ -32,11 +35,12 @@ pub fn settings(flow: bool) -> MediumSettings {
 /// The path of a ray, `None` without a medium on it.
 pub fn trace(
     settings: &MediumSettings,
-    field: Box<dyn TemperatureField>,
+    field: Arc<dyn TemperatureField>,
     ray: &Ray,
 ) -> Option<Path> {
     let mut trace = Trace::default();
-    match Medium::new(settings, field).trace(ray, &mut trace) {
+    let medium = Medium::new(settings, field);
+    match medium.trace(medium.field(), ray, 100.0, &mut trace) {
         Outcome::Empty => None,
         Outcome::Medium { .. } => Some(trace.path),
     }
@@ -68,19 +72,20 @@ impl<F: TemperatureField> TemperatureField for Refined<F> {
     fn local(&self, ray: &Ray, l_fm: f64) -> Local {
         self.field.local(ray, l_fm)
     }
+
+    fn fluid(&self, point_fm: [f64; 4]) -> Fluid {
+        self.field.fluid(point_fm)
+    }
+
+    fn first_tau_fm(&self) -> f64 {
+        self.field.first_tau_fm()
+    }
 }
 
 /// int qhat K(l/formation) dl of a path, GeV^2: the relative change times z(1-z) t.
 fn phase_integral(path: &Path, phase: PhaseSettings, formation_fm: f64) -> f64 {
-    let energy_gev = 100.0;
-    let t = 2.0 * energy_gev * HBAR_C_GEV_FM / formation_fm;
-    let passage = Passage {
-        species: Species::GLUON,
-        energy_gev,
-        path,
-    };
-    let effect = CollinearExpansion::new("collinear-expansion".into(), phase);
-    effect.relative_change(&passage, t, 0.5) * 0.25 * t
+    CollinearExpansion::new("collinear-expansion".into(), phase, false)
+        .strength_gev2(path, 1.0 / formation_fm)
 }
 
 /// Errors of one refinement over all cases of longitudinal.json, over I0: of the moments (relative), of the phases.
@@ -103,7 +108,7 @@ fn longitudinal_errors(factor: usize) -> [Vec<f64>; 2] {
             field: Longitudinal::new(START_TEMPERATURE_GEV, START_FM),
             factor,
         };
-        let path = trace(&settings(case["flow"] == true), Box::new(field), &ray);
+        let path = trace(&settings(case["flow"] == true), Arc::new(field), &ray);
         let total = number(&case, "I0_GeV2");
         let Some(path) = path else {
             assert_eq!(total, 0.0, "{case}");
@@ -182,7 +187,7 @@ fn the_end_temperature_ends_the_path() {
         let mut settings = settings(true);
         settings.field.end_temperature_gev = end;
         let field = Longitudinal::new(START_TEMPERATURE_GEV, START_FM);
-        let path = trace(&settings, Box::new(field), &along).expect("a medium");
+        let path = trace(&settings, Arc::new(field), &along).expect("a medium");
         let cooling = START_TEMPERATURE_GEV / end;
         let scale = COEFFICIENT * START_TEMPERATURE_GEV.powi(3) * START_FM / HBAR_C_GEV_FM;
         let expected = scale * 3.0 * cooling.ln();
@@ -197,7 +202,7 @@ fn the_end_temperature_ends_the_path() {
     let mut cold = settings(true);
     cold.field.end_temperature_gev = 0.46;
     let field = Longitudinal::new(START_TEMPERATURE_GEV, START_FM);
-    assert!(trace(&cold, Box::new(field), &along).is_none());
+    assert!(trace(&cold, Arc::new(field), &along).is_none());
 }
 
 /// A brick: I_k = qhat (L - t)^(k+1)/(k+1) for a birth at lab time t, whatever the direction; nothing after its end.
@@ -214,7 +219,7 @@ fn bricks() {
         (4.9, [0.0, 0.0, -1.0]),
     ] {
         let born = ray([t, 30.0, -7.0, 0.5 * t], direction);
-        let path = trace(&settings, Box::new(Brick::new(0.3, length)), &born).expect("a medium");
+        let path = trace(&settings, Arc::new(Brick::new(0.3, length)), &born).expect("a medium");
         let l: f64 = length - t;
         for (found, expected) in [
             (path.qhat_integral_gev2(), 0.7 * l),
@@ -229,5 +234,5 @@ fn bricks() {
         }
     }
     let late = ray([5.1, 0.0, 0.0, 0.0], [1.0, 0.0, 0.0]);
-    assert!(trace(&settings, Box::new(Brick::new(0.3, length)), &late).is_none());
+    assert!(trace(&settings, Arc::new(Brick::new(0.3, length)), &late).is_none());
 }

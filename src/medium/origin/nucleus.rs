@@ -3,9 +3,9 @@
 use super::OriginError;
 
 /// Radii that are taken for nuclei, fm.
-const RADIUS_FM: [f64; 2] = [0.0, 15.0];
+pub const RADIUS_FM: [f64; 2] = [0.0, 15.0];
 /// Diffusenesses that are taken for nuclei, fm.
-const DIFFUSENESS_FM: [f64; 2] = [0.05, 2.0];
+pub const DIFFUSENESS_FM: [f64; 2] = [0.05, 2.0];
 
 /// A spherical nucleus.
 #[derive(Clone, Copy, Debug, PartialEq)]

@@ -67,6 +67,11 @@ impl Cells {
 }
 
 impl Overlap {
+    /// The largest impact parameter at which two such nuclei meet, fm.
+    pub fn largest_impact_fm(nucleus: &Nucleus) -> f64 {
+        2.0 * (nucleus.radius_fm + REACH_DIFFUSENESSES * nucleus.diffuseness_fm)
+    }
+
     /// Two equal nuclei at an impact parameter in fm.
     ///
     /// # Errors
@@ -74,7 +79,7 @@ impl Overlap {
     pub fn new(nucleus: &Nucleus, impact_parameter_fm: f64) -> Result<Overlap, OriginError> {
         nucleus.check()?;
         let reach = |diffusenesses| nucleus.radius_fm + diffusenesses * nucleus.diffuseness_fm;
-        let most_fm = 2.0 * reach(REACH_DIFFUSENESSES);
+        let most_fm = Overlap::largest_impact_fm(nucleus);
         if !(0.0..=most_fm).contains(&impact_parameter_fm) {
             return Err(OriginError::ImpactParameter {
                 value_fm: impact_parameter_fm,

@@ -1,6 +1,7 @@
 //! The hot medium: a temperature field, a transport model, path integrals, and effects on branching rates.
 
 pub mod effects;
+pub mod exit;
 pub mod field;
 pub mod origin;
 pub mod path;

@@ -7,6 +7,7 @@ use std::time::SystemTime;
 
 use thiserror::Error;
 
+use super::exits::MediumExits;
 use super::fields::{FieldReadError, FieldSeries, Schedule};
 use super::generator::Generator;
 use super::origins::BirthError;
@@ -81,6 +82,10 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
         origin: places.origin,
         fields: places.fields,
         full_history: plan.record.history == History::Full,
+        exits: plan.record.medium_exit.then(|| MediumExits {
+            field: places.field,
+            end_temperature_gev: places.end_temperature_gev,
+        }),
     };
     Ok(Assembled {
         generator,
@@ -92,6 +97,9 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
 #[derive(Default)]
 struct Places {
     medium: Option<Medium>,
+    /// The field, where the medium has but one.
+    field: Option<Arc<dyn TemperatureField>>,
+    end_temperature_gev: f64,
     origin: Option<Arc<dyn Origin>>,
     fields: Option<FieldSeries>,
 }
@@ -125,7 +133,9 @@ fn one(
     let file = file.map(PathBuf::as_path);
     let Surroundings { field, origin } = surroundings(settings, file, warnings)?;
     Ok(Places {
-        medium: Some(Medium::new(settings, field)),
+        medium: Some(Medium::new(settings, Arc::clone(&field))),
+        field: Some(field),
+        end_temperature_gev: settings.field.end_temperature_gev,
         origin,
         fields: None,
     })
@@ -167,6 +177,8 @@ fn several(
     };
     Ok(Places {
         medium: Some(Medium::new(settings, nothing())),
+        field: None,
+        end_temperature_gev: settings.field.end_temperature_gev,
         origin,
         fields: Some(FieldSeries::new(schedule, weights, first_id, first, read)),
     })

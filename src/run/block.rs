@@ -85,6 +85,14 @@ pub(super) fn settle<C>(
             block.partons.len()
         )));
     }
+    if !block.exits.is_empty() && block.exits.len() != rows {
+        return Err(RunError::Defect(format!(
+            "events {}..{} have {rows} rows, but {} exits from the medium",
+            ids.start,
+            ids.end,
+            block.exits.len()
+        )));
+    }
     totals.events += block.events.len() as u64;
     totals.partons += rows as u64;
     totals.finals.merge(finals);

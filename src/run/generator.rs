@@ -2,6 +2,7 @@
 
 use std::sync::Arc;
 
+use super::exits::MediumExits;
 use super::fields::{Claim, FieldSeries, LostField};
 use super::{EventError, EventGenerator, EventTooLarge, RunCounters};
 use crate::event::{EventBlock, EventSummary};
@@ -29,6 +30,8 @@ pub struct Generator {
     pub fields: Option<FieldSeries>,
     /// Keep branched partons.
     pub full_history: bool,
+    /// The medium whose exits are recorded; `None` where they are not.
+    pub exits: Option<MediumExits>,
 }
 
 /// What one worker owns.
@@ -92,6 +95,13 @@ impl EventGenerator for Generator {
             .shower
             .shower(&mut worker.walker, &hard, key, origin_fm, &mut record)
             .map_err(|reason| EventTooLarge { id, reason })?;
+        if let Some(exits) = &self.exits {
+            exits.append(
+                worker.walker.field.as_deref(),
+                &block.partons[first_row..],
+                &mut block.exits,
+            );
+        }
         block.events.push(EventSummary {
             id,
             source_weight,

@@ -6,6 +6,7 @@
 pub mod assemble;
 mod block;
 mod clock;
+pub mod exits;
 pub mod fields;
 mod final_partons;
 pub mod forecast;
@@ -38,8 +39,8 @@ pub trait EventGenerator: Sync {
     /// A fresh worker.
     fn worker(&self) -> Self::Worker;
 
-    /// Appends the one event of number `id` to `out`: its summary and its rows. The event may depend on nothing but
-    /// the generator and `id`.
+    /// Appends the one event of number `id` to `out`: its summary, its rows, and their exits from the medium where the
+    /// run records them. The event may depend on nothing but the generator and `id`.
     ///
     /// # Errors
     /// [`EventError`] where the event would not end, or an input that it needs is lost.

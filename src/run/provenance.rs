@@ -58,6 +58,7 @@ pub fn describe(plan: &RunPlan, generator: &Generator) -> Provenance {
         history: plan.record.history,
         compression: plan.record.compression,
         momentum_bits: plan.record.momentum_bits,
+        medium_exit: plan.record.medium_exit,
         effects: medium.map_or(Vec::new(), |medium| effect_names(&medium.effects)),
         fields: medium.map_or(Vec::new(), |medium| {
             let weights = generator.fields.as_ref().map(FieldSeries::weights);

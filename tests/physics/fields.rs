@@ -3,6 +3,8 @@
 //!
 //! Deterministic; tolerances are rounding unless stated.
 
+use std::sync::Arc;
+
 use spindrift::files::field_file::read_field;
 use spindrift::medium::field::{
     Brick, Ceiling, FieldData, Fluid, Grid, Longitudinal, Placed, Radial, Ray, TemperatureField,
@@ -83,7 +85,7 @@ fn all_fields() -> Vec<(String, Box<dyn TemperatureField>)> {
         ("demo".into(), Box::new(demo_field())),
         (
             "turned demo".into(),
-            Box::new(Placed::new(Box::new(demo_field()), 0.8, [1.5, -0.7])),
+            Box::new(Placed::new(Arc::new(demo_field()), 0.8, [1.5, -0.7])),
         ),
     ];
     for hold in [false, true] {
@@ -249,11 +251,11 @@ fn fields_are_turned_and_shifted() {
     let (angle, shift) = (0.8_f64, [1.5, -0.7]);
     let (field, moved) = (
         demo_field(),
-        Placed::new(Box::new(demo_field()), angle, shift),
+        Placed::new(Arc::new(demo_field()), angle, shift),
     );
     // At a quarter turn, what was on the x axis is on the y axis, and flows along it.
     let quarter = Placed::new(
-        Box::new(demo_field()),
+        Arc::new(demo_field()),
         std::f64::consts::FRAC_PI_2,
         [0.0, 1.0],
     );

@@ -5,7 +5,9 @@ use std::path::Path;
 use hdf5::{File, H5Type};
 
 use super::error::EventFileError;
-use super::layout::{FORMAT_NAME, FORMAT_VERSION, FULL_MANTISSA_BITS, MOST_FIELDS};
+use super::layout::{
+    EXIT_COLUMNS, FORMAT_NAME, FORMAT_VERSION, FULL_MANTISSA_BITS, MOST_FIELDS, Table,
+};
 use super::provenance::{
     CrossSection, FieldEntry, Kinematics, Provenance, WeightSums, history_from_name,
 };
@@ -65,6 +67,7 @@ pub(super) fn read_provenance(
         history: reader.choice("history", history_from_name)?,
         compression: reader.within("compression", 0, LARGEST_COMPRESSION)? as u8,
         momentum_bits: (kept_bits < FULL_MANTISSA_BITS).then_some(kept_bits),
+        medium_exit: reader.has_exits()?,
         effects,
         fields,
         counters: state
@@ -162,6 +165,16 @@ impl AttributeReader<'_> {
             ));
         }
         Ok(names.split_off(FIXED_CHANNELS))
+    }
+
+    /// Whether the table of partons has columns of exits: any of them promises all.
+    fn has_exits(&self) -> Result<bool, EventFileError> {
+        let name = Table::Partons.group();
+        let group = self.file.group(name);
+        let group = group.map_err(|error| self.damaged(name, error.to_string()))?;
+        Ok(EXIT_COLUMNS
+            .iter()
+            .any(|column| group.link_exists(column.name)))
     }
 
     fn fields(&self) -> Result<Vec<FieldEntry>, EventFileError> {

@@ -17,6 +17,7 @@ mod no_branching;
 mod origins;
 mod parton_numbers;
 mod paths;
+mod rate_effects;
 mod support;
 mod thermal;
 mod twins;

@@ -22,68 +22,11 @@ use spindrift::medium::trace::{Outcome, Trace};
 use spindrift::medium::{FieldKind, Medium, MediumSettings, TransportKind};
 use spindrift::qcd::HBAR_C_GEV_FM;
 
-use super::support::reference::{self, Cumulative, logit, number};
-use super::support::setup::{Setup, brick};
-use super::support::statistics::{LARGEST_DISTANCE, SIGNIFICANCE, binomial_p_value, distance};
+use super::support::first_branching::Sample;
+use super::support::reference::{self, number};
+use super::support::setup::brick;
 
 const EVENTS: u64 = 400_000;
-const INTERPOLATION_ERROR: f64 = 1e-5;
-
-#[derive(Default)]
-struct Sample {
-    unbranched: u64,
-    induced: u64,
-    ln_t: Vec<f64>,
-    logit_z: [Vec<f64>; 2],
-}
-
-fn sample(setup: &Setup) -> Sample {
-    let mut sample = Sample::default();
-    setup.first_branchings(EVENTS, |branching, weight| {
-        assert_eq!(weight, 1.0, "the density lies between 0 and its envelope");
-        let Some(branching) = branching else {
-            sample.unbranched += 1;
-            return;
-        };
-        sample.induced += (branching.channel > 0) as u64;
-        sample.ln_t.push(branching.t.ln());
-        let pair = !branching.daughters[1].is_gluon();
-        sample.logit_z[pair as usize].push(logit(branching.z));
-    });
-    sample
-}
-
-/// How far each statistic lies over its limit; the first is the probability of no branching, the second the induced
-/// share, then t and z.
-fn verdicts(case: &Value, mut sample: Sample) -> Vec<f64> {
-    let tail = |count, p| binomial_p_value(count, EVENTS, p).ln() / SIGNIFICANCE.ln();
-    let unbranched = number(case, "no_branching_probability");
-    let mut found = vec![
-        tail(sample.unbranched, unbranched),
-        tail(sample.induced, number(case, "induced_first_branchings")),
-    ];
-    let mut follow = |draws: &mut Vec<f64>, table: Cumulative| {
-        let limit = LARGEST_DISTANCE + INTERPOLATION_ERROR * (draws.len() as f64).sqrt();
-        found.push(distance(draws, |x| table.at(x)) / limit);
-    };
-    let t = &case["t"];
-    let table = Cumulative::new(&t["ln_t"], &t["cumulative"], 1.0 - unbranched);
-    follow(&mut sample.ln_t, table);
-    let kinds: &[&str] = if case["parton"] == "gluon" {
-        &["g-gg", "g-qq"]
-    } else {
-        &["q-qg"]
-    };
-    for (kind, draws) in kinds.iter().zip(&mut sample.logit_z) {
-        let entry = &case["z"][*kind];
-        let total = number(entry, "total");
-        follow(
-            draws,
-            Cumulative::new(&entry["logit_z"], &entry["cumulative"], total),
-        );
-    }
-    found
-}
 
 fn check(phase: &str) {
     let cases = reference::cases("medium");
@@ -93,7 +36,7 @@ fn check(phase: &str) {
     let mut count = 0;
     for (place, case) in chosen.enumerate() {
         let setup = reference::setup(case).with_seed(500 + place as u64);
-        let found = verdicts(case, sample(&setup));
+        let found = Sample::of(&setup, EVENTS).over_limits(case);
         println!("{}: over limit {found:.2?}", reference::name(case));
         assert!(
             found.iter().all(|value| *value < 1.0),
@@ -133,7 +76,8 @@ fn biased_media_fail() {
     let worst = |case: &Value, change: &dyn Fn(&mut MediumSettings)| {
         let mut setup = reference::setup(case).with_seed(600);
         change(setup.medium.as_mut().expect("a medium"));
-        verdicts(case, sample(&setup))
+        Sample::of(&setup, EVENTS)
+            .over_limits(case)
             .into_iter()
             .fold(0.0, f64::max)
     };

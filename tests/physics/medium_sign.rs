@@ -29,7 +29,8 @@ use spindrift::shower::proposal::FractionRange;
 use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::tree::Tools;
 
-use super::support::reference::{self, Cumulative, logit, number};
+use super::support::first_branching::weighted_pulls;
+use super::support::reference::{self, number};
 use super::support::setup::{ALPHA_S, Setup, brick, fixed, shower_settings, up};
 use super::support::statistics::{LARGEST_PULL, Mean, pull_between};
 
@@ -37,105 +38,14 @@ const EVENTS: u64 = 600_000;
 const ENVELOPE_FACTOR: f64 = 4.0;
 /// 1 + R may be this negative.
 const LOWEST_DENSITY: f64 = -5.0;
-const POINTS: usize = 20;
-/// Two-sided 10^-6/20.
-const LARGEST_PULL_OF_POINTS: f64 = 5.4513;
-
-/// Means of w times an indicator: below each point of a table.
-struct Weighted {
-    table: Cumulative,
-    points: Vec<f64>,
-    means: Vec<Mean>,
-}
-
-impl Weighted {
-    fn new(table: Cumulative) -> Weighted {
-        let points = table.some_points(POINTS);
-        Weighted {
-            means: vec![Mean::default(); points.len()],
-            table,
-            points,
-        }
-    }
-
-    fn add(&mut self, x: f64, weight: f64) {
-        for (point, mean) in self.points.iter().zip(&mut self.means) {
-            mean.add(if x < *point { weight } else { 0.0 });
-        }
-    }
-
-    fn add_nothing(&mut self) {
-        self.means.iter_mut().for_each(|mean| mean.add_zeros(1));
-    }
-
-    fn largest_pull(&self) -> f64 {
-        let pulls = self.points.iter().zip(&self.means);
-        pulls
-            .map(|(point, mean)| mean.pull(self.table.at(*point)).abs())
-            .fold(0.0, f64::max)
-    }
-}
 
 /// Pulls of <w>, of the unbranched share, and the largest ones of t and of z of each kind; weights as `weigh` says.
 fn pulls(case: &serde_json::Value, seed: u64, weigh: impl Fn(f64) -> f64) -> Vec<f64> {
     let mut setup = reference::setup(case).with_seed(seed);
     setup.shower.envelope_factor = ENVELOPE_FACTOR;
-    let table = |entry: &serde_json::Value, x: &str| {
-        Weighted::new(Cumulative::new(&entry[x], &entry["cumulative"], 1.0))
-    };
-    let mut in_t = table(&case["t"], "ln_t");
-    let kinds: &[&str] = if case["parton"] == "gluon" {
-        &["g-gg", "g-qq"]
-    } else {
-        &["q-qg"]
-    };
-    let mut in_z: Vec<Weighted> = kinds
-        .iter()
-        .map(|kind| table(&case["z"][*kind], "logit_z"))
-        .collect();
-    let (mut all, mut unbranched) = (Mean::default(), Mean::default());
-    setup.first_branchings(EVENTS, |branching, weight| {
-        let weight = weigh(weight);
-        all.add(weight);
-        let Some(branching) = branching else {
-            unbranched.add(weight);
-            in_t.add_nothing();
-            in_z.iter_mut().for_each(Weighted::add_nothing);
-            return;
-        };
-        unbranched.add_zeros(1);
-        in_t.add(branching.t.ln(), weight);
-        let pair = !branching.daughters[1].is_gluon();
-        for (kind, weighted) in in_z.iter_mut().enumerate() {
-            if kind == pair as usize {
-                weighted.add(logit(branching.z), weight);
-            } else {
-                weighted.add_nothing();
-            }
-        }
-    });
-    println!(
-        "{}: <w> - 1 = {:+.1e} +- {:.1e}, <w^2> = {:.3}, effective {:.2} of the events",
-        reference::name(case),
-        all.value() - 1.0,
-        all.error(),
-        all.variance() + 1.0,
-        all.effective_size() / EVENTS as f64
-    );
-    let of_weight = if all.variance() > 0.0 {
-        all.pull(1.0)
-    } else {
-        0.0
-    };
-    let mut found = vec![
-        of_weight,
-        unbranched.pull(number(case, "no_branching_probability")),
-    ];
-    // Points share one limit; scaled to the limit of a single pull.
-    let scale = LARGEST_PULL / LARGEST_PULL_OF_POINTS;
-    found.push(in_t.largest_pull() * scale);
-    found.extend(in_z.iter().map(|weighted| weighted.largest_pull() * scale));
-    found
+    let found = weighted_pulls(case, &setup, EVENTS, weigh);
+    println!("{}: {}", reference::name(case), found.weights);
+    found.pulls
 }
 
 fn cases() -> Vec<serde_json::Value> {

@@ -168,7 +168,7 @@ fn medium(field: &str) -> Medium {
 }
 
 /// A path traced through a field.
-#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"])]
+#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"], sample_size = 5000)]
 fn trace(bencher: Bencher, field: &str) {
     let (medium, rays) = (medium(field), rays());
     let mut trace = Trace::default();
@@ -181,7 +181,7 @@ fn trace(bencher: Bencher, field: &str) {
 }
 
 /// The field at one point of a path.
-#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"])]
+#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"], sample_size = 5000)]
 fn field_at_a_point(bencher: Bencher, name: &str) {
     let (field, rays) = (field(name), rays());
     let mut next = rays.iter().cycle();
@@ -193,7 +193,7 @@ fn field_at_a_point(bencher: Bencher, name: &str) {
 }
 
 /// The stretch of a path inside the medium.
-#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"])]
+#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"], sample_size = 5000)]
 fn field_stretch(bencher: Bencher, name: &str) {
     let (field, rays) = (field(name), rays());
     let mut next = rays.iter().cycle();
@@ -201,7 +201,7 @@ fn field_stretch(bencher: Bencher, name: &str) {
 }
 
 /// Bounds over the segments of a path.
-#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"])]
+#[divan::bench(args = ["brick", "longitudinal", "radial", "grid"], sample_size = 5000)]
 fn field_ceilings(bencher: Bencher, name: &str) {
     let (field, rays) = (field(name), rays());
     let stretched: Vec<_> = rays

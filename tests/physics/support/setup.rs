@@ -6,12 +6,14 @@ use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::effects::{EffectSettings, model};
 use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
 use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
 };
+use spindrift::parameters::Setting;
 use spindrift::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
@@ -79,6 +81,21 @@ pub fn running(argument: ScaleArgument, loops: Loops) -> CouplingSettings {
 
 /// A brick with a constant qhat of the gluon and one phase factor.
 pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> MediumSettings {
+    brick_with(length_fm, qhat_gev2_per_fm, vec![phase.into()])
+}
+
+/// An effect of the registry, with some of its parameters and the defaults for the others.
+pub fn effect(kind: &str, given: &[(&'static str, Setting)]) -> EffectSettings {
+    let model = model(kind).unwrap_or_else(|| panic!("the registry has no {kind}"));
+    EffectSettings::new(model, given)
+}
+
+/// A brick with a constant qhat of the gluon and any effects.
+pub fn brick_with(
+    length_fm: f64,
+    qhat_gev2_per_fm: f64,
+    effects: Vec<EffectSettings>,
+) -> MediumSettings {
     MediumSettings {
         field: FieldSettings::new(
             FieldKind::Brick {
@@ -96,7 +113,7 @@ pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> Med
             stated_for: ColourCharge::Gluon,
             flow: true,
         },
-        effects: vec![phase.into()],
+        effects,
         limit_to_small_angles: true,
         min_energy_gev: 2.0,
     }

@@ -14,7 +14,7 @@
 //! start; a ray that crosses more of eta than the reach takes the entries that bound all eta.
 //!
 //! **The flow factor** p.u/E = u^tau c + (tau u^eta) s - nx u^x - ny u^y, s = (z - nz t)/tau. c never grows along a ray
-//! ([`milne_flow_factor`]), and s keeps its sign and falls in size, since z - nz t is constant and tau grows. Hence
+//! ([`milne_flow_factor`](crate::medium::field::milne_flow_factor)), and s keeps its sign and falls in size, since z - nz t is constant and tau grows. Hence
 //! p.u/E <= max(u^tau) c_a + max(0, s_a u^eta) - min(nx u^x) - min(ny u^y), a the segment's start, and extremes over the
 //! entry. u^tau = sqrt(1 + u^2) is convex in the interpolated components, so its largest value at the corners bounds it.
 
@@ -24,7 +24,7 @@ use wide::f32x4;
 
 use super::axis::Axis;
 use super::values::Values;
-use crate::medium::field::{Ceiling, Ray, Stretch, milne_flow_factor, proper_time_fm};
+use crate::medium::field::{Ceiling, Ray, Stretch};
 
 /// Most segments of a stretch.
 const MOST_SEGMENTS: usize = 12;
@@ -40,7 +40,12 @@ const ETA_REACH: f64 = 0.5;
 /// Interpolation in single precision may overshoot its corners by rounding.
 const ROUNDING: f32 = 8.0 * f32::EPSILON;
 /// Widening of blocks for the rounding of coordinates.
-const WIDENING: f64 = 1.0 + 1e-6;
+const WIDENING: f64 = 1.0 + 1e-3;
+/// Single precision misses a coordinate along a ray by less than this part of the distances that go into it: a few
+/// roundings, and as many of the ray's own numbers.
+const COORDINATE_ROUNDING: f64 = 16.0 * f32::EPSILON as f64;
+/// Ends of segments, filled up to whole vectors.
+const LANES: usize = 16;
 
 /// Extremes over the points of some cells. `most`: T, u^x, u^y, tau u^eta; `least`: -(u^tau)^2, then the same three.
 #[derive(Clone, Copy, Debug)]
@@ -108,6 +113,8 @@ struct Blocks {
     first: f64,
     per_unit: f64,
     count: usize,
+    /// The last block.
+    last: f32,
 }
 
 impl Blocks {
@@ -118,16 +125,16 @@ impl Blocks {
             first: axis.first(),
             per_unit: count / span,
             count: count as usize,
+            last: (count - 1.0) as f32,
         }
     }
 
     /// The block of a coordinate; beyond an end, the last one.
     #[inline(always)]
-    fn of(&self, coordinate: f64) -> usize {
-        let scaled = (coordinate - self.first) * self.per_unit;
-        let last = (self.count - 1) as f64;
-        // SAFETY: max and min leave a number from 0 to the last block, also of NaN.
-        unsafe { scaled.max(0.0).min(last).to_int_unchecked::<i64>() as usize }
+    fn of(&self, coordinate: f32) -> i32 {
+        let scaled = (coordinate - self.first as f32) * self.per_unit as f32;
+        // SAFETY: this leaves a number from 0 to the last block, also of NaN.
+        unsafe { at_most(at_least(scaled, 0.0), self.last).to_int_unchecked::<i32>() }
     }
 
     /// For each block the grid points of all cells that touch it when it is widened by `margin`.
@@ -146,7 +153,7 @@ pub(super) struct CeilingTable {
     blocks: [Blocks; 3],
     eta: Option<Blocks>,
     reach_fm: f64,
-    segments_per_fm: f64,
+    segments_per_fm: f32,
     /// Index `[layer][tau][x][y]`, layers being the blocks of eta and then one for all eta.
     entries: Vec<Entry>,
     /// Bounds of all that is not before a block of tau, index `[layer][tau]`.
@@ -170,7 +177,7 @@ impl CeilingTable {
             blocks,
             eta: eta_blocks,
             reach_fm,
-            segments_per_fm: MOST_SEGMENTS as f64 / longest_fm,
+            segments_per_fm: (MOST_SEGMENTS as f64 / longest_fm) as f32,
             entries: Vec::new(),
             later: Vec::new(),
         };
@@ -209,95 +216,158 @@ impl CeilingTable {
         self.later.extend(later.into_iter().rev());
     }
 
-    /// Bounds over equal segments of a stretch.
-    pub(super) fn ceilings(&self, ray: &Ray, stretch: &Stretch, ceilings: &mut Vec<Ceiling>) {
-        let (first, last) = (ray.at(stretch.first_fm), ray.at(stretch.last_fm));
-        let first_tau = proper_time_fm(first);
-        let wanted = (proper_time_fm(last) - first_tau) * self.segments_per_fm;
-        let count = wanted.ceil().clamp(1.0, MOST_SEGMENTS as f64);
-        let step_fm = (stretch.last_fm - stretch.first_fm) / count;
-        let layer = self.layer(first, last);
-        let mut points = [first; MOST_SEGMENTS + 1];
-        let mut taus = [first_tau; MOST_SEGMENTS + 1];
-        let count = count as usize;
-        for segment in 1..=count {
-            points[segment] = ray.at(stretch.first_fm + segment as f64 * step_fm);
-            taus[segment] = proper_time_fm(points[segment]);
+    /// Bounds over equal segments of a stretch; `false`, and none, so far from the hard vertex that single precision is
+    /// too coarse for the table.
+    pub(super) fn ceilings(
+        &self,
+        ray: &Ray,
+        stretch: &Stretch,
+        ceilings: &mut Vec<Ceiling>,
+    ) -> bool {
+        let [t, x, y, _] = ray.birth_fm;
+        let farthest = t + x.abs() + y.abs() + stretch.last_fm;
+        if COORDINATE_ROUNDING * farthest > self.reach_fm * (WIDENING - 1.0) {
+            return false;
         }
+        let milne = MilneRay::new(ray);
+        let taus = [stretch.first_fm, stretch.last_fm].map(|l| milne.tau_fm(l as f32));
+        let wanted = (taus[1] - taus[0]) * self.segments_per_fm;
+        let count = at_most(wanted.ceil(), MOST_SEGMENTS as f32).max(1.0);
+        let (first, step) = (
+            stretch.first_fm as f32,
+            (stretch.last_fm - stretch.first_fm) as f32 / count,
+        );
+        let count = count as usize;
+        let layer = self.layer(ray, stretch);
+        // All lanes are computed, used or not: the compiler makes vectors of them.
+        let l: [f32; LANES] = std::array::from_fn(|end| first + end as f32 * step);
+        let tau = l.map(|l| milne.tau_fm(l));
+        let [taus, xs, ys] = &self.blocks;
+        let (half, [x, y], [nx, ny, _]) = (
+            0.5 * step,
+            [x as f32, y as f32],
+            ray.direction.map(|n| n as f32),
+        );
+        let i: [i32; MOST_SEGMENTS] =
+            std::array::from_fn(|segment| taus.of(0.5 * (tau[segment] + tau[segment + 1])));
+        let j: [i32; MOST_SEGMENTS] =
+            std::array::from_fn(|segment| xs.of(x + nx * (l[segment] + half)));
+        let k: [i32; MOST_SEGMENTS] =
+            std::array::from_fn(|segment| ys.of(y + ny * (l[segment] + half)));
+        let (c, s) = (milne.along(l, tau), milne.across(tau));
         ceilings.clear();
         ceilings.extend((0..count).map(|segment| {
-            let ends = [segment, segment + 1];
-            let entry = self.entry(
-                layer,
-                ends.map(|end| points[end]),
-                ends.map(|end| taus[end]),
-            );
-            bound(entry, ray, points[segment], taus[segment])
+            let entry = if tau[segment + 1] - tau[segment] > self.reach_fm as f32 {
+                &self.later[layer * taus.count + taus.of(tau[segment]) as usize]
+            } else {
+                let [i, j, k] = [i[segment], j[segment], k[segment]].map(|block| block as usize);
+                &self.entries[((layer * taus.count + i) * xs.count + j) * ys.count + k]
+            };
+            entry.bound([nx, ny], [c[segment], s[segment]])
         }));
+        true
     }
 
-    /// The entry that bounds a segment between two points with their proper times.
-    #[inline(always)]
-    fn entry(&self, layer: usize, [from, to]: [[f64; 4]; 2], [tau, end_tau]: [f64; 2]) -> &Entry {
-        let [taus, xs, ys] = &self.blocks;
-        if end_tau - tau > self.reach_fm {
-            return &self.later[layer * taus.count + taus.of(tau)];
-        }
-        let i = taus.of(0.5 * (tau + end_tau));
-        let j = xs.of(0.5 * (from[1] + to[1]));
-        let k = ys.of(0.5 * (from[2] + to[2]));
-        &self.entries[((layer * taus.count + i) * xs.count + j) * ys.count + k]
-    }
-
-    /// The layer of a ray between two points: its block of eta, or all eta.
-    fn layer(&self, first: [f64; 4], last: [f64; 4]) -> usize {
+    /// The layer of a ray along a stretch: its block of eta, or all eta.
+    fn layer(&self, ray: &Ray, stretch: &Stretch) -> usize {
         let Some(blocks) = &self.eta else { return 0 };
-        let eta = |[t, _, _, z]: [f64; 4]| libm::atanh(z / t);
-        let (from, to) = (eta(first), eta(last));
+        let eta = |l_fm: f64| {
+            let [t, _, _, z] = ray.at(l_fm);
+            libm::atanh(z / t)
+        };
+        let (from, to) = (eta(stretch.first_fm), eta(stretch.last_fm));
         // NaN (at the hard vertex) is not within the reach either.
         if (to - from).abs() <= ETA_REACH {
-            blocks.of(0.5 * (from + to))
+            blocks.of((0.5 * (from + to)) as f32) as usize
         } else {
             blocks.count
         }
     }
 }
 
-/// The ceiling of a segment that starts at a point with a proper time.
-#[inline(always)]
-fn bound(entry: &Entry, ray: &Ray, start: [f64; 4], tau: f64) -> Ceiling {
-    let [
-        temperature,
-        utau,
-        ux_least,
-        ux_most,
-        uy_least,
-        uy_most,
-        ueta_least,
-        ueta_most,
-    ] = entry.0;
-    let [nx, ny, nz] = ray.direction;
-    let c = milne_flow_factor(start, nz, tau) as f32;
-    let s = if tau > 0.0 {
-        ((start[3] - nz * start[0]) / tau) as f32
-    } else {
-        0.0
-    };
-    let (nx, ny) = (nx as f32, ny as f32);
-    let transverse =
-        largest(-nx * ux_least, -nx * ux_most) + largest(-ny * uy_least, -ny * uy_most);
-    let twist = largest(largest(s * ueta_least, s * ueta_most), 0.0);
-    let rounding = ROUNDING * (1.0 + c) * utau;
-    Ceiling {
-        temperature_gev: f64::from(temperature),
-        flow_factor: f64::from(c * utau + transverse + twist + rounding),
+impl Entry {
+    /// The ceiling of a segment: the ray's direction across the beam, and c and s at the segment's start.
+    #[inline(always)]
+    fn bound(&self, [nx, ny]: [f32; 2], [c, s]: [f32; 2]) -> Ceiling {
+        let [
+            temperature,
+            utau,
+            ux_least,
+            ux_most,
+            uy_least,
+            uy_most,
+            ueta_least,
+            ueta_most,
+        ] = self.0;
+        let along_x = at_least(-nx * ux_least, -nx * ux_most);
+        let along_y = at_least(-ny * uy_least, -ny * uy_most);
+        let twist = at_least(at_least(s * ueta_least, s * ueta_most), 0.0);
+        let rounding = ROUNDING * (1.0 + c) * utau;
+        Ceiling {
+            temperature_gev: f64::from(temperature),
+            flow_factor: f64::from(c * utau + along_x + along_y + twist + rounding),
+        }
     }
 }
 
-/// The larger of two numbers, neither of them NaN.
+/// tau^2 = tau_0^2 + 2 b l + a l^2 along a ray, with a = 1 - nz^2 and b = t_0 - nz z_0; no term is negative.
+struct MilneRay {
+    start: f32,
+    slope: f32,
+    curvature: f32,
+    /// z - nz t, the same all along the ray.
+    across: f32,
+}
+
+impl MilneRay {
+    fn new(ray: &Ray) -> MilneRay {
+        let ([t, _, _, z], [_, _, nz]) = (ray.birth_fm, ray.direction);
+        MilneRay {
+            start: (t * t - z * z).max(0.0) as f32,
+            slope: (t - nz * z) as f32,
+            curvature: (1.0 - nz * nz) as f32,
+            across: (z - nz * t) as f32,
+        }
+    }
+
+    #[inline(always)]
+    fn tau_fm(&self, l_fm: f32) -> f32 {
+        (self.start + l_fm * (2.0 * self.slope + self.curvature * l_fm)).sqrt()
+    }
+
+    /// c = (t - nz z)/tau at points of the ray.
+    #[inline(always)]
+    fn along<const N: usize>(&self, l_fm: [f32; N], tau_fm: [f32; N]) -> [f32; N] {
+        let mut c: [f32; N] =
+            std::array::from_fn(|end| (self.slope + self.curvature * l_fm[end]) / tau_fm[end]);
+        if tau_fm[0] == 0.0 {
+            // The limit along a ray from the hard vertex.
+            c[0] = self.curvature.sqrt();
+        }
+        c
+    }
+
+    /// s = (z - nz t)/tau.
+    #[inline(always)]
+    fn across<const N: usize>(&self, tau_fm: [f32; N]) -> [f32; N] {
+        let mut s: [f32; N] = std::array::from_fn(|end| self.across / tau_fm[end]);
+        if tau_fm[0] == 0.0 {
+            s[0] = 0.0;
+        }
+        s
+    }
+}
+
+/// The larger of two numbers; the second where the first is NaN.
 #[inline(always)]
-fn largest(one: f32, other: f32) -> f32 {
+fn at_least(one: f32, other: f32) -> f32 {
     if one > other { one } else { other }
+}
+
+/// The smaller of two numbers; the second where the first is NaN.
+#[inline(always)]
+fn at_most(one: f32, other: f32) -> f32 {
+    if one < other { one } else { other }
 }
 
 /// Extremes of all blocks, in C order over (tau, x, y): first along y, then x, then tau.

@@ -77,7 +77,12 @@ fn widen([first, last]: [usize; 2], count: usize) -> [usize; 2] {
 #[derive(Clone, Debug)]
 pub(super) struct HotRegion {
     tau_fm: [f64; 2],
-    boxes: Vec<[[f64; 2]; 2]>,
+    /// Squares of the proper times between the slabs, and of the ends.
+    tau2_fm2: [f64; SLABS + 1],
+    /// First and last x of each box.
+    x_fm: [[f64; SLABS]; 2],
+    /// First and last y of each box.
+    y_fm: [[f64; SLABS]; 2],
 }
 
 /// Slabs of proper time that the hot region is cut into.
@@ -106,9 +111,15 @@ impl HotRegion {
             let y = scan.from_plane_on(from, 1).map(|plane| frame.y_fm[plane]);
             [x, y]
         };
+        let boxes: [[[f64; 2]; 2]; SLABS] = std::array::from_fn(slab);
+        let ends = |axis: usize| {
+            [0, 1].map(|end| std::array::from_fn(|slab: usize| boxes[slab][axis][end]))
+        };
         Some(HotRegion {
             tau_fm: [start_fm, end_fm],
-            boxes: (0..SLABS).map(slab).collect(),
+            tau2_fm2: std::array::from_fn(|slab| (start_fm + slab as f64 * slab_fm).powi(2)),
+            x_fm: ends(0),
+            y_fm: ends(1),
         })
     }
 
@@ -120,58 +131,55 @@ impl HotRegion {
     /// First and last distance between which a ray may be inside the region. The boxes only shrink with tau, so a ray
     /// that has left one for good never meets the medium again.
     pub(super) fn stretch(&self, ray: &Ray) -> Option<(f64, f64)> {
-        let [_, x, y, _] = ray.birth_fm;
-        let in_x = Sides::new(x, ray.direction[0]);
-        let in_y = Sides::new(y, ray.direction[1]);
-        let slab_fm = (self.tau_fm[1] - self.tau_fm[0]) / SLABS as f64;
-        let mut slab_start = ray.distance_to_proper_time(self.tau_fm[0])?;
-        let mut stretch: Option<(f64, f64)> = None;
-        for (slab, [x_ends, y_ends]) in self.boxes.iter().enumerate() {
-            let end_tau_fm = self.tau_fm[0] + (slab + 1) as f64 * slab_fm;
-            let slab_end = ray.distance_to_proper_time(end_tau_fm)?;
-            let ([x_in, x_out], [y_in, y_out]) = (in_x.between(*x_ends), in_y.between(*y_ends));
-            let enter = slab_start.max(x_in).max(y_in);
-            let leave = slab_end.min(x_out).min(y_out);
-            if leave > enter {
-                stretch = Some((stretch.map_or(enter, |(first, _)| first), leave));
-            }
-            slab_start = slab_end;
+        let [t, x, y, z] = ray.birth_fm;
+        let [nx, ny, nz] = ray.direction;
+        // As Ray::distance_to_proper_time, for all slabs at once.
+        let (a, b, born2) = (1.0 - nz * nz, t - nz * z, t * t - z * z);
+        let reached: [f64; SLABS + 1] = std::array::from_fn(|slab| {
+            let missing = larger(self.tau2_fm2[slab] - born2, 0.0);
+            missing / larger(b + (b * b + a * missing).sqrt(), f64::MIN_POSITIVE)
+        });
+        if !reached[SLABS].is_finite() {
+            return None;
         }
-        stretch
+        let (in_x, in_y) = (between(&self.x_fm, x, nx), between(&self.y_fm, y, ny));
+        let enter: [f64; SLABS] =
+            std::array::from_fn(|slab| larger(reached[slab], larger(in_x[0][slab], in_y[0][slab])));
+        let leave: [f64; SLABS] = std::array::from_fn(|slab| {
+            smaller(reached[slab + 1], smaller(in_x[1][slab], in_y[1][slab]))
+        });
+        let inside = |slab: &usize| leave[*slab] > enter[*slab];
+        let first = (0..SLABS).find(inside)?;
+        let last = (first..SLABS).rfind(inside)?;
+        Some((enter[first], leave[last]))
     }
 }
 
-/// One coordinate of a ray, start + speed * l.
-struct Sides {
-    start: f64,
-    speed: f64,
-    inverse_speed: f64,
+/// The distances at which a coordinate, start + speed * l, enters and leaves intervals; enter beyond leave where it
+/// never does.
+#[inline(always)]
+fn between<const N: usize>([low, high]: &[[f64; N]; 2], start: f64, speed: f64) -> [[f64; N]; 2] {
+    // What does not move is inside from ever to ever, or never.
+    let inverse_speed = 1.0 / if speed == 0.0 { STANDSTILL } else { speed };
+    let one: [f64; N] = std::array::from_fn(|place| (low[place] - start) * inverse_speed);
+    let other: [f64; N] = std::array::from_fn(|place| (high[place] - start) * inverse_speed);
+    [
+        std::array::from_fn(|place| smaller(one[place], other[place])),
+        std::array::from_fn(|place| larger(one[place], other[place])),
+    ]
 }
 
-impl Sides {
-    fn new(start: f64, speed: f64) -> Sides {
-        Sides {
-            start,
-            speed,
-            inverse_speed: 1.0 / speed,
-        }
-    }
+/// A speed at which nothing gets anywhere.
+const STANDSTILL: f64 = 1e-200;
 
-    /// The distances at which the coordinate enters and leaves an interval; enter beyond leave where it never does.
-    #[inline]
-    fn between(&self, [low, high]: [f64; 2]) -> [f64; 2] {
-        if self.speed == 0.0 {
-            let inside = (low..=high).contains(&self.start);
-            return if inside {
-                [0.0, f64::INFINITY]
-            } else {
-                [f64::INFINITY, f64::NEG_INFINITY]
-            };
-        }
-        let (one, other) = (
-            (low - self.start) * self.inverse_speed,
-            (high - self.start) * self.inverse_speed,
-        );
-        [one.min(other), one.max(other)]
-    }
+/// The larger of two numbers; the second where the first is NaN. (One instruction, which `f64::max` is not.)
+#[inline(always)]
+fn larger(one: f64, other: f64) -> f64 {
+    if one > other { one } else { other }
+}
+
+/// The smaller of two numbers; the second where the first is NaN.
+#[inline(always)]
+fn smaller(one: f64, other: f64) -> f64 {
+    if one < other { one } else { other }
 }

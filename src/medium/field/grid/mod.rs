@@ -123,8 +123,7 @@ impl TemperatureField for Grid {
         ceilings.clear();
         match &self.hot {
             Some(hot) if !on_light_cone(ray.at(stretch.first_fm)) => {
-                hot.ceilings.ceilings(ray, stretch, ceilings);
-                true
+                hot.ceilings.ceilings(ray, stretch, ceilings)
             }
             _ => false,
         }

@@ -459,8 +459,9 @@ mod tests {
         drop(series);
         assert!(living.most.load(Ordering::SeqCst) <= MOST_IN_MEMORY);
         assert_eq!(living.now.load(Ordering::SeqCst), 0);
-        // Twelve turns, of which the first was read before, and perhaps one ahead.
-        assert!((11..=12).contains(&living.reads.load(Ordering::SeqCst)));
+        // Twelve turns, of which the first was read before, and perhaps one ahead; a field that is still there when its
+        // turn comes again is not read again.
+        assert!(living.reads.load(Ordering::SeqCst) <= 12);
     }
 
     #[test]

@@ -228,6 +228,18 @@ fn close<C: RunCounters>(sink: Sink, totals: &mut RunTotals<C>) -> Result<(), Ev
     }
 }
 
+/// Commits what was written before an event could not be made; other failures leave the file as it is.
+fn keep(sink: Sink, error: RunError) -> RunError {
+    let events_before_are_sound = matches!(error, RunError::TooLarge(_) | RunError::Field(_));
+    if let Sink::File(mut writer) = sink
+        && events_before_are_sound
+        && let Err(failure) = writer.commit()
+    {
+        return failure.into();
+    }
+    error
+}
+
 /// What a panic said.
 fn panic_message(payload: Box<dyn std::any::Any + Send>) -> String {
     match payload.downcast::<String>() {

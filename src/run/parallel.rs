@@ -12,7 +12,7 @@ use crossbeam_channel::{Receiver, RecvTimeoutError, Sender, unbounded};
 use super::block::{block_count, block_ids, event_count, fill, settle};
 use super::{
     EventError, EventGenerator, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
-    close, panic_message,
+    close, keep, panic_message,
 };
 use crate::config::RecordSettings;
 use crate::event::EventBlock;
@@ -44,7 +44,7 @@ pub(super) fn run<G: EventGenerator>(
         Sink::File(writer) => Some(writer.record()),
     };
     let mut totals: RunTotals<G::Counters> = RunTotals::default();
-    std::thread::scope(|scope| {
+    let made = std::thread::scope(|scope| {
         let workers: Vec<_> = (0..threads)
             .map(|_| {
                 let reports = reports.clone();
@@ -81,7 +81,10 @@ pub(super) fn run<G: EventGenerator>(
             }
         }
         Ok::<_, RunError>(())
-    })?;
+    });
+    if let Err(error) = made {
+        return Err(keep(sink, error));
+    }
     totals.completed = totals.events == event_count(&ids);
     close(sink, &mut totals)?;
     Ok(totals)

@@ -18,7 +18,8 @@ use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{
     LARGEST_DISTANCE, LARGEST_PULL, Mean, SIGNIFICANCE, binomial_p_value, distance,
 };
-use super::{Way, along_z, plain, plus, ways};
+use super::super::support::ways::{Way, along_z, massless_energies, plus, ways};
+use super::plain;
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 1.5;
@@ -287,21 +288,4 @@ fn partons_below_the_minimum_energy_exchange_nothing() {
     });
     println!("{slow} below, {fast} above");
     assert!(slow > 1000 && fast > 1000);
-}
-
-/// Energies of two daughters with the azimuth of their branching and k^2 = z(1-z) t.
-fn massless_energies(mother: &Way, pair: [&Way; 2]) -> [f64; 2] {
-    let z = f64::from(pair[0].parton.splitting_fraction);
-    let t = f64::from(mother.parton.virtuality_squared_gev2);
-    let [one, other] = pair.map(Way::at_birth);
-    let settled = [0, 1].map(|i| (1.0 - z) * one[i] - z * other[i]);
-    let size = settled[0].hypot(settled[1]);
-    let k = settled.map(|component| component / size * (z * (1.0 - z) * t).sqrt());
-    let momentum = mother.parton.momentum_gev;
-    let energy = |share: f64, sign: f64| {
-        let q = [0, 1].map(|i| share * momentum[i] + sign * k[i]);
-        let plus = share * plus(momentum);
-        0.5 * (plus + (q[0] * q[0] + q[1] * q[1]) / plus)
-    };
-    [energy(z, 1.0), energy(1.0 - z, -1.0)]
 }

@@ -19,8 +19,9 @@ use spindrift::source::{Direction, SourceSettings};
 use super::super::support::reference::{self, number};
 use super::super::support::setup::{Setup, effect, up};
 use super::super::support::statistics::{LARGEST_DISTANCE, LARGEST_PULL, Mean, distance};
+use super::super::support::ways::{Way, along_z, plus, ways};
 use super::broadening::path_setup;
-use super::{TEMPERATURE_GEV, Way, along_z, plain, plus, rounding, ways};
+use super::{TEMPERATURE_GEV, plain, rounding};
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 1.0;

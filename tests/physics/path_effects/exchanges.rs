@@ -16,7 +16,8 @@ use spindrift::qcd::Species;
 use spindrift::shower::Ordering;
 
 use super::super::support::setup::{Setup, brick_with, effect, up};
-use super::{FIRST_CHANNEL, along_z, gain, plain, plus, ways};
+use super::super::support::ways::{along_z, gain, plus, ways};
+use super::{FIRST_CHANNEL, plain};
 
 const MOMENTUM_TOLERANCE: f64 = 1e-9;
 const EVENTS: i64 = 600;

@@ -23,8 +23,9 @@ use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{
     LARGEST_DISTANCE, LARGEST_PULL, SIGNIFICANCE, binomial_p_value, distance,
 };
+use super::super::support::ways::{Way, along_z, minus, plus, ways};
 use super::broadening::path_setup;
-use super::{Way, along_z, minus, plain, plus, ways};
+use super::plain;
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 2.0;

@@ -4,6 +4,8 @@
 //! g -> g g. The positive part of D is a channel of its own; the negative part thins the vacuum channel.
 
 pub mod collinear_expansion;
+pub mod multiple_soft;
+pub mod scaled_table;
 
 use crate::medium::path::Path;
 use crate::qcd::Species;

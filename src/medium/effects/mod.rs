@@ -6,6 +6,7 @@
 pub mod collinear_expansion;
 pub mod multiple_soft;
 pub mod scaled_table;
+pub mod single_hard;
 
 use crate::medium::path::Path;
 use crate::qcd::Species;

@@ -137,16 +137,29 @@ impl Grid {
 
     /// The largest node of all cells that a part of the rectangle touches: a bound on the values there.
     pub fn largest(&self, rows: [f64; 2], columns: [f64; 2]) -> f64 {
+        let largest = self.of_nodes(rows, columns, f64::NEG_INFINITY, f64::max);
+        largest + ROUNDING * largest.abs()
+    }
+
+    /// The smallest node of all cells that a part of the rectangle touches.
+    pub fn smallest(&self, rows: [f64; 2], columns: [f64; 2]) -> f64 {
+        let smallest = self.of_nodes(rows, columns, f64::INFINITY, f64::min);
+        smallest - ROUNDING * smallest.abs()
+    }
+
+    fn of_nodes(
+        &self,
+        rows: [f64; 2],
+        columns: [f64; 2],
+        start: f64,
+        choose: impl Fn(f64, f64) -> f64,
+    ) -> f64 {
         let [first_row, last_row] = rows.map(|place| self.rows.locate(place).0);
         let [first, last] = columns.map(|place| self.columns.locate(place).0);
-        let mut largest = f64::NEG_INFINITY;
-        for row in first_row..=last_row + 1 {
-            let start = row * self.columns.nodes();
-            for value in &self.values[start + first..=start + last + 1] {
-                largest = largest.max(f64::from(*value));
-            }
-        }
-        largest + ROUNDING * largest.abs()
+        let length = self.columns.nodes();
+        let rows = (first_row..=last_row + 1).map(|row| row * length);
+        rows.flat_map(|row| &self.values[row + first..=row + last + 1])
+            .fold(start, |chosen, value| choose(chosen, f64::from(*value)))
     }
 
     /// Bytes of the table.

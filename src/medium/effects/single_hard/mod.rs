@@ -37,7 +37,7 @@ const LARGEST_DENSITY_PER_FM: f64 = 100.0;
 /// Far beyond the screening mass of any medium.
 const LARGEST_MASS_GEV: f64 = 10.0;
 /// Light flavours of a medium.
-const MOST_FLAVOURS: f64 = 6.0;
+const MOST_FLAVOURS: u64 = 6;
 
 const TRANSPORT: &[When] = &[When {
     key: "centres",
@@ -74,8 +74,8 @@ pub static MODEL: Model = Model {
         .when(TRANSPORT),
         Key::default(
             "flavours",
-            Form::Number(Range::from(0.0, MOST_FLAVOURS)),
-            "3.0",
+            Form::Count(0, MOST_FLAVOURS),
+            "3",
             "Number of light flavours of the medium in the Debye mass.",
         )
         .when(TRANSPORT),
@@ -117,7 +117,7 @@ fn build(name: String, values: &Values) -> Effect {
     let centres = match values.word("centres") {
         "transport" => Centres::Transport {
             alpha_s: values.number("alpha_s"),
-            flavours: values.number("flavours"),
+            flavours: values.number("flavours") as u8,
         },
         _ => Centres::Given {
             opacity_per_fm: values.number("opacity_per_fm"),
@@ -138,7 +138,7 @@ struct SingleHard {
 enum Centres {
     Transport {
         alpha_s: f64,
-        flavours: f64,
+        flavours: u8,
     },
     Given {
         opacity_per_fm: f64,

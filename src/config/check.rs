@@ -21,14 +21,17 @@ pub struct Places<'a> {
 }
 
 impl Places<'_> {
-    /// Line of a path, or of the nearest section above it that stands in the file.
+    /// Line of a path, or of the nearest section above it that stands in the file: at the end, the whole config.
     pub fn line(&self, path: &str) -> Option<usize> {
         let mut path = path;
         loop {
             if let Some(at) = self.offsets.get(path) {
                 return Some(self.lines.line(*at));
             }
-            path = &path[..path.rfind(['.', '['])?];
+            if path.is_empty() {
+                return None;
+            }
+            path = &path[..path.rfind(['.', '[']).unwrap_or(0)];
         }
     }
 
@@ -44,7 +47,7 @@ pub fn check<'a>(root: &Node, lines: &'a Lines, report: &mut Report) -> (Value, 
     let mut checker = Checker {
         places: Places {
             lines,
-            offsets: HashMap::new(),
+            offsets: HashMap::from([(String::new(), root.at)]),
         },
         report,
     };

@@ -179,7 +179,7 @@ pub fn neither_key(
 /// Both of two keys that exclude each other.
 pub fn both_keys(key: &Key, other: &Key) -> Complaint {
     Complaint::new(
-        Problem::Conflict,
+        Problem::UnusedKey,
         format!("\"{}\" beside \"{}\"", key.name, other.name),
         format!("one of \"{}\" and \"{}\"", other.name, key.name),
         "remove one of them",

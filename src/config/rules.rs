@@ -334,7 +334,9 @@ impl<'a> Rules<'a, '_> {
                 format!("what makes at most {HOTTEST_GEV} GeV"),
                 "lower amplitude or q_per_fm, or raise start_fm",
             );
-        } else if hottest > WARM_GEV {
+            return;
+        }
+        if hottest > WARM_GEV {
             self.warnings.push(format!(
                 "medium.field.amplitude: {centre:.4} GeV in the centre at start_fm is hotter than any collision"
             ));

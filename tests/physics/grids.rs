@@ -267,7 +267,7 @@ fn the_radial_solution_on_a_grid() {
         let settings = settings(with_flow);
         let fine = Medium::new(
             &settings,
-            Box::new(Refined {
+            Arc::new(Refined {
                 field: exact(),
                 factor: 8,
             }),
@@ -277,13 +277,13 @@ fn the_radial_solution_on_a_grid() {
                 field: flow.grid(spacing_fm, false, true),
                 factor: 8,
             };
-            let medium = Medium::new(&settings, Box::new(grid));
+            let medium = Medium::new(&settings, Arc::new(grid));
             let (mut on_grid, mut expected) = (Trace::default(), Trace::default());
             let mut errors = Vec::new();
             for ray in rays() {
                 let outcomes = [
-                    medium.trace(&ray, &mut on_grid),
-                    fine.trace(&ray, &mut expected),
+                    medium.trace(medium.field(), &ray, 100.0, &mut on_grid),
+                    fine.trace(fine.field(), &ray, 100.0, &mut expected),
                 ];
                 if outcomes == [Outcome::Medium { left_hot: false }; 2] {
                     let (found, wanted) = (&on_grid.path, &expected.path);

@@ -272,7 +272,7 @@ fn integrals_of_an_independent_calculation() {
     let across = ray([0.0; 4], [0.3, -1.0, 0.0]);
     let radial = || Until(Radial::new(80.0_f64.sqrt().sqrt(), 1.0 / 4.3, START_FM));
     let longitudinal = || Until(Longitudinal::new(START_TEMPERATURE_GEV, START_FM));
-    let integral = |flow: bool, field: Box<dyn TemperatureField>| {
+    let integral = |flow: bool, field: Arc<dyn TemperatureField>| {
         let mut settings = settings(flow);
         settings.field.end_temperature_gev = 0.01;
         let path = trace(&settings, field, &across).expect("a medium");

@@ -34,7 +34,7 @@ use spindrift::shower::Ordering;
 
 use super::support::effects::effect;
 use super::support::setup::{ALPHA_S, Setup, fixed};
-use super::support::ways::{Way, along_z, massless_energies, ways};
+use super::support::ways::{Way, along_z, massless_energies, pair, ways};
 
 /// Channel number of vacuum branchings.
 const VACUUM: u8 = 1;
@@ -77,11 +77,6 @@ fn spread(way: &Way, pair: [&Way; 2]) -> f64 {
 fn own_spread(way: &Way, pair: [&Way; 2]) -> f64 {
     let grown = f64::from(way.parton.virtuality_squared_gev2);
     spread(way, pair) * (invariant_square(way.at_birth()) / grown)
-}
-
-fn pair<'a>(all: &'a [Way], way: &Way) -> Option<[&'a Way; 2]> {
-    let rows = way.daughters?;
-    Some(rows.map(|row| all.iter().find(|other| other.row == row).expect("a row")))
 }
 
 fn steps(all: &[Way], mut visit: impl FnMut(&Step)) {

@@ -1,84 +1,17 @@
-//! The rate below an angle, integrated, and legs that must follow it.
+//! Legs that must follow the rate below an angle.
 
-use spindrift::qcd::{C_A, C_F, Species, T_R};
+use spindrift::qcd::Species;
 use spindrift::random::Key;
 use spindrift::shower::counters::ShowerCounters;
 use spindrift::shower::leg::{AngularOrder, Leg, Tally};
 use spindrift::shower::tree::Tools;
 
+use super::super::support::rate::{Rate, fraction_of, kernels_below, nothing};
 use super::super::support::setup::{ALPHA_S, Setup, fixed, up};
 use super::super::support::statistics::{
     LARGEST_DISTANCE, SIGNIFICANCE, binomial_p_value, distance,
 };
 use super::CUTOFF_T_GEV2;
-
-/// The rate of one parton with fixed coupling, integrated over z by closed forms.
-pub struct Rate<'a> {
-    pub is_gluon: bool,
-    /// The smallest fraction of a daughter at t; 1/2 and more where there is none.
-    pub smallest: &'a dyn Fn(f64) -> f64,
-    /// Where `smallest` jumps.
-    pub jump_t_gev2: f64,
-}
-
-/// Antiderivative of the kernels' sum.
-fn kernels_below(is_gluon: bool, z: f64, t: f64) -> f64 {
-    let rest = 1.0 - z;
-    if !is_gluon {
-        // C_F (1 + z^2)/(1 - z).
-        return C_F * (-2.0 * rest.ln() - z - 0.5 * z * z);
-    }
-    // C_A [1/z + 1/(1-z) - 2 + z(1-z)], the half for identical gluons in it, and n_f T_R [z^2 + (1-z)^2].
-    let open = 3.0 + f64::from(t > 9.0) + f64::from(t > 4.0 * 4.75 * 4.75);
-    C_A * ((z / rest).ln() - 2.0 * z + z * z / 2.0 - z * z * z / 3.0)
-        + open * T_R * (z - z * z + 2.0 * z * z * z / 3.0)
-}
-
-impl Rate<'_> {
-    /// Per unit of ln t.
-    fn at(&self, t: f64) -> f64 {
-        let low = (self.smallest)(t);
-        if low >= 0.5 {
-            return 0.0;
-        }
-        let below = |z| kernels_below(self.is_gluon, z, t);
-        ALPHA_S / std::f64::consts::TAU * (below(1.0 - low) - below(low))
-    }
-
-    /// The exponent of no branching between two values of t.
-    pub fn exponent(&self, low_t: f64, high_t: f64) -> f64 {
-        // Gauss-Legendre, four points.
-        const NODES: [f64; 2] = [0.339_981_043_584_856_3, 0.861_136_311_594_052_6];
-        const WEIGHTS: [f64; 2] = [0.652_145_154_862_546_1, 0.347_854_845_137_453_9];
-        const PANELS: usize = 10;
-        let marks = [9.0, 4.0 * 4.75 * 4.75, self.jump_t_gev2];
-        let mut edges = vec![low_t, high_t];
-        edges.extend(marks.into_iter().filter(|t| *t > low_t && *t < high_t));
-        edges.sort_by(f64::total_cmp);
-        let mut sum = 0.0;
-        for piece in edges.windows(2) {
-            let (from, to) = (piece[0].ln(), piece[1].ln());
-            let half = 0.5 * (to - from) / PANELS as f64;
-            for panel in 0..PANELS {
-                let centre = from + (2.0 * panel as f64 + 1.0) * half;
-                for (node, weight) in NODES.into_iter().zip(WEIGHTS) {
-                    let both = self.at((centre + half * node).exp())
-                        + self.at((centre - half * node).exp());
-                    sum += weight * half * both;
-                }
-            }
-        }
-        sum
-    }
-}
-
-/// The smallest fraction for which z(1-z) >= `product`.
-pub fn fraction_of(product: f64) -> f64 {
-    if product >= 0.25 {
-        return 0.5;
-    }
-    2.0 * product / (1.0 + (1.0 - 4.0 * product).sqrt())
-}
 
 /// Kinematic range, and the order in angle below a' = `most`.
 pub fn ordered_fraction(t: f64, most: f64) -> f64 {
@@ -112,6 +45,7 @@ fn legs_below_an_angle_follow_the_rate() {
             is_gluon: parton.is_gluon(),
             smallest: &smallest,
             jump_t_gev2: 0.0,
+            added: &nothing,
         };
         // Nothing is left of the range above a quarter of the largest a.
         let end = START_T_GEV2.min(0.25 * MOST_GEV2);

@@ -2,11 +2,12 @@
 
 use spindrift::qcd::Species;
 
+use super::super::support::rate::{Law, Rate, nothing, pulls_of_unbranched_pairs};
 use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::LARGEST_PULL;
-use super::super::support::ways::{Way, ways};
-use super::rate::{Rate, ordered_fraction};
-use super::{CUTOFF_T_GEV2, inside, pair, primaries, spread};
+use super::super::support::ways::Way;
+use super::rate::ordered_fraction;
+use super::{CUTOFF_T_GEV2, inside, primaries, spread};
 
 /// What a set-up asks of the daughters of a primary.
 #[derive(Clone, Copy, PartialEq)]
@@ -59,33 +60,18 @@ fn stays(mother: &Way, daughters: [&Way; 2], which: usize, rules: Rules) -> f64 
         is_gluon: daughters[which].is_gluon(),
         smallest: &smallest,
         jump_t_gev2: inside.as_ref().map_or(0.0, |inside| inside.first_t_gev2),
+        added: &nothing,
     };
     (-rate.exponent(CUTOFF_T_GEV2, start_t)).exp()
 }
 
-/// Pulls of the number of events in which neither daughter branches, in bins of z, one list for each set of rules.
 fn pulls(setup: &Setup, events: i64, rules: &[Rules]) -> Vec<[f64; 4]> {
-    let mut counts = [0.0; 4];
-    let mut sums = vec![[[0.0; 2]; 4]; rules.len()];
-    setup.events(0..events, |_, rows| {
-        let all = ways(rows);
-        let Some(daughters) = pair(&all, &all[0]) else {
-            return;
-        };
-        let z = f64::from(daughters[0].parton.splitting_fraction);
-        let bin = [0.2, 0.5, 0.8].iter().filter(|edge| z > **edge).count();
-        counts[bin] += f64::from(daughters.iter().all(|daughter| daughter.is_final()));
-        for (rules, sums) in rules.iter().zip(&mut sums) {
-            let p = [0, 1].map(|which| stays(&all[0], daughters, which, *rules));
-            let p = p[0] * p[1];
-            sums[bin][0] += p;
-            sums[bin][1] += p * (1.0 - p);
-        }
-    });
-    let pull = |sums: &[[f64; 2]; 4]| {
-        std::array::from_fn(|bin| (counts[bin] - sums[bin][0]) / sums[bin][1].sqrt())
+    let law = |rules: Rules| -> Box<Law> {
+        Box::new(move |mother, daughters, which| stays(mother, daughters, which, rules))
     };
-    sums.iter().map(pull).collect()
+    let laws: Vec<Box<Law>> = rules.iter().map(|rules| law(*rules)).collect();
+    let laws: Vec<&Law> = laws.iter().map(|law| &**law).collect();
+    pulls_of_unbranched_pairs(setup, events, &laws)
 }
 
 #[test]

@@ -12,9 +12,10 @@
 //!
 //! So that this can fail: 24 wrong samplers, each against a case that must see it.
 //!
-//! See `biased` for these, `pairs` for what the tables do not hold.
+//! See `biased` for these, `pairs` and `daughters` for what the tables do not hold.
 
 mod biased;
+mod daughters;
 mod pairs;
 
 use std::collections::BTreeSet;

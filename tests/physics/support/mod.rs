@@ -2,6 +2,7 @@
 
 pub mod effects;
 pub mod first_branching;
+pub mod rate;
 pub mod reference;
 pub mod setup;
 pub mod statistics;

@@ -132,6 +132,12 @@ pub fn along_z(
     setup
 }
 
+/// The daughters of a parton among all.
+pub fn pair<'a>(all: &'a [Way], way: &Way) -> Option<[&'a Way; 2]> {
+    let rows = way.daughters?;
+    Some(rows.map(|row| all.iter().find(|other| other.row == row).expect("a row")))
+}
+
 /// Energies of two daughters with the azimuth of their branching and k^2 = z(1-z) t.
 pub fn massless_energies(mother: &Way, pair: [&Way; 2]) -> [f64; 2] {
     let z = f64::from(pair[0].parton.splitting_fraction);

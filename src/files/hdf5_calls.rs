@@ -1,6 +1,7 @@
 //! The few HDF5 calls that the safe binding lacks: finished chunks and dimension scales.
 
 use std::ffi::{CString, c_char, c_int, c_uint, c_void};
+use std::ops::Range;
 use std::path::Path;
 
 use hdf5::H5Type;
@@ -122,25 +123,43 @@ pub(super) fn read_rows<T: H5Type + Copy>(
     count: usize,
     values: &mut Vec<T>,
 ) -> hdf5::Result<()> {
-    values.clear();
-    let mut shape = dataset.shape();
-    let mut offset = vec![0; shape.len()];
-    match (shape.first_mut(), offset.first_mut()) {
-        (Some(length), Some(first)) if start + count <= *length => {
-            *length = count;
-            *first = start as hsize_t;
-        }
-        _ => return Err("rows beyond the end of a dataset".into()),
+    let mut part: Vec<Range<usize>> = dataset.shape().iter().map(|length| 0..*length).collect();
+    match part.first_mut() {
+        Some(rows) => *rows = start..start + count,
+        None => return Err("a single number has no rows".into()),
     }
-    let elements: usize = shape.iter().product();
+    read_box(dataset, &part, values)
+}
+
+/// Reads a part (a range along each axis) into `values`, whose content is lost.
+///
+/// The caller has checked that its size is reasonable, and that the elements are numbers.
+pub(super) fn read_box<T: H5Type + Copy>(
+    dataset: &hdf5::Dataset,
+    part: &[Range<usize>],
+    values: &mut Vec<T>,
+) -> hdf5::Result<()> {
+    values.clear();
+    let shape = dataset.shape();
+    let inside = part.len() == shape.len()
+        && part
+            .iter()
+            .zip(&shape)
+            .all(|(range, length)| range.start <= range.end && range.end <= *length);
+    if !inside {
+        return Err("a part beyond the end of a dataset".into());
+    }
+    let lengths: Vec<usize> = part.iter().map(Range::len).collect();
+    let elements: usize = lengths.iter().product();
     if elements == 0 {
         return Ok(());
     }
     values.reserve_exact(elements);
     let file_space = dataset.space()?;
-    let memory_space = hdf5::Dataspace::try_new(&shape[..])?;
+    let memory_space = hdf5::Dataspace::try_new(&lengths[..])?;
     let memory_type = hdf5::Datatype::from_type::<T>()?;
-    let counts: Vec<hsize_t> = shape.iter().map(|length| *length as hsize_t).collect();
+    let offset: Vec<hsize_t> = part.iter().map(|range| range.start as hsize_t).collect();
+    let counts: Vec<hsize_t> = lengths.iter().map(|length| *length as hsize_t).collect();
     // SAFETY: all handles are open, the selection has `elements` elements as has the memory space, and that many of
     // the memory type fit into the reserved room.
     sync(|| unsafe {

@@ -4,8 +4,8 @@ use thiserror::Error;
 
 use super::generator::Generator;
 use crate::config::{History, RunPlan};
-use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{Brick, Grid, Longitudinal, Radial, TemperatureField, placed};
+use crate::files::field_file::{FieldFileError, read_grid};
+use crate::medium::field::{Brick, Longitudinal, Radial, TemperatureField, placed};
 use crate::medium::{FieldKind, FieldSettings, Medium};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
@@ -83,9 +83,9 @@ fn field(
             start_fm,
         } => Box::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
         FieldKind::Grid { files, .. } => {
-            let mut data = read_field(&files[0])?;
-            warnings.append(&mut data.warnings);
-            Box::new(Grid::held(data, settings.end_temperature_gev, hold))
+            let mut loaded = read_grid(&files[0], settings.end_temperature_gev, hold)?;
+            warnings.append(&mut loaded.warnings);
+            Box::new(loaded.grid)
         }
     };
     Ok(placed(field, settings.rotation_rad, settings.shift_fm))

@@ -122,7 +122,10 @@ fn the_hot_part_is_that_of_the_whole() {
             for hold in [false, true] {
                 let loaded = read_grid(&path, END_TEMPERATURE_GEV, hold).unwrap();
                 assert!(loaded.grid.bytes() < points * if flow.is_some() { 16 } else { 4 });
-                assert_eq!(loaded.frame.tau_fm, TAU);
+                assert_eq!(loaded.first_slice.tau_fm, TAU);
+                let slice = &loaded.first_slice.temperature_gev;
+                assert_eq!(slice[..], data.temperature_gev[..slice.len()]);
+                assert_eq!(slice.len(), points / TAU.len());
                 expect_same(
                     &loaded.grid,
                     &Grid::held(data.clone(), END_TEMPERATURE_GEV, hold),

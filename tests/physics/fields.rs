@@ -3,6 +3,8 @@
 //!
 //! Deterministic; tolerances are rounding unless stated.
 
+use std::sync::Arc;
+
 use spindrift::files::field_file::read_field;
 use spindrift::medium::field::{
     Brick, Ceiling, FieldData, Fluid, Grid, Longitudinal, Placed, Radial, Ray, TemperatureField,
@@ -11,7 +13,7 @@ use spindrift::random::{Key, Purpose, Stream};
 
 use rand::RngExt;
 
-const END_TEMPERATURE_GEV: f64 = 0.15;
+pub const END_TEMPERATURE_GEV: f64 = 0.15;
 /// 80^(1/4), the amplitude of check-values.
 fn amplitude() -> f64 {
     80.0_f64.sqrt().sqrt()
@@ -23,7 +25,7 @@ fn uniform(stream: &mut Stream, low: f64, high: f64) -> f64 {
 }
 
 /// A ray born inside the light cone of the hard vertex, or (one in eight) at it, often towards the beam.
-fn random_ray(stream: &mut Stream) -> Ray {
+pub fn random_ray(stream: &mut Stream) -> Ray {
     let azimuth = uniform(stream, 0.0, std::f64::consts::TAU);
     let nz = uniform(stream, -1.0, 1.0).powi(3);
     let sine = (1.0 - nz * nz).sqrt();
@@ -77,13 +79,13 @@ fn demo_field() -> Grid {
     Grid::new(read_field(path.as_ref()).unwrap(), END_TEMPERATURE_GEV)
 }
 
-fn all_fields() -> Vec<(String, Box<dyn TemperatureField>)> {
+pub fn all_fields() -> Vec<(String, Box<dyn TemperatureField>)> {
     let mut fields: Vec<(String, Box<dyn TemperatureField>)> = vec![
         ("brick".into(), Box::new(Brick::new(0.3, 4.0))),
         ("demo".into(), Box::new(demo_field())),
         (
             "turned demo".into(),
-            Box::new(Placed::new(Box::new(demo_field()), 0.8, [1.5, -0.7])),
+            Box::new(Placed::new(Arc::new(demo_field()), 0.8, [1.5, -0.7])),
         ),
     ];
     for hold in [false, true] {
@@ -249,11 +251,11 @@ fn fields_are_turned_and_shifted() {
     let (angle, shift) = (0.8_f64, [1.5, -0.7]);
     let (field, moved) = (
         demo_field(),
-        Placed::new(Box::new(demo_field()), angle, shift),
+        Placed::new(Arc::new(demo_field()), angle, shift),
     );
     // At a quarter turn, what was on the x axis is on the y axis, and flows along it.
     let quarter = Placed::new(
-        Box::new(demo_field()),
+        Arc::new(demo_field()),
         std::f64::consts::FRAC_PI_2,
         [0.0, 1.0],
     );

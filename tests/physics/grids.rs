@@ -4,6 +4,8 @@
 //! finely along the ray with a flow factor worked out here. The error of linear interpolation falls with the square of
 //! the spacing.
 
+use std::sync::Arc;
+
 use spindrift::medium::Medium;
 use spindrift::medium::field::{
     FieldData, Fluid, Grid, Local, Radial, Ray, Stretch, TemperatureField,
@@ -146,10 +148,10 @@ fn grid_errors(
         field: flow.grid(spacing_fm, with_eta, with_flow),
         factor: cells,
     };
-    let medium = Medium::new(&settings, Box::new(grid));
+    let medium = Medium::new(&settings, Arc::new(grid));
     let fine = Medium::new(
         &settings,
-        Box::new(Fine {
+        Arc::new(Fine {
             flow,
             last_fm: 12.0,
         }),
@@ -158,8 +160,8 @@ fn grid_errors(
     let mut errors = [Vec::new(), Vec::new()];
     for ray in rays() {
         let outcomes = [
-            medium.trace(&ray, &mut on_grid),
-            fine.trace(&ray, &mut expected),
+            medium.trace(medium.field(), &ray, 100.0, &mut on_grid),
+            fine.trace(fine.field(), &ray, 100.0, &mut expected),
         ];
         // Rays that leave the grid hot are another matter.
         if outcomes != [Outcome::Medium { left_hot: false }; 2] {
@@ -230,7 +232,7 @@ fn the_longitudinal_solution_on_a_grid() {
     for spacing in [0.8, 0.4, 0.2] {
         let path = trace(
             &settings(true),
-            Box::new(flow.grid(spacing, false, true)),
+            Arc::new(flow.grid(spacing, false, true)),
             &start,
         );
         let found = path.expect("a medium").qhat_integral_gev2();
@@ -265,7 +267,7 @@ fn the_radial_solution_on_a_grid() {
         let settings = settings(with_flow);
         let fine = Medium::new(
             &settings,
-            Box::new(Refined {
+            Arc::new(Refined {
                 field: exact(),
                 factor: 8,
             }),
@@ -275,13 +277,13 @@ fn the_radial_solution_on_a_grid() {
                 field: flow.grid(spacing_fm, false, true),
                 factor: 8,
             };
-            let medium = Medium::new(&settings, Box::new(grid));
+            let medium = Medium::new(&settings, Arc::new(grid));
             let (mut on_grid, mut expected) = (Trace::default(), Trace::default());
             let mut errors = Vec::new();
             for ray in rays() {
                 let outcomes = [
-                    medium.trace(&ray, &mut on_grid),
-                    fine.trace(&ray, &mut expected),
+                    medium.trace(medium.field(), &ray, 100.0, &mut on_grid),
+                    fine.trace(fine.field(), &ray, 100.0, &mut expected),
                 ];
                 if outcomes == [Outcome::Medium { left_hot: false }; 2] {
                     let (found, wanted) = (&on_grid.path, &expected.path);
@@ -319,7 +321,7 @@ fn constant_flow() {
             [-0.8, 0.6, 0.0],
         ] {
             let born = ray([0.5, 0.0, 0.0, 0.0], direction);
-            let grid = || Box::new(flow.grid(1.0, with_eta, true));
+            let grid = || Arc::new(flow.grid(1.0, with_eta, true));
             let path = trace(&settings(true), grid(), &born).expect("a medium");
             // Until the ray leaves the grid in x, y, or tau (12.5 fm).
             let reach = |n: f64| {
@@ -346,7 +348,7 @@ fn constant_flow() {
         let tilted = ray([0.0; 4], [0.6, 0.0, 0.8]);
         let path = trace(
             &settings(true),
-            Box::new(flow.grid(1.0, with_eta, true)),
+            Arc::new(flow.grid(1.0, with_eta, true)),
             &tilted,
         );
         let (first, last): (f64, f64) = (0.5 / 0.6, 8.0 / 0.6);
@@ -368,12 +370,12 @@ fn births_outside_the_grid() {
         first_tau_fm: 0.5,
     };
     let rest = COEFFICIENT * 0.027 / HBAR_C_GEV_FM;
-    let medium = Medium::new(&settings(true), Box::new(flow.grid(1.0, false, false)));
+    let medium = Medium::new(&settings(true), Arc::new(flow.grid(1.0, false, false)));
     let mut trace = Trace::default();
     // From x = -10 to the grid's edge at -8, then until tau = 12.5.
     let inwards = ray([0.0, -10.0, 3.0, 0.0], [1.0, 0.0, 0.0]);
     assert_eq!(
-        medium.trace(&inwards, &mut trace),
+        medium.trace(medium.field(), &inwards, 100.0, &mut trace),
         Outcome::Medium { left_hot: true }
     );
     let found = trace.path.qhat_integral_gev2();
@@ -393,7 +395,7 @@ fn births_outside_the_grid() {
         ([0.0; 4], [0.0, 0.0, -1.0]),
     ] {
         assert_eq!(
-            medium.trace(&ray(birth, direction), &mut trace),
+            medium.trace(medium.field(), &ray(birth, direction), 100.0, &mut trace),
             Outcome::Empty,
             "{birth:?}"
         );
@@ -401,7 +403,7 @@ fn births_outside_the_grid() {
     // Along the beam from inside the light cone: tau^2 = t^2 - z^2 + 2 l (t - z).
     let beam = ray([2.0, 1.0, 1.0, 1.5], [0.0, 0.0, 1.0]);
     assert_eq!(
-        medium.trace(&beam, &mut trace),
+        medium.trace(medium.field(), &beam, 100.0, &mut trace),
         Outcome::Medium { left_hot: true }
     );
     let length = (12.5_f64.powi(2) - 1.75) / (2.0 * 0.5);
@@ -409,8 +411,8 @@ fn births_outside_the_grid() {
     let grown = 12.5 - 1.75_f64.sqrt();
     let found = trace.path.qhat_integral_gev2();
     assert!((found / (rest * grown) - 1.0).abs() < 1e-3, "{found}");
-    let still = Medium::new(&settings(false), Box::new(flow.grid(1.0, false, false)));
-    still.trace(&beam, &mut trace);
+    let still = Medium::new(&settings(false), Arc::new(flow.grid(1.0, false, false)));
+    still.trace(still.field(), &beam, 100.0, &mut trace);
     let found = trace.path.qhat_integral_gev2();
     assert!((found / (rest * length) - 1.0).abs() < 1e-5, "{found}");
 }
@@ -428,7 +430,7 @@ fn a_sharp_edge_is_known_to_a_spacing() {
         let born = ray([1.0, 0.0, 0.0, 0.0], [0.6, 0.8, 0.0]);
         let path = trace(
             &settings(true),
-            Box::new(flow.grid(spacing, false, false)),
+            Arc::new(flow.grid(spacing, false, false)),
             &born,
         );
         let length = path.expect("a medium").qhat_integral_gev2() / rest;

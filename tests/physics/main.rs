@@ -6,6 +6,7 @@
 
 mod collinear;
 mod conservation;
+mod exits;
 mod fields;
 mod first_branching;
 mod grids;
@@ -13,7 +14,10 @@ mod medium;
 mod medium_limits;
 mod medium_sign;
 mod no_branching;
+mod origins;
 mod parton_numbers;
 mod paths;
+mod rate_effects;
 mod support;
+mod thermal;
 mod twins;

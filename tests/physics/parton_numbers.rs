@@ -13,9 +13,10 @@ use spindrift::qcd::{Coupling, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::Key;
 use spindrift::shower::FlavourOpening;
 use spindrift::shower::counters::ShowerCounters;
-use spindrift::shower::leg::{Evolution, Leg, Tally};
+use spindrift::shower::leg::{AngularOrder, Evolution, Leg, Tally};
 use spindrift::shower::proposal::FractionRange;
 use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use spindrift::shower::tree::Tools;
 
 use super::support::setup::{ALPHA_S, Setup, fixed, running, up};
 use super::support::statistics::{LARGEST_PULL, Mean};
@@ -72,8 +73,15 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
         stairs,
         medium: None,
         emits: [true, true],
+        makes_pairs: true,
         effect_purposes: Vec::new(),
+        path_purposes: Vec::new(),
         envelope_factor: 1.0,
+    };
+    let tools = Tools {
+        field: None,
+        evolution: &evolution,
+        settings: &setup.shower,
     };
     let mut tally = Tally {
         trials_left: u32::MAX,
@@ -85,8 +93,8 @@ fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64
         let mut finals = 0.0;
         waiting.push((parton, Key::event(3, id), largest));
         while let Some((species, key, start)) = waiting.pop() {
-            leg.start(&evolution, species, key, start);
-            let Some(branching) = leg.evolve(&evolution, &mut tally) else {
+            leg.start(&evolution, species, key, start, AngularOrder::NONE);
+            let Some(branching) = leg.evolve(tools, &mut tally) else {
                 finals += 1.0;
                 continue;
             };

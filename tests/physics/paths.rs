@@ -3,15 +3,16 @@
 //! Deterministic; tolerances are stated where they are used. Outside truth: longitudinal.json (quadrature in arbitrary
 //! precision) and closed forms. The linear cells converge with the fourth power of their size (Simpson's mean).
 
-use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
-use spindrift::medium::effects::{Passage, RateEffect};
+use std::sync::Arc;
+
+use spindrift::medium::effects::collinear_expansion::{CollinearExpansion, PhaseSettings};
 use spindrift::medium::field::{
     Brick, Fluid, Local, Longitudinal, Radial, Ray, Stretch, TemperatureField,
 };
 use spindrift::medium::path::Path;
 use spindrift::medium::trace::{Outcome, Trace};
-use spindrift::medium::{Medium, MediumSettings, PhaseSettings, TransportKind};
-use spindrift::qcd::{HBAR_C_GEV_FM, Species};
+use spindrift::medium::{Medium, MediumSettings, TransportKind};
+use spindrift::qcd::HBAR_C_GEV_FM;
 
 use super::support::reference::{self, number};
 use super::support::setup::brick;
@@ -23,6 +24,8 @@ pub const COEFFICIENT: f64 = 4.0;
 
 pub fn settings(flow: bool) -> MediumSettings {
     let mut settings = brick(1.0, 1.0, PhaseSettings::Interference);
+    // Without effects the path is traced whole.
+    settings.effects.clear();
     settings.transport.kind = TransportKind::Cubic {
         coefficient: COEFFICIENT,
     };
@@ -34,11 +37,12 @@ pub fn settings(flow: bool) -> MediumSettings {
 /// The path of a ray, `None` without a medium on it.
 pub fn trace(
     settings: &MediumSettings,
-    field: Box<dyn TemperatureField>,
+    field: Arc<dyn TemperatureField>,
     ray: &Ray,
 ) -> Option<Path> {
     let mut trace = Trace::default();
-    match Medium::new(settings, field).trace(ray, &mut trace) {
+    let medium = Medium::new(settings, field);
+    match medium.trace(medium.field(), ray, 100.0, &mut trace) {
         Outcome::Empty => None,
         Outcome::Medium { .. } => Some(trace.path),
     }
@@ -82,15 +86,8 @@ impl<F: TemperatureField> TemperatureField for Refined<F> {
 
 /// int qhat K(l/formation) dl of a path, GeV^2: the relative change times z(1-z) t.
 fn phase_integral(path: &Path, phase: PhaseSettings, formation_fm: f64) -> f64 {
-    let energy_gev = 100.0;
-    let t = 2.0 * energy_gev * HBAR_C_GEV_FM / formation_fm;
-    let passage = Passage {
-        species: Species::GLUON,
-        energy_gev,
-        path,
-    };
-    let effect = CollinearExpansion::new("collinear-expansion".into(), phase);
-    effect.relative_change(&passage, t, 0.5) * 0.25 * t
+    CollinearExpansion::new("collinear-expansion".into(), phase, false)
+        .strength_gev2(path, 1.0 / formation_fm)
 }
 
 /// Errors of one refinement over all cases of longitudinal.json, over I0: of the moments (relative), of the phases.
@@ -113,7 +110,7 @@ fn longitudinal_errors(factor: usize) -> [Vec<f64>; 2] {
             field: Longitudinal::new(START_TEMPERATURE_GEV, START_FM),
             factor,
         };
-        let path = trace(&settings(case["flow"] == true), Box::new(field), &ray);
+        let path = trace(&settings(case["flow"] == true), Arc::new(field), &ray);
         let total = number(&case, "I0_GeV2");
         let Some(path) = path else {
             assert_eq!(total, 0.0, "{case}");
@@ -192,7 +189,7 @@ fn the_end_temperature_ends_the_path() {
         let mut settings = settings(true);
         settings.field.end_temperature_gev = end;
         let field = Longitudinal::new(START_TEMPERATURE_GEV, START_FM);
-        let path = trace(&settings, Box::new(field), &along).expect("a medium");
+        let path = trace(&settings, Arc::new(field), &along).expect("a medium");
         let cooling = START_TEMPERATURE_GEV / end;
         let scale = COEFFICIENT * START_TEMPERATURE_GEV.powi(3) * START_FM / HBAR_C_GEV_FM;
         let expected = scale * 3.0 * cooling.ln();
@@ -207,7 +204,7 @@ fn the_end_temperature_ends_the_path() {
     let mut cold = settings(true);
     cold.field.end_temperature_gev = 0.46;
     let field = Longitudinal::new(START_TEMPERATURE_GEV, START_FM);
-    assert!(trace(&cold, Box::new(field), &along).is_none());
+    assert!(trace(&cold, Arc::new(field), &along).is_none());
 }
 
 /// Rays from the centre and from elsewhere, into all directions, through the radial solution: I0 and I1 against the
@@ -252,7 +249,7 @@ fn the_radial_solution() {
             let errors = [1, 2, 4, 8].map(|factor| {
                 let field = Radial::new(amplitude, q, start_fm);
                 let field = Refined { field, factor };
-                let path = trace(&settings(flow), Box::new(field), ray).expect("a medium");
+                let path = trace(&settings(flow), Arc::new(field), ray).expect("a medium");
                 let found = [path.qhat_integral_gev2(), path.first_moment_gev2_fm()];
                 [0, 1].map(|order| found[order] / expected[order] - 1.0)
             });
@@ -275,16 +272,16 @@ fn integrals_of_an_independent_calculation() {
     let across = ray([0.0; 4], [0.3, -1.0, 0.0]);
     let radial = || Until(Radial::new(80.0_f64.sqrt().sqrt(), 1.0 / 4.3, START_FM));
     let longitudinal = || Until(Longitudinal::new(START_TEMPERATURE_GEV, START_FM));
-    let integral = |flow: bool, field: Box<dyn TemperatureField>| {
+    let integral = |flow: bool, field: Arc<dyn TemperatureField>| {
         let mut settings = settings(flow);
         settings.field.end_temperature_gev = 0.01;
         let path = trace(&settings, field, &across).expect("a medium");
         path.qhat_integral_gev2() / COEFFICIENT
     };
     for (found, expected) in [
-        (integral(true, Box::new(longitudinal())), 0.587479),
-        (integral(false, Box::new(radial())), 0.276919),
-        (integral(true, Box::new(radial())), 0.225880),
+        (integral(true, Arc::new(longitudinal())), 0.587479),
+        (integral(false, Arc::new(radial())), 0.276919),
+        (integral(true, Arc::new(radial())), 0.225880),
     ] {
         assert!(
             (found - expected).abs() < 1e-6,
@@ -333,7 +330,7 @@ fn bricks() {
         (4.9, [0.0, 0.0, -1.0]),
     ] {
         let born = ray([t, 30.0, -7.0, 0.5 * t], direction);
-        let path = trace(&settings, Box::new(Brick::new(0.3, length)), &born).expect("a medium");
+        let path = trace(&settings, Arc::new(Brick::new(0.3, length)), &born).expect("a medium");
         let l: f64 = length - t;
         for (found, expected) in [
             (path.qhat_integral_gev2(), 0.7 * l),
@@ -348,5 +345,5 @@ fn bricks() {
         }
     }
     let late = ray([5.1, 0.0, 0.0, 0.0], [1.0, 0.0, 0.0]);
-    assert!(trace(&settings, Box::new(Brick::new(0.3, length)), &late).is_none());
+    assert!(trace(&settings, Arc::new(Brick::new(0.3, length)), &late).is_none());
 }

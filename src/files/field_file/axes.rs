@@ -103,8 +103,7 @@ fn read_axis(
     let coordinate = Variable::find(file, name, quantity)?.ok_or(missing)?;
     coordinate.expect_axes(&[name], &[length])?;
     let mut values = vec![0.0; length];
-    let whole = 0..length;
-    coordinate.read(&[name], std::slice::from_ref(&whole), |place, value| {
+    coordinate.read(&[name], |place, value| {
         values[place] = value;
         Ok(())
     })?;

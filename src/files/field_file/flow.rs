@@ -74,6 +74,40 @@ pub(super) fn names(file: &File) -> Result<Option<[&'static str; 3]>, FieldProbl
     }
 }
 
+/// Checks names, shapes and units, without reading values.
+pub(super) fn check(file: &File, axes: &[&str], lengths: &[usize; 4]) -> Result<(), FieldProblem> {
+    if let Some(names) = names(file)? {
+        for name in names {
+            find_component(file, names, name, axes, lengths)?;
+        }
+    }
+    Ok(())
+}
+
+/// One component; `None` where it may be absent and is.
+fn find_component(
+    file: &File,
+    names: [&'static str; 3],
+    name: &'static str,
+    axes: &[&str],
+    lengths: &[usize; 4],
+) -> Result<Option<Variable>, FieldProblem> {
+    let Some(variable) = Variable::find(file, name, &NUMBER)? else {
+        let longitudinal = name == names[2];
+        // Without an eta axis the field is boost-invariant, and so is its flow.
+        if longitudinal && !axes.contains(&"eta") {
+            return Ok(None);
+        }
+        return Err(FieldProblem::Missing {
+            name,
+            found: names_in(file),
+            remedy: format!("flow needs all of {}", names.join(", ")),
+        });
+    };
+    variable.expect_axes(axes, &lengths[..axes.len()])?;
+    Ok(Some(variable))
+}
+
 /// Reads the flow of a part of a grid into a sink, as four-velocity.
 pub(super) fn read(
     file: &File,
@@ -84,20 +118,10 @@ pub(super) fn read(
     sink: &mut impl Sink,
 ) -> Result<(), FieldProblem> {
     for (component, name) in names.into_iter().enumerate() {
-        let Some(variable) = Variable::find(file, name, &NUMBER)? else {
-            let longitudinal = name == names[2];
-            // Without an eta axis the field is boost-invariant, and so is its flow.
-            if longitudinal && !axes.contains(&"eta") {
-                continue;
-            }
-            return Err(FieldProblem::Missing {
-                name,
-                found: names_in(file),
-                remedy: format!("flow needs all of {}", names.join(", ")),
-            });
+        let Some(variable) = find_component(file, names, name, axes, lengths)? else {
+            continue;
         };
-        variable.expect_axes(axes, &lengths[..axes.len()])?;
-        variable.read(axes, part, |place, value| {
+        variable.read_part(axes, part, |place, value| {
             if value.abs() <= LARGEST_FLOW {
                 sink.set(component, place, value as f32);
                 return Ok(());

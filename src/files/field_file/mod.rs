@@ -8,8 +8,8 @@ mod axes;
 mod blocks;
 mod error;
 mod flow;
-mod units;
-mod variable;
+pub(super) mod units;
+pub(super) mod variable;
 
 use std::io::Read;
 use std::ops::Range;
@@ -32,9 +32,9 @@ const LARGEST_TEMPERATURE_GEV: f64 = 5.0;
 const UNUSUAL_TEMPERATURE_GEV: f64 = 1.0;
 
 /// First bytes of an HDF5 file (without a user block).
-const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
+pub(super) const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
 /// First bytes of the classic netCDF formats.
-const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
+pub(super) const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
 
 /// Reads and checks all of a temperature field.
 ///
@@ -49,17 +49,27 @@ pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
     read_whole(path).map_err(|problem| FieldFileError::new(path, problem))
 }
 
-/// A field ready for use, with what goes with it.
+/// Checks everything about a temperature field but the values of temperature and flow, which are not read and stay empty
+/// in what is returned.
+///
+/// # Errors
+/// As [`read_field`].
+pub fn read_outline(path: &Path) -> Result<FieldData, FieldFileError> {
+    let outline = Opened::new(path).and_then(|opened| {
+        flow::check(&opened.file, opened.axes, &opened.frame.lengths())?;
+        opened.outline()
+    });
+    outline.map_err(|problem| FieldFileError::new(path, problem))
+}
+
+/// A field ready for use, with what places of birth need to know of it.
 #[derive(Clone, Debug)]
 pub struct LoadedGrid {
     /// The hot part.
     pub grid: Grid,
-    /// The axes of the whole field.
-    pub frame: Frame,
-    /// The field's own density of collision points in fm^-2 for drawing origins, index `[x][y]` of the whole field.
-    pub collision_density_per_fm2: Option<Vec<f64>>,
-    /// What the user should hear of before the field is used.
-    pub warnings: Vec<String>,
+    /// The axes of the whole field, its collision density and warnings; of the temperatures the first slice alone, of the
+    /// flow nothing.
+    pub first_slice: FieldData,
 }
 
 /// Reads the part of a temperature field that is at least as hot as `end_temperature_gev`; with `hold_before_start` its
@@ -78,37 +88,30 @@ pub fn read_grid(
 
 fn read_whole(path: &Path) -> Result<FieldData, FieldProblem> {
     let opened = Opened::new(path)?;
-    let (file, frame) = (&opened.file, &opened.frame);
-    let names = flow::names(file)?;
-    let points = frame.lengths().iter().product();
+    let names = flow::names(&opened.file)?;
+    let lengths = opened.frame.lengths();
+    let points = lengths.iter().product();
     check_memory(points, names.is_some())?;
+    let mut data = opened.outline()?;
+    data.temperature_gev = vec![0.0; points];
     let whole = opened.whole();
-    let mut data = FieldData {
-        tau_fm: frame.tau_fm.clone(),
-        x_fm: frame.x_fm.clone(),
-        y_fm: frame.y_fm.clone(),
-        eta: frame.eta.clone(),
-        temperature_gev: vec![0.0; points],
-        ..FieldData::default()
-    };
     let mut largest = 0.0;
     opened.read_temperature(&whole, |place, temperature| {
         data.temperature_gev[place] = temperature;
         largest = temperature.max(largest);
     })?;
     if let Some(names) = names {
-        let mut flow = [const { Vec::new() }; 3].map(|_: Vec<f32>| vec![0.0; points]);
+        let mut flow = [0, 1, 2].map(|_| vec![0.0; points]);
         flow::read(
-            file,
+            &opened.file,
             names,
             opened.axes,
-            &frame.lengths(),
+            &lengths,
             &whole,
             &mut flow,
         )?;
         data.flow = Some(flow);
     }
-    data.collision_density_per_fm2 = read_collision_density(file, frame)?;
     data.warnings = temperature_warnings(largest);
     Ok(data)
 }
@@ -119,16 +122,22 @@ fn read_hot(
     hold_before_start: bool,
 ) -> Result<LoadedGrid, FieldProblem> {
     let opened = Opened::new(path)?;
-    let (file, frame) = (&opened.file, &opened.frame);
-    let names = flow::names(file)?;
-    let mut scan = HotScan::new(frame.lengths(), end_temperature_gev);
+    let names = flow::names(&opened.file)?;
+    let lengths = opened.frame.lengths();
+    let mut scan = HotScan::new(lengths, end_temperature_gev);
+    let mut first_slice = opened.outline()?;
+    first_slice.temperature_gev = vec![0.0; lengths[1..].iter().product()];
     let mut largest = 0.0;
     opened.read_temperature(&opened.whole(), |place, temperature| {
         scan.see(place, temperature);
         largest = temperature.max(largest);
+        if let Some(slot) = first_slice.temperature_gev.get_mut(place) {
+            *slot = temperature;
+        }
     })?;
-    check_memory(kept_points(frame, &scan), names.is_some())?;
-    let mut builder = GridBuilder::new(frame.clone(), scan, names.is_some());
+    first_slice.warnings = temperature_warnings(largest);
+    check_memory(kept_points(&scan, &lengths), names.is_some())?;
+    let mut builder = GridBuilder::new(opened.frame.clone(), scan, names.is_some());
     if let Some(kept) = builder.kept() {
         let kept = &kept[..opened.axes.len()];
         opened.read_temperature(kept, |place, temperature| {
@@ -136,10 +145,10 @@ fn read_hot(
         })?;
         if let Some(names) = names {
             flow::read(
-                file,
+                &opened.file,
                 names,
                 opened.axes,
-                &frame.lengths(),
+                &lengths,
                 kept,
                 &mut builder,
             )?;
@@ -147,9 +156,7 @@ fn read_hot(
     }
     Ok(LoadedGrid {
         grid: builder.finish(hold_before_start),
-        frame: frame.clone(),
-        collision_density_per_fm2: read_collision_density(file, frame)?,
-        warnings: temperature_warnings(largest),
+        first_slice,
     })
 }
 
@@ -176,6 +183,19 @@ impl Opened {
         })
     }
 
+    /// Axes and collision density.
+    fn outline(&self) -> Result<FieldData, FieldProblem> {
+        let frame = self.frame.clone();
+        Ok(FieldData {
+            collision_density_per_fm2: read_collision_density(&self.file, &frame)?,
+            tau_fm: frame.tau_fm,
+            x_fm: frame.x_fm,
+            y_fm: frame.y_fm,
+            eta: frame.eta,
+            ..FieldData::default()
+        })
+    }
+
     fn whole(&self) -> Vec<Range<usize>> {
         let lengths = &self.frame.lengths()[..self.axes.len()];
         lengths.iter().map(|length| 0..*length).collect()
@@ -186,7 +206,7 @@ impl Opened {
         part: &[Range<usize>],
         mut take: impl FnMut(usize, f32),
     ) -> Result<(), FieldProblem> {
-        self.temperature.read(self.axes, part, |place, value| {
+        self.temperature.read_part(self.axes, part, |place, value| {
             if (0.0..=LARGEST_TEMPERATURE_GEV).contains(&value) {
                 take(place, value as f32);
                 return Ok(());
@@ -205,10 +225,10 @@ impl Opened {
     }
 }
 
-fn kept_points(frame: &Frame, scan: &HotScan) -> usize {
+fn kept_points(scan: &HotScan, lengths: &[usize; 4]) -> usize {
     let length = |[first, last]: [usize; 2]| last - first + 1;
-    let plane: Option<usize> = scan.kept().map(|kept| kept.map(length).iter().product());
-    plane.unwrap_or(0) * frame.lengths()[3]
+    let kept = scan.kept().map(|kept| kept.map(length));
+    kept.map_or(0, |kept| kept.iter().product::<usize>() * lengths[3])
 }
 
 fn check_signature(path: &Path) -> Result<(), FieldProblem> {
@@ -236,7 +256,7 @@ fn require(file: &File, name: &'static str, quantity: &Quantity) -> Result<Varia
     })
 }
 
-fn names_in(file: &File) -> String {
+pub(super) fn names_in(file: &File) -> String {
     match file.member_names() {
         Ok(names) if names.is_empty() => "nothing".into(),
         Ok(names) => names.join(", "),
@@ -263,9 +283,8 @@ fn read_collision_density(file: &File, frame: &Frame) -> Result<Option<Vec<f64>>
     };
     let (axes, lengths) = (&axes::PLANE_AXES[1..], &frame.lengths()[1..3]);
     variable.expect_axes(axes, lengths)?;
-    let whole = [0..lengths[0], 0..lengths[1]];
     let mut values = vec![0.0; lengths.iter().product()];
-    variable.read(axes, &whole, |place, value| {
+    variable.read(axes, |place, value| {
         if value < 0.0 {
             return Err(Refusal {
                 value: format!("{value} fm^-2"),

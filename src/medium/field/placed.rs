@@ -1,10 +1,12 @@
 //! A field turned about the beam and moved in the transverse plane: what the field has at X stands at R(angle) X + shift.
 
+use std::sync::Arc;
+
 use super::{Ceiling, Fluid, Local, Ray, Stretch, TemperatureField};
 
 /// A field somewhere else.
 pub struct Placed {
-    field: Box<dyn TemperatureField>,
+    field: Arc<dyn TemperatureField>,
     sin: f64,
     cos: f64,
     shift_fm: [f64; 2],
@@ -13,20 +15,20 @@ pub struct Placed {
 /// A field turned by an angle (radians, from x to y) about the beam, then shifted (x, y in fm); the field itself where
 /// neither does anything.
 pub fn placed(
-    field: Box<dyn TemperatureField>,
+    field: Arc<dyn TemperatureField>,
     rotation_rad: f64,
     shift_fm: [f64; 2],
-) -> Box<dyn TemperatureField> {
+) -> Arc<dyn TemperatureField> {
     if rotation_rad == 0.0 && shift_fm == [0.0; 2] {
         field
     } else {
-        Box::new(Placed::new(field, rotation_rad, shift_fm))
+        Arc::new(Placed::new(field, rotation_rad, shift_fm))
     }
 }
 
 impl Placed {
     /// A field turned by an angle (radians, from x to y) about the beam, then shifted (x, y in fm).
-    pub fn new(field: Box<dyn TemperatureField>, rotation_rad: f64, shift_fm: [f64; 2]) -> Placed {
+    pub fn new(field: Arc<dyn TemperatureField>, rotation_rad: f64, shift_fm: [f64; 2]) -> Placed {
         let (sin, cos) = rotation_rad.sin_cos();
         Placed {
             field,

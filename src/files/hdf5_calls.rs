@@ -7,7 +7,7 @@ use std::path::Path;
 use hdf5::H5Type;
 use hdf5::sync::sync;
 use hdf5_sys::h5::{herr_t, hsize_t};
-use hdf5_sys::h5d::{H5Dread, H5Dwrite_chunk};
+use hdf5_sys::h5d::{H5Dread, H5Dwrite, H5Dwrite_chunk};
 use hdf5_sys::h5i::hid_t;
 use hdf5_sys::h5p::H5P_DEFAULT;
 use hdf5_sys::h5s::{H5S_seloper_t, H5Sselect_hyperslab};
@@ -183,6 +183,48 @@ pub(super) fn read_box<T: H5Type + Copy>(
     // SAFETY: HDF5 has written every selected element.
     unsafe { values.set_len(elements) };
     Ok(())
+}
+
+/// Writes plane `index` along the first axis of a dataset; `values` are all of it.
+pub(super) fn write_plane<T: H5Type>(
+    dataset: &hdf5::Dataset,
+    index: usize,
+    values: &[T],
+) -> hdf5::Result<()> {
+    let mut lengths = dataset.shape();
+    match lengths.first_mut() {
+        Some(length) if index < *length => *length = 1,
+        _ => return Err("a plane beyond the end of a dataset".into()),
+    }
+    if lengths.iter().product::<usize>() != values.len() {
+        return Err("a plane of another size".into());
+    }
+    let mut offset: Vec<hsize_t> = vec![0; lengths.len()];
+    offset[0] = index as hsize_t;
+    let counts: Vec<hsize_t> = lengths.iter().map(|length| *length as hsize_t).collect();
+    let file_space = dataset.space()?;
+    let memory_space = hdf5::Dataspace::try_new(&lengths[..])?;
+    let memory_type = hdf5::Datatype::from_type::<T>()?;
+    // SAFETY: all handles are open, the selection lies inside the dataset and has as many elements as `values`.
+    sync(|| unsafe {
+        hdf5::h5check(H5Sselect_hyperslab(
+            file_space.id(),
+            H5S_seloper_t::H5S_SELECT_SET,
+            offset.as_ptr(),
+            std::ptr::null(),
+            counts.as_ptr(),
+            std::ptr::null(),
+        ))?;
+        hdf5::h5check(H5Dwrite(
+            dataset.id(),
+            memory_type.id(),
+            memory_space.id(),
+            file_space.id(),
+            H5P_DEFAULT,
+            values.as_ptr().cast(),
+        ))
+    })
+    .map(drop)
 }
 
 /// The part of a file in which global heaps are looked for before it is opened, in bytes. Event files have theirs

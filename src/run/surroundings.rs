@@ -6,9 +6,7 @@ use std::sync::Arc;
 use super::assemble::AssembleError;
 use super::origins::{FieldView, births};
 use crate::files::field_file::{FieldFileError, LoadedGrid, read_grid};
-use crate::medium::field::{
-    Brick, FieldData, Grid, Longitudinal, Radial, TemperatureField, placed,
-};
+use crate::medium::field::{FieldData, Grid, TemperatureField, analytic, placed};
 use crate::medium::origin::{Origin, Placement, TemperatureSlice};
 use crate::medium::{FieldKind, FieldSettings, MediumSettings, OriginSettings};
 
@@ -134,22 +132,8 @@ fn first_slice(settings: &FieldSettings) -> TemperatureSlice {
 }
 
 fn temperature_field(settings: &FieldSettings, grid: Option<Grid>) -> Arc<dyn TemperatureField> {
-    let hold = settings.hold_before_start;
-    let field: Arc<dyn TemperatureField> = match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Arc::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
-        FieldKind::Radial {
-            amplitude,
-            q_per_fm,
-            start_fm,
-        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
-        FieldKind::Grid { .. } => Arc::new(grid.expect("a grid's file was read before")),
-    };
-    placed(field, settings.rotation_rad, settings.shift_fm)
+    match grid {
+        Some(grid) => placed(Arc::new(grid), settings.rotation_rad, settings.shift_fm),
+        None => analytic(settings).expect("a grid's file was read before"),
+    }
 }

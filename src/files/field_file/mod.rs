@@ -1,4 +1,4 @@
-//! Reading a temperature field: HDF5 as `xarray.Dataset.to_netcdf(engine="h5netcdf")` and netCDF-4 write it.
+//! Reading and writing a temperature field: HDF5 as `xarray.Dataset.to_netcdf(engine="h5netcdf")` and netCDF-4 write it.
 //!
 //! [`read_field`] takes all of a field into memory, to look at it. [`read_grid`] keeps its hot part alone, for use: a
 //! first pass over the temperatures finds where the field is hot, a second reads that part, both in blocks of about 4 MB
@@ -10,6 +10,7 @@ mod error;
 mod flow;
 pub(super) mod units;
 pub(super) mod variable;
+mod write;
 
 use std::io::Read;
 use std::ops::Range;
@@ -18,6 +19,7 @@ use std::path::Path;
 use hdf5::File;
 
 pub use error::{FieldFileError, FieldProblem};
+pub use write::{FieldOutline, FieldWriteError, PlanePoint, write_field};
 
 use crate::files::hdf5_calls::{expect_regular, open_to_read};
 use crate::medium::field::{FieldData, Frame, Grid, GridBuilder, HotScan};

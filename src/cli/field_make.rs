@@ -56,7 +56,7 @@ pub(super) fn run(args: &MakeArgs) -> anyhow::Result<ExitCode> {
     };
     let settings = &medium.field;
     let field = flow(settings)?;
-    refuse_existing(&args.out, args.overwrite)?;
+    check_output(&args.out, args.overwrite)?;
     let side_fm = args.extent_fm;
     let [x_fm, y_fm] = [(); 2].map(|()| steps(-side_fm, side_fm, args.spacing_fm, "--spacing-fm"));
     let mut frame = Frame {
@@ -112,11 +112,27 @@ fn flow(settings: &FieldSettings) -> anyhow::Result<std::sync::Arc<dyn Temperatu
     }
 }
 
-fn refuse_existing(out: &Path, overwrite: bool) -> anyhow::Result<()> {
+fn check_output(out: &Path, overwrite: bool) -> anyhow::Result<()> {
+    if out.is_dir() {
+        bail!(
+            "{} is a folder; give the name of a file with --out",
+            out.display()
+        );
+    }
     if out.symlink_metadata().is_ok() && !overwrite {
         bail!(
             "{} exists; give another --out, or --overwrite",
             out.display()
+        );
+    }
+    let folder = match out.parent() {
+        Some(parent) if !parent.as_os_str().is_empty() => parent,
+        _ => Path::new("."),
+    };
+    if !folder.is_dir() {
+        bail!(
+            "there is no folder {}; make it, or give another --out",
+            folder.display()
         );
     }
     Ok(())

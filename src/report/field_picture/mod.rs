@@ -18,7 +18,7 @@ use slices::Slices;
 use svg::{Anchor, Svg};
 
 /// Size of the whole picture.
-const SIZE: [f64; 2] = [1120.0, 1040.0];
+const SIZE: [f64; 2] = [1120.0, 1010.0];
 /// Side of a slice.
 const PANEL: f64 = 290.0;
 /// Left and upper edge of the first slice.
@@ -31,6 +31,10 @@ const GRID: [usize; 2] = [3, 2];
 const PROFILE_HEIGHT: f64 = 150.0;
 /// From the slices to the profile.
 const PROFILE_GAP: f64 = 92.0;
+/// The colours begin at this part of the end temperature: what is colder does not matter.
+const COLDEST: f64 = 0.5;
+/// A field of less ellipticity has no event plane to speak of.
+const ROUND: f64 = 0.01;
 /// Empty rim around what is hot, as a part of its reach.
 const RIM: f64 = 0.12;
 
@@ -51,13 +55,25 @@ impl Jet {
 struct Scene<'a> {
     slices: Slices<'a>,
     end_temperature_gev: f64,
-    largest_temperature_gev: f64,
+    /// Coldest and hottest temperature of the colours; what is colder has the coldest one's.
+    range_gev: [f64; 2],
+    /// The fastest flow that is drawn.
     largest_speed: f64,
     /// The slices show -`reach_fm` to `reach_fm`.
     reach_fm: f64,
     times_fm: Vec<f64>,
     jet: Jet,
+    /// The field has no event plane.
+    is_round: bool,
     colours: Colours,
+}
+
+impl Scene<'_> {
+    /// Place of a temperature in the colours, 0 to 1.
+    fn share(&self, temperature_gev: f64) -> f64 {
+        let [low, high] = self.range_gev;
+        ((temperature_gev - low) / (high - low)).clamp(0.0, 1.0)
+    }
 }
 
 /// Colours besides the palette.
@@ -77,15 +93,21 @@ pub fn field_picture(data: &FieldData, summary: &FieldSummary, name: &str) -> Op
     let step_fm = (hot_fm[1] - hot_fm[0]) / count as f64;
     let widest = |axis: &[f64]| axis[0].abs().max(axis[axis.len() - 1].abs());
     let grid_fm = widest(&data.x_fm).max(widest(&data.y_fm));
-    let (sin, cos) = summary.event_plane_rad.sin_cos();
-    let transverse = summary
-        .largest_flow
-        .map_or(0.0, |[transverse, _]| transverse);
-    let scene = Scene {
+    let is_round = summary.ellipticity < ROUND;
+    let (sin, cos) = if is_round {
+        0.0
+    } else {
+        summary.event_plane_rad
+    }
+    .sin_cos();
+    let mut scene = Scene {
         slices,
         end_temperature_gev,
-        largest_temperature_gev: summary.largest_temperature_gev,
-        largest_speed: transverse / (1.0 + transverse * transverse).sqrt(),
+        range_gev: [
+            COLDEST * end_temperature_gev,
+            summary.largest_temperature_gev,
+        ],
+        largest_speed: 0.0,
         reach_fm: ((1.0 + RIM) * hot_reach_fm).min(grid_fm),
         times_fm: (0..count)
             .map(|place| hot_fm[0] + step_fm * place as f64)
@@ -94,6 +116,7 @@ pub fn field_picture(data: &FieldData, summary: &FieldSummary, name: &str) -> Op
             birth_fm: summary.centroid_fm,
             direction: [cos, sin],
         },
+        is_round,
         colours: Colours {
             ink: hex(oklch(0.27, 0.03, 262.0)),
             faint: hex(oklch(0.56, 0.02, 262.0)),
@@ -101,6 +124,7 @@ pub fn field_picture(data: &FieldData, summary: &FieldSummary, name: &str) -> Op
             jet: hex(oklch(0.72, 0.19, 40.0)),
         },
     };
+    scene.largest_speed = panel::largest_speed(&scene);
     let mut svg = Svg::new(
         SIZE,
         &format!("temperature field {name}"),
@@ -136,12 +160,11 @@ fn heading(svg: &mut Svg, scene: &Scene, summary: &FieldSummary, name: &str) {
         name,
     );
     let hottest = significant(summary.largest_temperature_gev, 3);
-    let flow = match summary.largest_flow {
-        None => "no transverse flow".to_owned(),
-        Some(_) => format!(
-            "transverse flow up to {} c",
-            significant(scene.largest_speed, 2)
-        ),
+    let flow = if scene.largest_speed > 0.0 {
+        let speed = significant(scene.largest_speed, 2);
+        format!("transverse flow of what is hot up to {speed} c")
+    } else {
+        "no transverse flow".to_owned()
     };
     let eta = if scene.slices.data.eta.is_some() {
         ", at mid-rapidity"

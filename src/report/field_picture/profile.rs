@@ -12,7 +12,7 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
     let width = GRID[0] as f64 * PANEL + (GRID[0] - 1) as f64 * GAP[0];
     let bottom = top + PROFILE_HEIGHT;
     let last_fm = (1.04 * last_hot(scene)).max(scene.times_fm[0]);
-    let highest = 1.08 * scene.largest_temperature_gev;
+    let highest = 1.08 * scene.range_gev[1];
     let along = |l: f64| left + width * l / last_fm;
     let up = |temperature: f64| bottom - PROFILE_HEIGHT * temperature / highest;
     let sample = |place: usize| {
@@ -72,6 +72,9 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
     );
     for time in &scene.times_fm {
         let point = scene.slices.at(*time, scene.jet.at(*time));
+        if point.temperature_gev == 0.0 {
+            continue;
+        }
         svg.push(&format!(
             "<circle cx=\"{:.1}\" cy=\"{:.1}\" r=\"5\" fill=\"{jet}\" stroke=\"{}\" stroke-width=\"1.6\"/>",
             along(*time),
@@ -93,12 +96,15 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
         );
     }
     let faint = format!("fill=\"{}\"", scene.colours.faint);
-    let angle = scene.jet.direction[1]
-        .atan2(scene.jet.direction[0])
-        .to_degrees();
+    let [nx, ny] = scene.jet.direction;
+    let towards = if scene.is_round {
+        "along x".to_owned()
+    } else {
+        let angle = label(ny.atan2(nx).to_degrees().round());
+        format!("along the second-order event plane ({angle}\u{b0} from x)")
+    };
     let words = format!(
-        "What a jet meets that starts from the centre at t = 0 along the second-order event plane ({}\u{b0} from x); dots: the slices above",
-        label(angle.round())
+        "What a jet meets that starts from the centre at t = 0 {towards}; dots: the slices above"
     );
     svg.text([left, top - 14.0], Anchor::Start, 14.0, &faint, &words);
     svg.text(
@@ -113,7 +119,7 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
         [x, y],
         Anchor::Middle,
         15.0,
-        &format!("{ink} transform=\"rotate(-90 {x:.1} {y:.1})\""),
+        &format!("fill=\"{jet}\" font-weight=\"bold\" transform=\"rotate(-90 {x:.1} {y:.1})\""),
         "T (GeV)",
     );
 }

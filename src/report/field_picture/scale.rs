@@ -1,6 +1,7 @@
 //! The colour scale, and what lines and arrows mean.
 
 use super::palette::{colour, hex};
+use super::panel::arrow_of_light;
 use super::svg::{Anchor, Svg, label, ticks};
 use super::{GAP, GRID, ORIGIN, PANEL, Scene};
 
@@ -26,8 +27,8 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
             hex(colour(share))
         ));
     }
-    let level = |temperature: f64| bottom - height * temperature / scene.largest_temperature_gev;
-    for tick in ticks([0.0, scene.largest_temperature_gev], 5.0) {
+    let level = |temperature: f64| bottom - height * scene.share(temperature);
+    for tick in ticks(scene.range_gev, 5.0) {
         let y = level(tick);
         svg.line([x + WIDTH, y], [x + WIDTH + 5.0, y], &line);
         svg.text(
@@ -44,7 +45,21 @@ pub(super) fn draw(svg: &mut Svg, scene: &Scene) {
         [x + WIDTH, end],
         "stroke=\"#ffffff\" stroke-width=\"1.8\" stroke-dasharray=\"6 3.5\"",
     );
+    svg.text(
+        [x + WIDTH + 9.0, bottom + 4.5],
+        Anchor::Start,
+        13.0,
+        &ink,
+        &format!("\u{2264} {}", label(scene.range_gev[0])),
+    );
     legend(svg, scene, [x, bottom + 44.0]);
+}
+
+/// The largest round speed whose arrow is no longer than the longest drawn.
+fn round_speed(largest: f64) -> f64 {
+    const SPEEDS: [f64; 6] = [0.8, 0.6, 0.4, 0.2, 0.1, 0.05];
+    let fits = |speed: &f64| *speed <= largest;
+    SPEEDS.into_iter().find(fits).unwrap_or(largest)
 }
 
 fn legend(svg: &mut Svg, scene: &Scene, [x, y]: [f64; 2]) {
@@ -68,12 +83,19 @@ fn legend(svg: &mut Svg, scene: &Scene, [x, y]: [f64; 2]) {
     y += 34.0;
     if scene.largest_speed > 0.0 {
         chip(svg, y);
+        let speed = round_speed(scene.largest_speed);
+        let length = speed * arrow_of_light(scene);
+        let (back, across) = (0.32 * length, 0.19 * length);
         svg.push(&format!(
-            "<path d=\"M{:.1} {:.1}h24m-7.5 -4.5l7.5 4.5l-7.5 4.5\" fill=\"none\" stroke=\"#ffffff\" stroke-width=\"1.4\" stroke-linecap=\"round\" stroke-linejoin=\"round\"/>",
-            x + 5.0,
-            y - 4.0
+            "<path d=\"M{:.1} {:.1}h{length:.1}m{:.1} {:.1}l{back:.1} {across:.1}l{:.1} {across:.1}\" fill=\"none\" stroke=\"#ffffff\" stroke-width=\"1.2\" stroke-linecap=\"round\" stroke-linejoin=\"round\"/>",
+            x + 17.0 - 0.5 * length,
+            y - 4.0,
+            -back,
+            -across,
+            -back,
         ));
-        svg.text([x + 42.0, y], Anchor::Start, 13.0, &ink, "flow");
+        let words = format!("flow, {} c", label(speed));
+        svg.text([x + 42.0, y], Anchor::Start, 13.0, &ink, &words);
         y += 34.0;
     }
     chip(svg, y);

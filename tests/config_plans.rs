@@ -48,6 +48,7 @@ fn examples() -> Vec<PathBuf> {
     let mut files: Vec<_> = fs::read_dir(folder)
         .unwrap()
         .map(|entry| entry.unwrap().path())
+        .filter(|path| path.extension().is_some_and(|ending| ending == "json"))
         .collect();
     files.sort();
     assert!(files.len() >= 4);

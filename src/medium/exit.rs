@@ -25,7 +25,16 @@ pub struct Exit {
 /// field was made for); `None` where the ray never is in the medium.
 pub fn exit(field: &dyn TemperatureField, ray: &Ray, end_temperature_gev: f64) -> Option<Exit> {
     let stretch = field.stretch(ray, end_temperature_gev)?;
-    let is_hot = |l_fm: f64| field.fluid(ray.at(l_fm)).temperature_gev >= end_temperature_gev;
+    let is_hot = |l_fm: f64| {
+        let point_fm = ray.at(l_fm);
+        let temperature_gev = if point_fm[0] > 0.0 {
+            field.fluid(point_fm).temperature_gev
+        } else {
+            // At the hard vertex all rapidities meet; the ray tells into which of them a parton is born.
+            field.local(ray, l_fm).temperature_gev
+        };
+        temperature_gev >= end_temperature_gev
+    };
     let steps = 2 * stretch.cells;
     let step_fm = (stretch.last_fm - stretch.first_fm) / steps as f64;
     let distance = |place: usize| match place {

@@ -91,3 +91,94 @@ pub fn births(
         OriginSettings::List { file } => Box::new(read_place_list(file)?),
     })
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::medium::Nucleus;
+
+    /// A field whose first slice is long along `long` (0: x, 1: y) and centred at x = `centre_fm`.
+    fn field(long: usize, centre_fm: f64) -> FieldData {
+        let axis: Vec<f64> = (-20..=20).map(|step| 0.5 * f64::from(step)).collect();
+        let widths = if long == 0 { [4.0, 2.5] } else { [2.5, 4.0] };
+        let slice = axis.iter().flat_map(|x| {
+            axis.iter().map(move |y| {
+                let (x, y) = ((x - centre_fm) / widths[0], y / widths[1]);
+                0.4 * (-0.5 * (x * x + y * y)).exp() as f32
+            })
+        });
+        let slice: Vec<f32> = slice.collect();
+        FieldData {
+            tau_fm: vec![0.6, 1.0],
+            x_fm: axis.clone(),
+            y_fm: axis,
+            temperature_gev: [slice.clone(), slice].concat(),
+            ..FieldData::default()
+        }
+    }
+
+    fn outcome(
+        settings: &OriginSettings,
+        data: Option<&FieldData>,
+        placement: Placement,
+    ) -> (Result<Box<dyn Origin>, BirthError>, Vec<String>) {
+        let mut warnings = Vec::new();
+        let view = FieldView {
+            data,
+            tabulated: None,
+            placement,
+            end_temperature_gev: 0.15,
+        };
+        (births(settings, &view, &mut warnings), warnings)
+    }
+
+    #[test]
+    fn overlap_warns_where_the_field_lies_otherwise() {
+        let overlap = OriginSettings::Overlap {
+            nucleus: Nucleus::named("Pb208").unwrap(),
+            impact_parameter_fm: 8.0,
+        };
+        let warnings =
+            |data: &FieldData, placement| outcome(&overlap, Some(data), placement).1.join(" ");
+        // The overlap is long along y.
+        assert_eq!(warnings(&field(1, 0.0), Placement::IDENTITY), "");
+        assert!(warnings(&field(0, 0.0), Placement::IDENTITY).contains("rotation_rad"));
+        let quarter = Placement::new(std::f64::consts::FRAC_PI_2, [0.0; 2]);
+        assert_eq!(warnings(&field(0, 0.0), quarter), "");
+        assert!(warnings(&field(1, 2.0), Placement::IDENTITY).contains("shift_fm"));
+        assert_eq!(
+            warnings(&field(1, 2.0), Placement::new(0.0, [-2.0, 0.0])),
+            ""
+        );
+        // A uniform field has no plane.
+        let (births, warnings) = outcome(&overlap, None, Placement::IDENTITY);
+        assert!(births.is_ok() && warnings.is_empty());
+    }
+
+    #[test]
+    fn kinds_that_the_field_cannot_serve_are_refused() {
+        let refused = |settings: &OriginSettings, data| {
+            let Err(error) = outcome(settings, data, Placement::IDENTITY).0 else {
+                panic!("must be refused");
+            };
+            error.to_string()
+        };
+        let weighted = OriginSettings::FieldWeighted { power: 4.0 };
+        assert!(refused(&weighted, None).starts_with("medium.origin: this field is the same"));
+        assert!(
+            outcome(&weighted, Some(&field(0, 0.0)), Placement::IDENTITY)
+                .0
+                .is_ok()
+        );
+        let (density, data) = (OriginSettings::CollisionDensity, field(0, 0.0));
+        assert!(refused(&density, Some(&data)).contains("no collision_density"));
+        assert!(refused(&density, None).contains("no collision_density"));
+        let list = OriginSettings::List {
+            file: "no-such-list.csv".into(),
+        };
+        assert!(
+            refused(&list, None)
+                .starts_with("medium.origin.file: no-such-list.csv: cannot be read")
+        );
+    }
+}

@@ -13,7 +13,7 @@ use spindrift::random::{Key, Purpose, Stream};
 
 use rand::RngExt;
 
-const END_TEMPERATURE_GEV: f64 = 0.15;
+pub const END_TEMPERATURE_GEV: f64 = 0.15;
 /// 80^(1/4), the amplitude of check-values.
 fn amplitude() -> f64 {
     80.0_f64.sqrt().sqrt()
@@ -25,7 +25,7 @@ fn uniform(stream: &mut Stream, low: f64, high: f64) -> f64 {
 }
 
 /// A ray born inside the light cone of the hard vertex, or (one in eight) at it, often towards the beam.
-fn random_ray(stream: &mut Stream) -> Ray {
+pub fn random_ray(stream: &mut Stream) -> Ray {
     let azimuth = uniform(stream, 0.0, std::f64::consts::TAU);
     let nz = uniform(stream, -1.0, 1.0).powi(3);
     let sine = (1.0 - nz * nz).sqrt();
@@ -79,7 +79,7 @@ fn demo_field() -> Grid {
     Grid::new(read_field(path.as_ref()).unwrap(), END_TEMPERATURE_GEV)
 }
 
-fn all_fields() -> Vec<(String, Box<dyn TemperatureField>)> {
+pub fn all_fields() -> Vec<(String, Box<dyn TemperatureField>)> {
     let mut fields: Vec<(String, Box<dyn TemperatureField>)> = vec![
         ("brick".into(), Box::new(Brick::new(0.3, 4.0))),
         ("demo".into(), Box::new(demo_field())),

@@ -7,7 +7,9 @@
 use std::sync::Arc;
 
 use spindrift::medium::Medium;
-use spindrift::medium::field::{FieldData, Fluid, Grid, Local, Ray, Stretch, TemperatureField};
+use spindrift::medium::field::{
+    FieldData, Fluid, Grid, Local, Radial, Ray, Stretch, TemperatureField,
+};
 use spindrift::medium::trace::{Outcome, Trace};
 use spindrift::qcd::HBAR_C_GEV_FM;
 
@@ -240,6 +242,64 @@ fn the_longitudinal_solution_on_a_grid() {
         last = error;
     }
     assert!(last < 5e-3);
+}
+
+/// The radial solution read from a grid, against the same in closed form: with eight times the engine's cells the error
+/// falls with the square of the spacing.
+#[test]
+fn the_radial_solution_on_a_grid() {
+    const Q2: f64 = 1.0 / (4.3 * 4.3);
+    let flow = Flow {
+        temperature_gev: |[tau, x, y, _]| {
+            let (a, b) = (Q2 * tau * tau, Q2 * (x * x + y * y));
+            let spread = 1.0 + 2.0 * (a + b) + (a - b) * (a - b);
+            80.0_f64.sqrt().sqrt() * HBAR_C_GEV_FM * (4.0 * Q2 / (tau * spread)).cbrt()
+        },
+        velocity: |[tau, x, y, _]| {
+            let (a, b) = (Q2 * tau * tau, Q2 * (x * x + y * y));
+            let slope = 2.0 * Q2 * tau / (1.0 + 2.0 * (a + b) + (a - b) * (a - b)).sqrt();
+            [slope * x, slope * y, 0.0]
+        },
+        first_tau_fm: 1.0,
+    };
+    let exact = || Radial::new(80.0_f64.sqrt().sqrt(), Q2.sqrt(), 1.0);
+    for with_flow in [false, true] {
+        let settings = settings(with_flow);
+        let fine = Medium::new(
+            &settings,
+            Arc::new(Refined {
+                field: exact(),
+                factor: 8,
+            }),
+        );
+        let errors = [0.5, 0.25, 0.125].map(|spacing_fm| {
+            let grid = Refined {
+                field: flow.grid(spacing_fm, false, true),
+                factor: 8,
+            };
+            let medium = Medium::new(&settings, Arc::new(grid));
+            let (mut on_grid, mut expected) = (Trace::default(), Trace::default());
+            let mut errors = Vec::new();
+            for ray in rays() {
+                let outcomes = [
+                    medium.trace(medium.field(), &ray, 100.0, &mut on_grid),
+                    fine.trace(fine.field(), &ray, 100.0, &mut expected),
+                ];
+                if outcomes == [Outcome::Medium { left_hot: false }; 2] {
+                    let (found, wanted) = (&on_grid.path, &expected.path);
+                    errors.push(found.qhat_integral_gev2() / wanted.qhat_integral_gev2() - 1.0);
+                }
+            }
+            assert!(errors.len() > 20, "{}", errors.len());
+            root_mean_square(&errors)
+        });
+        println!("flow {with_flow}: {errors:?}");
+        for pair in errors.windows(2) {
+            let order = (pair[0] / pair[1]).log2();
+            assert!((1.6..2.4).contains(&order), "order {order:.2}");
+        }
+        assert!(errors[2] < 3e-3);
+    }
 }
 
 /// A uniform fluid in constant motion: I0 = qhat L (u^tau cosh(eta - y) ...)/E in closed form. For a transverse ray

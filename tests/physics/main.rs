@@ -6,6 +6,7 @@
 
 mod collinear;
 mod conservation;
+mod exits;
 mod fields;
 mod first_branching;
 mod grids;

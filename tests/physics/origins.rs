@@ -50,9 +50,9 @@ fn chi_square_ratio(counts: &[u64], probabilities: &[f64]) -> f64 {
     }
     if rest_expected >= LEAST_EXPECTED {
         add(rest, rest_expected);
-    } else {
-        // So few are left to chance: twice the least bin is beyond ten to minus six of Poisson's law.
-        assert!(rest < 3.0 * LEAST_EXPECTED, "{rest} for {rest_expected}");
+    } else if rest > 4.0 * LEAST_EXPECTED {
+        // Four times what could be a bin is beyond 10^-6 of Poisson's law.
+        return f64::INFINITY;
     }
     let freedom: f64 = bins - 1.0;
     let spread = 2.0 / (9.0 * freedom);
@@ -154,10 +154,15 @@ fn overlaps_have_the_integrals_and_moments_of_the_table() {
         let off = plane.ellipticity - number(&case, "ellipticity");
         assert!(off.abs() < allowed, "{case}: {off:e}");
         assert!(plane.centroid_fm.iter().all(|place| place.abs() < 1e-9));
-        if number(&case, "impact_parameter_fm") > 0.0 {
-            assert!(plane.event_plane_rad.abs() < 1e-6, "{plane:?}");
-        } else {
+        // The short axis: along the impact parameter, but for light nuclei that barely meet across it.
+        let across = number(&case, "mean_x2_fm2") > number(&case, "mean_y2_fm2");
+        if number(&case, "impact_parameter_fm") == 0.0 {
             assert!(plane.ellipticity < 1e-9);
+        } else if across {
+            let off = plane.event_plane_rad.abs() - std::f64::consts::FRAC_PI_2;
+            assert!(off.abs() < 1e-6, "{plane:?}");
+        } else {
+            assert!(plane.event_plane_rad.abs() < 1e-6, "{plane:?}");
         }
     }
 }
@@ -444,6 +449,17 @@ fn slices_are_taken_at_mid_rapidity() {
         cold.to_string()
             .contains("nowhere above the end temperature of 0.6 GeV")
     );
+    // A field that is hot in next to nothing must not be searched for ever; just a little more, and it is drawn.
+    let barely = |end| FieldWeighted::new(plain.clone(), 4.0, end, Placement::IDENTITY);
+    assert!(matches!(
+        barely(0.5 / 1.0009),
+        Err(OriginError::Cold { .. })
+    ));
+    let peak = barely(0.5 / 1.0011).unwrap();
+    for id in 0..1000 {
+        let [x, y] = peak.draw(&mut Key::event(1, id).stream(Purpose::ORIGIN));
+        assert!((x - 0.25).abs() < 0.01 && (y - 0.5).abs() < 0.01);
+    }
     for power in [0.0, -1.0, f64::NAN, 21.0] {
         let refused = FieldWeighted::new(plain.clone(), power, 0.15, Placement::IDENTITY);
         assert!(matches!(refused, Err(OriginError::Power(_))));

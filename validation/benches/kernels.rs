@@ -7,7 +7,9 @@ use divan::{Bencher, black_box};
 use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::medium::field::{Brick, Grid, Longitudinal, Radial, Ray, TemperatureField};
+use spindrift::medium::origin::{Nucleus, Origin, Overlap};
 use spindrift::medium::trace::Trace;
+use spindrift::medium::transport::{Transport, TransportTable};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
@@ -178,6 +180,43 @@ fn trace(bencher: Bencher, field: &str) {
         medium.trace(medium.field(), ray, 100.0, &mut trace);
         trace.path.qhat_integral_gev2()
     });
+}
+
+/// A birth place in a peripheral overlap of two heavy nuclei.
+#[divan::bench]
+fn overlap_draw(bencher: Bencher) {
+    let nucleus = Nucleus::named("Pb208").expect("the table holds it");
+    let overlap = Overlap::new(&nucleus, 8.0).expect("these nuclei meet");
+    let mut stream = Key::event(1, 1).stream(Purpose::ORIGIN);
+    bencher.bench_local(|| overlap.draw(&mut stream));
+}
+
+/// The transport coefficient at a temperature and an energy.
+#[divan::bench(args = ["cubic", "thermal", "table"])]
+fn transport(bencher: Bencher, kind: &str) {
+    let kind = match kind {
+        "cubic" => TransportKind::Cubic { coefficient: 4.0 },
+        "thermal" => TransportKind::Thermal {
+            alpha_s: 0.3,
+            flavours: 3,
+        },
+        _ => {
+            let axis = |first: f64, step: f64| (0..30).map(move |k| first + step * f64::from(k));
+            let values = axis(0.1, 0.02).flat_map(|t| axis(1.0, 10.0).map(move |e| t * t * t * e));
+            let table = TransportTable::new(
+                axis(0.1, 0.02).collect(),
+                axis(1.0, 10.0).collect(),
+                values.collect(),
+            );
+            TransportKind::Table(table.expect("the axes rise"))
+        }
+    };
+    let transport = Transport::new(&TransportSettings {
+        kind,
+        stated_for: ColourCharge::Gluon,
+        flow: true,
+    });
+    bencher.bench_local(|| transport.gluon_qhat_gev2_per_fm(black_box(0.31), black_box(40.0)));
 }
 
 /// The field at one point of a path.

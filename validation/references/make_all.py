@@ -13,10 +13,10 @@ import numpy as np
 
 import quadrature
 
-QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching", "thermal_transport")
+QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching", "thermal_transport", "thermal")
 # Of these some cases are recomputed; each names them and offers cases(chosen).
 PARTLY = ("rate_effects", "radial_paths", "path_effects", "expanding_scaling")
-SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower")
+SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower", "overlap")
 # Numbers are stored to 12 digits, long columns to 8.
 RELATIVE_TOLERANCE, ABSOLUTE_TOLERANCE = 1e-7, 1e-9
 # Twice what linear interpolation costs in a stored curve.

@@ -17,6 +17,7 @@ TOLERANCE = 1e-6
 MARGINAL_POINTS = 121
 
 
+@functools.cache
 def volume(radius, diffuseness):
     """int d^3r/(1 + exp((r - R)/a)) = -8 pi a^3 Li_3(-exp(R/a))."""
     return float(-8 * mpmath.pi * mpmath.mpf(diffuseness) ** 3 * mpmath.polylog(3, -mpmath.exp(mpmath.mpf(radius) / diffuseness)))
@@ -76,11 +77,13 @@ def thickness(radius, diffuseness):
 def interpolant(radius, diffuseness):
     """ln T as a Chebyshev series in s on pieces, checked."""
     exact = thickness(radius, diffuseness)
-    edges = np.linspace(0.0, 2.0 * radius + 60.0 * diffuseness, 61)
-    pieces = [np.polynomial.chebyshev.Chebyshev.interpolate(lambda s: np.log(exact(s)), 24, [a, b]) for a, b in zip(edges[:-1], edges[1:])]
+    last = 2.0 * radius + 60.0 * diffuseness
+    # Light nuclei have a cusp at the centre, a share exp(-R/a) of their density: pieces are graded towards it.
+    edges = np.concatenate([[0.0], diffuseness * np.geomspace(1e-3, 0.5, 10), np.linspace(diffuseness, last, 60)])
+    pieces = [np.polynomial.chebyshev.Chebyshev.interpolate(lambda s: np.log(exact(s)), 20, [a, b]) for a, b in zip(edges[:-1], edges[1:])]
 
     def at(s):
-        place = np.minimum((s / edges[1]).astype(int), len(pieces) - 1)
+        place = np.minimum(np.searchsorted(edges, s, side="right") - 1, len(pieces) - 1)
         value = np.empty_like(s)
         for number, piece in enumerate(pieces):
             inside = place == number
@@ -89,8 +92,7 @@ def interpolant(radius, diffuseness):
 
     probe = np.linspace(0.0, edges[-2], 200)
     worst = np.max(np.abs(at(probe) / exact(probe) - 1.0))
-    # Light nuclei have a cusp at the centre, a share exp(-R/a) of their density.
-    assert worst < 1e-7, worst
+    assert worst < 1e-8, worst
     return at
 
 
@@ -134,6 +136,7 @@ def polar(nucleus, b):
     return [sums[0], sums[1] / sums[0], sums[2] / sums[0]]
 
 
+@functools.cache
 def integral_by_form_factor(nucleus, b):
     """int T T d^2s = int k dk/(2 pi) J_0(k b) F(k)^2, F the form factor of the profile (three-dimensional transform)."""
     radius, diffuseness = nucleus

@@ -14,6 +14,18 @@ pub use longitudinal::Longitudinal;
 pub use placed::{Placed, placed};
 pub use radial::Radial;
 
+/// The larger of two numbers; the second where the first is NaN. (One instruction, which `f64::max` is not.)
+#[inline(always)]
+pub(crate) fn larger(one: f64, other: f64) -> f64 {
+    if one > other { one } else { other }
+}
+
+/// The smaller of two numbers; the second where the first is NaN.
+#[inline(always)]
+pub(crate) fn smaller(one: f64, other: f64) -> f64 {
+    if one < other { one } else { other }
+}
+
 /// The longitudinal part of p.u/E of a light-like parton along a ray in a fluid at rest in Milne coordinates,
 /// (t - nz z)/tau = sqrt(1 - nz^2) cosh(eta - y), y the ray's rapidity; at tau = 0 its value along a ray from the hard
 /// vertex, sqrt(1 - nz^2).
@@ -31,7 +43,7 @@ pub(crate) fn milne_flow_factor([t, _, _, z]: [f64; 4], nz: f64, tau_fm: f64) ->
 /// Milne proper time sqrt(t^2 - z^2) of a point `[t, x, y, z]`, fm.
 #[inline]
 pub(crate) fn proper_time_fm([t, _, _, z]: [f64; 4]) -> f64 {
-    (t * t - z * z).max(0.0).sqrt()
+    larger(t * t - z * z, 0.0).sqrt()
 }
 
 /// Whether a point lies on the light cone of the hard vertex but not at the vertex: the flow factor is unbounded there.

@@ -19,7 +19,7 @@ pub enum OriginError {
     },
     /// Nuclei that pass each other.
     #[error(
-        "impact parameter {value_fm} fm; allowed: 0 to {most_fm} fm (beyond, these nuclei do not meet)"
+        "impact parameter {value_fm} fm; allowed: 0 to {most_fm:.2} fm (beyond, these nuclei do not meet)"
     )]
     ImpactParameter {
         /// What was asked for.
@@ -37,7 +37,7 @@ pub enum OriginError {
     Uniform,
     /// A field that starts cold.
     #[error(
-        "the field's first slice is nowhere above the end temperature of {end_temperature_gev} GeV at mid-rapidity (largest: {largest_gev} GeV), so \"field-weighted\" has no distribution; use \"collision-density\", \"overlap\" or \"list\", or start the field later"
+        "the field's first slice is nowhere above the end temperature of {end_temperature_gev} GeV at mid-rapidity (its largest temperature is {largest_gev} GeV; 0.1 % above is the least), so \"field-weighted\" has no distribution; use \"collision-density\", \"overlap\" or \"list\""
     )]
     Cold {
         /// Temperature in GeV below which the medium has no effect.

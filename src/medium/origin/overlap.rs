@@ -1,7 +1,7 @@
 //! The density of binary collisions of two smooth nuclei, T(|s + b/2|) T(|s - b/2|), the impact parameter b along +x
 //! (Miller, Reygers, Sanders & Steinberg 2007, nucl-ex/0701025). T is that of [`super::thickness`].
 //!
-//! Sampling: a grid of cells covers both nuclei up to [`TAIL_DIFFUSENESSES`] beyond their radii, with less than 1e-9 of
+//! Sampling: a grid of cells covers both nuclei up to 25 diffusenesses beyond their radii, with less than 1e-9 of
 //! the density outside. Since T falls with the distance from the centre of its nucleus, the product of its values at the
 //! points of a cell nearest to either centre bounds the density in the cell: a piecewise-constant envelope, from which
 //! rejection draws exactly.

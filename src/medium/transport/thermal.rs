@@ -17,6 +17,7 @@
 
 use std::f64::consts::PI;
 
+use crate::numerics::elementary::ln;
 use crate::qcd::{C_A, HBAR_C_GEV_FM};
 
 /// Riemann's zeta at 3 (Apery's constant).
@@ -66,7 +67,7 @@ impl Thermal {
             return 0.0;
         }
         let cube = temperature_gev * temperature_gev * temperature_gev;
-        self.scale * cube * libm::log(energy / temperature_gev)
+        self.scale * cube * ln(energy / temperature_gev)
     }
 
     /// The value grows with E, and with T up to c e^(-1/3), c = 2 E T^2/m_D^2: beyond, its value there bounds it.

@@ -2,15 +2,19 @@
 
 use std::ops::Range;
 
+use super::super::{larger, smaller};
+
 /// A strictly increasing axis.
 #[derive(Clone, Debug)]
 pub(super) struct Axis {
     points: Vec<f64>,
-    /// Start and inverse width of each cell.
+    /// Start and inverse width of each cell, and a last one that no coordinate reaches.
     cells: Vec<[f64; 2]>,
     /// Equal bins over the whole axis a unit of the coordinate.
     bins_per_unit: f64,
     bins: f64,
+    last_bin: f64,
+    first: f64,
     /// The cell of the left edge of each bin; empty for an even axis, whose bins are its cells.
     guide: Vec<u32>,
     /// Most points inside a bin.
@@ -50,11 +54,14 @@ impl Axis {
         Axis {
             bins_per_unit: bins as f64 / span,
             bins: bins as f64,
+            last_bin: (bins - 1) as f64,
+            first: points[0],
             guide,
             most_steps,
             cells: points
                 .windows(2)
                 .map(|pair| [pair[0], 1.0 / (pair[1] - pair[0])])
+                .chain([[f64::INFINITY, 0.0]])
                 .collect(),
             points,
         }
@@ -86,29 +93,22 @@ impl Axis {
     /// Cell and place in it (0 to 1) of a coordinate; beyond an end, the end itself.
     #[inline(always)]
     pub(super) fn locate(&self, coordinate: f64) -> (usize, f32) {
-        let scaled = ((coordinate - self.points[0]) * self.bins_per_unit)
-            .max(0.0)
-            .min(self.bins);
-        // SAFETY: max and min leave a number from 0 to the last bin, also of NaN, and there are at most 2^16 bins or as
-        // many as the axis has cells.
-        let bin = unsafe { scaled.min(self.bins - 1.0).to_int_unchecked::<i64>() };
+        let scaled = (coordinate - self.first) * self.bins_per_unit;
+        let scaled = smaller(larger(scaled, 0.0), self.bins);
+        // SAFETY: this leaves a number from 0 to the last bin, also of NaN, and there are at most 2^16 bins or as many as
+        // the axis has cells.
+        let bin = unsafe { smaller(scaled, self.last_bin).to_int_unchecked::<i64>() };
         if self.guide.is_empty() {
             return (bin as usize, (scaled - bin as f64) as f32);
         }
         let mut cell = self.guide[bin as usize] as usize;
-        let last = self.cells.len() - 1;
         for _ in 0..self.most_steps {
-            // Without a branch: whether the next cell has begun is not to be foreseen.
-            let next = (cell + 1).min(last);
-            cell = if self.cells[next][0] <= coordinate {
-                next
-            } else {
-                cell
-            };
+            // A sum, not a branch: whether the next cell has begun is not to be foreseen.
+            cell += usize::from(self.cells[cell + 1][0] <= coordinate);
         }
         let [start, inverse_width] = self.cells[cell];
         let place = (coordinate - start) * inverse_width;
-        (cell, place.clamp(0.0, 1.0) as f32)
+        (cell, smaller(larger(place, 0.0), 1.0) as f32)
     }
 }
 

@@ -1,6 +1,6 @@
 //! Where a gridded field reaches the end temperature, so that only that part is kept and looked at.
 
-use super::super::Ray;
+use super::super::{Ray, larger, smaller};
 use super::Frame;
 
 /// First and last hot index of x and of y in each plane of tau: all that must be known of a field before its hot part
@@ -171,15 +171,3 @@ fn between<const N: usize>([low, high]: &[[f64; N]; 2], start: f64, speed: f64) 
 
 /// A speed at which nothing gets anywhere.
 const STANDSTILL: f64 = 1e-200;
-
-/// The larger of two numbers; the second where the first is NaN. (One instruction, which `f64::max` is not.)
-#[inline(always)]
-fn larger(one: f64, other: f64) -> f64 {
-    if one > other { one } else { other }
-}
-
-/// The smaller of two numbers; the second where the first is NaN.
-#[inline(always)]
-fn smaller(one: f64, other: f64) -> f64 {
-    if one < other { one } else { other }
-}

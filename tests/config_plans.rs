@@ -844,7 +844,7 @@ proptest! {
     /// A mutated config gives a plan or errors that can be told, and never a panic.
     #[test]
     fn mutated_configs_never_panic(
-        example in 0..5_usize,
+        example in 0..=examples().len(),
         mutations in prop::collection::vec(mutation(), 1..4),
     ) {
         let text = match examples().get(example) {

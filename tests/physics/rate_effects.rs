@@ -109,7 +109,7 @@ fn every_effect_on_rates_has_a_case() {
     ];
     assert_eq!(kinds, BTreeSet::from(expected));
     let unknown: Vec<_> = kinds.iter().filter(|kind| model(kind).is_none()).collect();
-    println!("not in the registry: {unknown:?}");
+    assert!(unknown.is_empty(), "not in the registry: {unknown:?}");
 }
 
 /// The first case of effects, and whether it limits angles.

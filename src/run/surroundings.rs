@@ -5,10 +5,8 @@ use std::sync::Arc;
 
 use super::assemble::AssembleError;
 use super::origins::{FieldView, births};
-use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{
-    Brick, FieldData, Grid, Longitudinal, Radial, TemperatureField, placed,
-};
+use crate::files::field_file::{FieldFileError, LoadedGrid, read_grid};
+use crate::medium::field::{FieldData, Grid, TemperatureField, analytic, placed};
 use crate::medium::origin::{Origin, Placement, TemperatureSlice};
 use crate::medium::{FieldKind, FieldSettings, MediumSettings, OriginSettings};
 
@@ -46,7 +44,10 @@ pub fn surroundings(
     file: Option<&Path>,
     warnings: &mut Vec<String>,
 ) -> Result<Surroundings, AssembleError> {
-    let (data, tabulated) = read(settings, file)?;
+    let (loaded, tabulated) = read(settings, file)?;
+    let (grid, data) = loaded
+        .map(|loaded| (loaded.grid, loaded.first_slice))
+        .unzip();
     let view = view(settings, data.as_ref(), tabulated.as_ref());
     let origin = births(&settings.origin, &view, warnings).map_err(|problem| match file {
         None => AssembleError::Births(problem),
@@ -60,7 +61,7 @@ pub fn surroundings(
         warnings.extend(data.warnings.iter().map(named));
     }
     Ok(Surroundings {
-        field: temperature_field(&settings.field, data),
+        field: temperature_field(&settings.field, grid),
         origin: Some(Arc::from(origin)),
     })
 }
@@ -73,9 +74,10 @@ pub fn one_more(settings: &MediumSettings, file: &Path) -> Result<Surroundings, 
     if births_follow_the_field(&settings.origin) {
         return surroundings(settings, Some(file), &mut Vec::new());
     }
-    let (data, _) = read(settings, Some(file))?;
+    let (loaded, _) = read(settings, Some(file))?;
+    let grid = loaded.map(|loaded| loaded.grid);
     Ok(Surroundings {
-        field: temperature_field(&settings.field, data),
+        field: temperature_field(&settings.field, grid),
         origin: None,
     })
 }
@@ -83,11 +85,15 @@ pub fn one_more(settings: &MediumSettings, file: &Path) -> Result<Surroundings, 
 fn read(
     settings: &MediumSettings,
     file: Option<&Path>,
-) -> Result<(Option<FieldData>, Option<TemperatureSlice>), FieldFileError> {
-    let data = file.map(read_field).transpose()?;
+) -> Result<(Option<LoadedGrid>, Option<TemperatureSlice>), FieldFileError> {
+    let (end, hold) = (
+        settings.field.end_temperature_gev,
+        settings.field.hold_before_start,
+    );
+    let loaded = file.map(|file| read_grid(file, end, hold)).transpose()?;
     let is_radial = matches!(settings.field.kind, FieldKind::Radial { .. });
     let tabulated = is_radial.then(|| first_slice(&settings.field));
-    Ok((data, tabulated))
+    Ok((loaded, tabulated))
 }
 
 fn view<'a>(
@@ -125,29 +131,9 @@ fn first_slice(settings: &FieldSettings) -> TemperatureSlice {
     TemperatureSlice::tabulated(rim_fm, SLICE_POINTS, at)
 }
 
-fn temperature_field(
-    settings: &FieldSettings,
-    data: Option<FieldData>,
-) -> Arc<dyn TemperatureField> {
-    let hold = settings.hold_before_start;
-    let field: Arc<dyn TemperatureField> = match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Arc::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
-        FieldKind::Radial {
-            amplitude,
-            q_per_fm,
-            start_fm,
-        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
-        FieldKind::Grid { .. } => {
-            let data = data.expect("a grid's file was read before");
-            Arc::new(Grid::held(data, settings.end_temperature_gev, hold))
-        }
-    };
-    placed(field, settings.rotation_rad, settings.shift_fm)
+fn temperature_field(settings: &FieldSettings, grid: Option<Grid>) -> Arc<dyn TemperatureField> {
+    match grid {
+        Some(grid) => placed(Arc::new(grid), settings.rotation_rad, settings.shift_fm),
+        None => analytic(settings).expect("a grid's file was read before"),
+    }
 }

@@ -5,6 +5,7 @@
 
 pub mod collinear_expansion;
 pub mod multiple_soft;
+pub mod scaled_plane;
 pub mod scaled_table;
 pub mod single_hard;
 

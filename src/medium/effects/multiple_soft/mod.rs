@@ -1,4 +1,4 @@
-//! Induced emission by multiple soft scattering: numerics of the spectrum and its table.
+//! Induced emission by multiple soft scattering: the spectrum and its table.
 
 pub mod spectrum;
 pub mod table;

@@ -1,4 +1,4 @@
-//! Induced emission by a single hard scattering: numerics of the spectrum and its table.
+//! Induced emission by a single hard scattering: the spectrum and its table.
 
 pub mod spectrum;
 pub mod table;

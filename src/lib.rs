@@ -17,6 +17,7 @@ pub mod event;
 pub mod files;
 pub mod medium;
 pub mod numerics;
+pub mod parameters;
 pub mod qcd;
 pub mod random;
 pub mod report;

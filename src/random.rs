@@ -37,6 +37,8 @@ impl Purpose {
     pub const INDUCED_VERTEX: Purpose = Purpose::named("induced-vertex");
     /// The hard process.
     pub const SOURCE: Purpose = Purpose::named("source");
+    /// Place of the hard process.
+    pub const ORIGIN: Purpose = Purpose::named("origin");
 
     /// The purpose of a name.
     pub const fn named(name: &str) -> Purpose {

@@ -14,7 +14,7 @@ use spindrift::event::{
 use spindrift::files::event_file::{
     AuditReport, EventFileWriter, Kinematics, Provenance, WriteOptions, audit,
 };
-use spindrift::run::{EventGenerator, EventTooLarge, Sink, run};
+use spindrift::run::{EventError, EventGenerator, Sink, run};
 
 const EVENTS: i64 = 300;
 const SPOILED: i64 = 217;
@@ -38,7 +38,7 @@ impl<F: Fn(&mut EventBlock, usize) + Sync> EventGenerator for Spoiler<F> {
         worker: &mut FakeCounters,
         id: i64,
         out: &mut EventBlock,
-    ) -> Result<(), EventTooLarge> {
+    ) -> Result<(), EventError> {
         let first_row = out.partons.len();
         self.inner.generate(worker, id, out)?;
         if id == SPOILED {
@@ -60,6 +60,7 @@ fn audit_of(
     let generator = Spoiler {
         inner: FakeGenerator {
             history: provenance.history,
+            exits: provenance.medium_exit,
             ..FakeGenerator::default()
         },
         spoil,
@@ -185,6 +186,104 @@ fn summaries_are_checked_too() {
         block.events.last_mut().unwrap().field = 5;
     });
     assert!(field.findings[0].to_string().contains("field 5"));
+}
+
+#[test]
+fn exits_from_the_medium_are_checked() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("spoiled.h5");
+    /// The place of a parton that left the medium far from its birth.
+    fn left(block: &EventBlock, first: usize) -> usize {
+        let place = |row: &usize| {
+            let [from, to] = [
+                block.partons[*row].birth_fm[0],
+                block.exits[*row].place_fm[0],
+            ];
+            to - from > 0.5
+        };
+        (first..block.partons.len()).find(place).unwrap()
+    }
+    type Offence = fn(&mut EventBlock, usize);
+    let offences: [(&str, Offence); 10] = [
+        ("is no final parton", |block, first| {
+            block.exits[first].temperature_gev = 0.15;
+        }),
+        ("without one", |block, _| {
+            block.events.last_mut().unwrap().field = -1;
+        }),
+        ("in part, or not finite", |block, first| {
+            let row = left(block, first);
+            block.exits[row].velocity[1] = f32::NAN;
+        }),
+        ("in part, or not finite", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[3] = f32::INFINITY;
+        }),
+        ("is cold", |block, first| {
+            let row = left(block, first);
+            block.exits[row].temperature_gev = 0.0;
+        }),
+        ("before its birth", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[0] = block.partons[row].birth_fm[0].next_down();
+        }),
+        ("does not lie on its path", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[0] += 1e-5;
+        }),
+        ("does not lie on its path", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[1] += 1e-5;
+        }),
+        ("does not lie on its path", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[2] -= 1e-5;
+        }),
+        ("does not lie on its path", |block, first| {
+            let row = left(block, first);
+            block.exits[row].place_fm[3] += 1e-5;
+        }),
+    ];
+    for history in [History::Final, History::Full] {
+        let provenance = Provenance {
+            history,
+            medium_exit: true,
+            ..provenance(EVENTS)
+        };
+        let sound = audit_of(&path, &provenance, |_, _| {});
+        assert!(sound.is_clean(), "{:?}", sound.findings);
+        for (what, offence) in offences {
+            let report = audit_of(&path, &provenance, offence);
+            let said: Vec<String> = report.findings.iter().map(ToString::to_string).collect();
+            assert!(!said.is_empty(), "{what} went unnoticed");
+            let expected = |text: &String| {
+                text.starts_with(&format!("event {SPOILED} row")) && text.contains(what)
+            };
+            assert!(said.iter().all(expected), "{what}: {said:?}");
+        }
+    }
+}
+
+/// Directions are as good as the momenta that are kept, and no better.
+#[test]
+fn exits_fit_rounded_momenta() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("rounded.h5");
+    let rounded = Provenance {
+        momentum_bits: Some(12),
+        medium_exit: true,
+        ..provenance(EVENTS)
+    };
+    let report = audit_of(&path, &rounded, |_, _| {});
+    let about_exits = |text: &String| text.contains("exit");
+    let said: Vec<String> = report.findings.iter().map(ToString::to_string).collect();
+    assert!(!said.iter().any(about_exits), "{said:?}");
+    let spoiled = audit_of(&path, &rounded, |block, first| {
+        for (row, exit) in block.partons.iter().zip(&mut block.exits).skip(first) {
+            exit.place_fm[1] += 1e-3 * (exit.place_fm[0] - row.birth_fm[0]);
+        }
+    });
+    assert!(!spoiled.is_clean());
 }
 
 #[test]

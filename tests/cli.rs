@@ -463,7 +463,10 @@ fn the_multiplicity_and_its_error_are_those_of_the_events() {
 #[test]
 fn quiet_is_quiet() {
     let desk = Desk::new();
-    let output = desk.run(&["generate", desk.config(&brick()), "--quiet"]);
+    // Weak enough to stay inside the regime of its effect: warnings are told even then.
+    let mut config = brick();
+    config["medium"]["transport"]["qhat_GeV2_per_fm"] = 0.05.into();
+    let output = desk.run(&["generate", desk.config(&config), "--quiet"]);
     assert_ends(&output, DONE);
     assert_eq!((stdout(&output), stderr(&output)), ("", ""));
 }
@@ -592,6 +595,73 @@ fn report_verbs_read_what_was_made() {
     assert_ends(&desk.run(&["field", "check", "run.h5"]), BAD_REQUEST);
 }
 
+/// Exits from the medium stand in further columns, are audited and shown; all else of the content stays.
+#[test]
+fn exits_from_the_medium_are_kept_where_asked_for() {
+    let desk = Desk::new();
+    let mut config = brick();
+    let before = {
+        assert_ends(&desk.run(&["generate", desk.config(&config)]), DONE);
+        partons(&desk.path("run.h5"))
+    };
+    let plain = desk.run(&["show", "run.h5", "--event", "7"]);
+    assert!(!stdout(&plain).contains("exit t"), "{}", stdout(&plain));
+    config["record"] = json!({ "medium_exit": true });
+    let mut digests = Vec::new();
+    for threads in ["1", "2"] {
+        let name = desk.config(&config);
+        let arguments = ["generate", name, "--overwrite", "--threads", threads];
+        assert_ends(&desk.run(&arguments), DONE);
+        digests.push(content_digest(&desk.path("run.h5")));
+    }
+    assert_eq!(digests[0], digests[1]);
+    let file = EventFile::open(&desk.path("run.h5")).unwrap();
+    assert!(file.provenance().medium_exit);
+    let (mut rows, mut left) = (Vec::new(), 0);
+    for block in file.blocks() {
+        let block = block.unwrap();
+        assert_eq!(block.exits.len(), block.partons.len());
+        for exit in block.exits.iter().filter(|exit| !exit.is_none()) {
+            left += 1;
+            // The brick's length; it is as hot at its end as before, and at rest.
+            assert!((exit.place_fm[0] - 3.0).abs() < 1e-5, "{exit:?}");
+            assert_eq!((exit.temperature_gev, exit.velocity), (0.3, [0.0; 3]));
+        }
+        rows.extend(block.partons);
+    }
+    assert_eq!(rows, before);
+    assert!(left >= 300, "{left} exits");
+    let summary = desk.run(&["show", "run.h5"]);
+    assert!(
+        stdout(&summary).contains("left the medium"),
+        "{}",
+        stdout(&summary)
+    );
+    let event = desk.run(&["show", "run.h5", "--event", "7"]);
+    assert!(stdout(&event).contains("exit t"), "{}", stdout(&event));
+}
+
+/// Without a medium the columns are there, empty, with a warning before the start.
+#[test]
+fn there_is_no_exit_from_the_vacuum() {
+    let desk = Desk::new();
+    let mut config = vacuum();
+    config["record"] = json!({ "medium_exit": true });
+    let output = desk.run(&["generate", desk.config(&config)]);
+    assert_ends(&output, DONE);
+    assert!(
+        stderr(&output).contains("no medium to leave"),
+        "{}",
+        stderr(&output)
+    );
+    content_digest(&desk.path("run.h5"));
+    let file = EventFile::open(&desk.path("run.h5")).unwrap();
+    let exits = file.blocks().flat_map(|block| block.unwrap().exits);
+    let exits: Vec<_> = exits.collect();
+    assert_eq!(exits.len(), file.parton_count());
+    assert!(exits.iter().all(|exit| exit.is_none()));
+}
+
 #[test]
 fn a_reader_that_leaves_early_ends_the_writer_quietly() {
     let desk = Desk::new();
@@ -633,6 +703,7 @@ fn the_forecast_of_bytes_is_near_the_size_of_the_file() {
     let desk = Desk::new();
     let mut config = brick();
     config["events"] = json!(10_000);
+    config["record"] = json!({ "medium_exit": true });
     let name = desk.config(&config);
     assert_ends(&desk.run(&["generate", name]), DONE);
     let made = fs::metadata(desk.path("run.h5")).unwrap().len() as f64;

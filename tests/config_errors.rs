@@ -57,6 +57,32 @@ const NAMES: &[Case] = &[
     (18, r#"{ "kind": "collinear-expansion", "window": 1.0 }"#, UnusedKey, "medium.effects[0].window", r#"set phase to "rescattering""#),
     (18, r#"{ "kind": "collinear-expansion", "phase": "interference", "windw": 1.0 }"#, UnknownKey, "medium.effects[0].windw", r#"did you mean "window"?"#),
     (18, r#"{ "phase": "interference" }"#, MissingKey, "medium.effects[0].kind", r#"add "kind""#),
+    (14, r#""field": { "kind": "radial", "q_per_fm": 0.25, "start_fm": 0.6 },"#, MissingKey, "medium.field.amplitude", r#"required with kind "radial""#),
+    (14, r#""field": { "kind": "radial", "amplitude": 9, "q_per_fm": 0.25, "start_fm": 0.6, "temperature_GeV": 0.4 },"#, UnusedKey, "medium.field.temperature_GeV", r#"set kind to "brick" or "longitudinal""#),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4.0, "pre_equilibrium": "hold" },"#, UnusedKey, "medium.field.pre_equilibrium", "remove it"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4.0, "files": "*.h5" },"#, UnusedKey, "medium.field.files", r#"set kind to "grid""#),
+    (14, r#""field": { "kind": "grid" },"#, MissingKey, "medium.field.file", r#"add "file" or "files""#),
+    (14, r#""field": { "kind": "grid", "file": "Cargo.toml", "files": ["Cargo.toml"], "events_per_field": 5 },"#, UnusedKey, "medium.field.files", "remove one of them"),
+    (14, r#""field": { "kind": "grid", "files": ["Cargo.toml"] },"#, MissingKey, "medium.field.events_per_field", r#"required with kind "grid" and "files""#),
+    (14, r#""field": { "kind": "grid", "file": "Cargo.toml", "events_per_field": 5 },"#, UnusedKey, "medium.field.events_per_field", r#"add "files""#),
+    (14, r#""field": { "kind": "grid", "flies": ["Cargo.toml"], "events_per_field": 5 },"#, UnknownKey, "medium.field.flies", r#"did you mean "files"?"#),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4.0, "rotation": 0.1 },"#, UnknownKey, "medium.field.rotation", r#"did you mean "rotation_rad"?"#),
+    (15, r#""origin": { "kind": "fixed", "file": "places.csv" },"#, UnusedKey, "medium.origin.file", r#"set kind to "list""#),
+    (15, r#""origin": { "kind": "list" },"#, MissingKey, "medium.origin.file", r#"required with kind "list""#),
+    (15, r#""origin": { "kind": "overlap", "impact_parameter_fm": 7 },"#, MissingKey, "medium.origin.nucleus", r#"required with kind "overlap""#),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb208" },"#, MissingKey, "medium.origin.impact_parameter_fm", r#"required with kind "overlap""#),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "custom", "diffuseness_fm": 0.5, "impact_parameter_fm": 7 },"#, MissingKey, "medium.origin.radius_fm", r#"required with kind "overlap" and nucleus "custom""#),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb208", "radius_fm": 6.6, "impact_parameter_fm": 7 },"#, UnusedKey, "medium.origin.radius_fm", r#"set nucleus to "custom""#),
+    (15, r#""origin": { "kind": "fixed", "power": 4 },"#, UnusedKey, "medium.origin.power", r#"set kind to "field-weighted""#),
+    (16, r#""transport": { "kind": "thermal", "alpha_s": 0.3, "for": "gluon" },"#, UnusedKey, "medium.transport.for", r#"set kind to "cubic" or "constant" or "table""#),
+    (16, r#""transport": { "kind": "thermal" },"#, MissingKey, "medium.transport.alpha_s", r#"required with kind "thermal""#),
+    (16, r#""transport": { "kind": "table", "for": "quark" },"#, MissingKey, "medium.transport.file", r#"required with kind "table""#),
+    (16, r#""transport": { "kind": "cubic", "coefficient": 4.0, "for": "gluon", "flavours": 3 },"#, UnusedKey, "medium.transport.flavours", r#"set kind to "thermal""#),
+    (18, r#"{ "kind": "singular-enhancement" }"#, MissingKey, "medium.effects[0].factor", r#"required with kind "singular-enhancement" and law "constant""#),
+    (18, r#"{ "kind": "singular-enhancement", "law": "path" }"#, MissingKey, "medium.effects[0].slope_per_GeV2", r#"and law "path""#),
+    (18, r#"{ "kind": "singular-enhancement", "law": "path", "slope_per_GeV2": 1, "factor": 1 }"#, UnusedKey, "medium.effects[0].factor", r#"set law to "constant""#),
+    (18, r#"{ "kind": "broadening", "law": "path" }"#, UnusedKey, "medium.effects[0].law", r#"set kind to "singular-enhancement""#),
+    (21, r#""record": { "exit": true }"#, UnknownKey, "record.exit", "remove it"),
 ];
 
 #[rustfmt::skip]
@@ -80,6 +106,15 @@ const TYPES: &[Case] = &[
     (14, r#""field": { "kind": "grid", "file": "" },"#, WrongType, "medium.field.file", "write such a value"),
     (14, r#""field": { "kind": "grid", "file": 3 },"#, WrongType, "medium.field.file", "write such a value"),
     (18, r#""collinear-expansion""#, WrongType, "medium.effects[0]", r#"{ "kind": "collinear-expansion" }"#),
+    (14, r#""field": { "kind": "grid", "files": 3, "events_per_field": 5 },"#, WrongType, "medium.field.files", "write such a value"),
+    (14, r#""field": { "kind": "grid", "files": "", "events_per_field": 5 },"#, WrongType, "medium.field.files", "write such a value"),
+    (14, r#""field": { "kind": "grid", "files": ["Cargo.toml", 3], "events_per_field": 5 },"#, WrongType, "medium.field.files[1]", "write such a value"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "shift_fm": 1 },"#, WrongType, "medium.field.shift_fm", "write such a value"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "shift_fm": [0, "1"] },"#, WrongType, "medium.field.shift_fm[1]", "without quotes"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "rotation_rad": "90 deg" },"#, WrongType, "medium.field.rotation_rad", "write a number"),
+    (15, r#""origin": "collision-density","#, WrongType, "medium.origin", r#"{ "kind": "collision-density" }"#),
+    (16, r#""transport": { "kind": "thermal", "alpha_s": 0.3, "flavours": 2.5 },"#, WrongType, "medium.transport.flavours", "write an integer"),
+    (21, r#""record": { "medium_exit": 1 }"#, WrongType, "record.medium_exit", "write such a value"),
     (19, r#"], "limit_to_small_angles": "yes""#, WrongType, "medium.limit_to_small_angles", "write such a value"),
 ];
 
@@ -109,6 +144,18 @@ const RANGES: &[Case] = &[
     (14, r#""field": { "kind": "brick", "temperature_GeV": 300, "length_fm": 4.0 },"#, OutOfRange, "medium.field.temperature_GeV", "0.3 for 300 MeV"),
     (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 0 },"#, OutOfRange, "medium.field.length_fm", "in this range"),
     (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "end_temperature_GeV": 150 },"#, OutOfRange, "medium.field.end_temperature_GeV", "0.3 for 300 MeV"),
+    (14, r#""field": { "kind": "radial", "amplitude": 0, "q_per_fm": 0.25, "start_fm": 0.6 },"#, OutOfRange, "medium.field.amplitude", "in this range"),
+    (14, r#""field": { "kind": "radial", "amplitude": 9, "q_per_fm": 0, "start_fm": 0.6 },"#, OutOfRange, "medium.field.q_per_fm", "in this range"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "rotation_rad": 90 },"#, OutOfRange, "medium.field.rotation_rad", "angles are in radians"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "shift_fm": [1] },"#, OutOfRange, "medium.field.shift_fm", "as many values"),
+    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "shift_fm": [0, 1e4] },"#, OutOfRange, "medium.field.shift_fm[1]", "in this range"),
+    (14, r#""field": { "kind": "grid", "files": [], "events_per_field": 5 },"#, OutOfRange, "medium.field.files", "as many values"),
+    (14, r#""field": { "kind": "grid", "files": ["Cargo.toml"], "events_per_field": 0 },"#, OutOfRange, "medium.field.events_per_field", "in this range"),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb208", "impact_parameter_fm": -7 },"#, OutOfRange, "medium.origin.impact_parameter_fm", "in this range"),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "custom", "radius_fm": 66, "diffuseness_fm": 0.5, "impact_parameter_fm": 7 },"#, OutOfRange, "medium.origin.radius_fm", "in this range"),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "custom", "radius_fm": 6.6, "diffuseness_fm": 0, "impact_parameter_fm": 7 },"#, OutOfRange, "medium.origin.diffuseness_fm", "in this range"),
+    (16, r#""transport": { "kind": "thermal", "alpha_s": 1 },"#, OutOfRange, "medium.transport.alpha_s", "in this range"),
+    (16, r#""transport": { "kind": "thermal", "alpha_s": 0.3, "flavours": 7 },"#, OutOfRange, "medium.transport.flavours", "in this range"),
     (15, r#""origin": { "kind": "fixed", "x_fm": 1e4 },"#, OutOfRange, "medium.origin.x_fm", "in this range"),
     (16, r#""transport": { "kind": "cubic", "coefficient": -4.0, "for": "gluon" },"#, OutOfRange, "medium.transport.coefficient", "in this range"),
     (18, r#"{ "kind": "collinear-expansion", "phase": "rescattering", "window": 1.2418 }"#, OutOfRange, "medium.effects[0].window", "in this range"),
@@ -127,6 +174,13 @@ const CHOICES: &[Case] = &[
     (10, r#""coupling": { "argument": "kt" },"#, UnknownChoice, "coupling.argument", "choose one of these"),
     (12, r#""shower": { "kernels": ["q-gq"] },"#, UnknownChoice, "shower.kernels[0]", r#"did you mean "q-qg"?"#),
     (16, r#""transport": { "kind": "cubic", "coefficient": 4.0, "for": "gluons" },"#, UnknownChoice, "medium.transport.for", r#"did you mean "gluon"?"#),
+    (12, r#""shower": { "ordering": "angle" },"#, UnknownChoice, "shower.ordering", r#"did you mean "angular"?"#),
+    (14, r#""field": { "kind": "radail", "amplitude": 9, "q_per_fm": 0.25, "start_fm": 0.6 },"#, UnknownChoice, "medium.field.kind", r#"did you mean "radial"?"#),
+    (14, r#""field": { "kind": "longitudinal", "temperature_GeV": 0.4, "start_fm": 0.6, "pre_equilibrium": "held" },"#, UnknownChoice, "medium.field.pre_equilibrium", r#"did you mean "hold"?"#),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb", "impact_parameter_fm": 7 },"#, UnknownChoice, "medium.origin.nucleus", r#"did you mean "Pb208"?"#),
+    (15, r#""origin": { "kind": "field-weigthed" },"#, UnknownChoice, "medium.origin.kind", r#"did you mean "field-weighted"?"#),
+    (16, r#""transport": { "kind": "termal", "alpha_s": 0.3 },"#, UnknownChoice, "medium.transport.kind", r#"did you mean "thermal"?"#),
+    (18, r#"{ "kind": "brodening" }"#, UnknownChoice, "medium.effects[0].kind", r#"did you mean "broadening"?"#),
     (18, r#"{ "kind": "colinear-expansion" }"#, UnknownChoice, "medium.effects[0].kind", r#"did you mean "collinear-expansion"?"#),
 ];
 
@@ -137,15 +191,7 @@ const LATER_VERSION: &[Case] = &[
     (5, r#""kind": "annihilation", "parton": "u","#, Planned, "source.kind", "later version"),
     (5, r#""kind": "spectrum", "power": 5,"#, Planned, "source.kind", "later version"),
     (5, r#""kind": "lhef", "file": "hard.lhe","#, Planned, "source.kind", "later version"),
-    (12, r#""shower": { "ordering": "angular" },"#, Planned, "shower.ordering", "later version"),
     (12, r#""shower": { "quark_masses": "massive" },"#, Planned, "shower.quark_masses", "later version"),
-    (14, r#""field": { "kind": "radial", "amplitude": 3.0, "q_per_fm": 0.2, "start_fm": 0.6 },"#, Planned, "medium.field.kind", "later version"),
-    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "pre_equilibrium": "hold" },"#, Planned, "medium.field.pre_equilibrium", "later version"),
-    (14, r#""field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "rotation_rad": 0.1 },"#, Planned, "medium.field.rotation_rad", "later version"),
-    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb" },"#, Planned, "medium.origin.kind", "later version"),
-    (16, r#""transport": { "kind": "thermal", "for": "gluon" },"#, Planned, "medium.transport.kind", "later version"),
-    (18, r#"{ "kind": "broadening" }"#, Planned, "medium.effects[0].kind", "later version"),
-    (18, r#"{ "kind": "collinear-expansion", "pair_production": true }"#, Planned, "medium.effects[0].pair_production", "later version"),
     (21, r#""record": { "variation_weights": "f32" }"#, Planned, "record.variation_weights", "later version"),
 ];
 
@@ -161,6 +207,12 @@ const ACROSS_KEYS: &[Case] = &[
     (12, r#""shower": { "kernels": ["q-qg", "g-gg", "q-qg"] },"#, Conflict, "shower.kernels[2]", "remove it"),
     (14, r#""field": { "kind": "brick", "temperature_GeV": 0.15, "length_fm": 4.0 },"#, Conflict, "medium.field.end_temperature_GeV", "lower end_temperature_GeV"),
     (14, r#""field": { "kind": "longitudinal", "temperature_GeV": 0.4, "start_fm": 0.6, "end_temperature_GeV": 0 },"#, Conflict, "medium.field.end_temperature_GeV", "raise end_temperature_GeV"),
+    (14, r#""field": { "kind": "radial", "amplitude": 900, "q_per_fm": 0.25, "start_fm": 0.6 },"#, Conflict, "medium.field.amplitude", "lower amplitude"),
+    (14, r#""field": { "kind": "radial", "amplitude": 0.1, "q_per_fm": 0.25, "start_fm": 0.6 },"#, Conflict, "medium.field.end_temperature_GeV", "raise amplitude"),
+    (14, r#""field": { "kind": "radial", "amplitude": 9, "q_per_fm": 0.25, "start_fm": 0.6, "end_temperature_GeV": 0 },"#, Conflict, "medium.field.end_temperature_GeV", "raise end_temperature_GeV"),
+    (15, r#""origin": { "kind": "field-weighted" },"#, Conflict, "medium.origin.kind", r#"set kind to "fixed""#),
+    (15, r#""origin": { "kind": "collision-density" },"#, Conflict, "medium.origin.kind", r#"set kind to "fixed""#),
+    (15, r#""origin": { "kind": "overlap", "nucleus": "Pb208", "impact_parameter_fm": 50 },"#, Conflict, "medium.origin.impact_parameter_fm", "lower impact_parameter_fm"),
     (18, r#"{ "kind": "collinear-expansion" }, { "kind": "collinear-expansion", "phase": "soft-gradient" }"#, Conflict, "medium.effects[1]", "remove one"),
 ];
 
@@ -168,6 +220,13 @@ const ACROSS_KEYS: &[Case] = &[
 const FILES: &[Case] = &[
     (14, r#""field": { "kind": "grid", "file": "no-such-file.h5" },"#, InputFile, "medium.field.file", "correct the path"),
     (14, r#""field": { "kind": "grid", "file": "/" },"#, InputFile, "medium.field.file", "correct the path"),
+    (14, r#""field": { "kind": "grid", "files": ["Cargo.toml", "no-such-file.h5"], "events_per_field": 5 },"#, InputFile, "medium.field.files[1]", "correct the path"),
+    (14, r#""field": { "kind": "grid", "files": "no-such-folder/*.h5", "events_per_field": 5 },"#, InputFile, "medium.field.files", "correct the pattern"),
+    (14, r#""field": { "kind": "grid", "files": "**/*.h5", "events_per_field": 5 },"#, InputFile, "medium.field.files", "correct the pattern"),
+    (14, r#""field": { "kind": "grid", "files": "[", "events_per_field": 5 },"#, InputFile, "medium.field.files", "correct the pattern"),
+    (15, r#""origin": { "kind": "list", "file": "no-such-file.csv" },"#, InputFile, "medium.origin.file", "correct the path"),
+    (16, r#""transport": { "kind": "table", "file": "no-such-file.csv", "for": "quark" },"#, InputFile, "medium.transport.file", "correct the path"),
+    (16, r#""transport": { "kind": "table", "file": "Cargo.toml", "for": "quark" },"#, InputFile, "medium.transport.file", "correct the file"),
 ];
 
 #[test]
@@ -279,6 +338,29 @@ fn rules_of_the_pair() {
         assert_eq!(errors.errors.len(), 1, "{errors}");
         assert_eq!(errors.errors[0].path, path);
         assert!(errors.errors[0].remedy.contains(remedy), "{errors}");
+    }
+}
+
+/// The power needs a field that differs from place to place.
+#[test]
+fn the_power_of_the_temperature_has_a_range() {
+    let with_power = |power: &str| {
+        let field =
+            r#""field": { "kind": "radial", "amplitude": 3, "q_per_fm": 0.25, "start_fm": 0.6 },"#;
+        let origin = format!(r#""origin": {{ "kind": "field-weighted", "power": {power} }},"#);
+        let mut lines: Vec<_> = VALID.lines().collect();
+        (lines[13], lines[14]) = (field, &origin);
+        read(&lines.join("\n"))
+    };
+    with_power("4").unwrap();
+    for power in ["0", "-4", "21"] {
+        let errors = with_power(power).expect_err(power);
+        assert_eq!(errors.errors.len(), 1, "{errors}");
+        assert_eq!(errors.errors[0].path, "medium.origin.power");
+        assert_eq!(
+            (errors.errors[0].problem, errors.errors[0].line),
+            (OutOfRange, Some(15))
+        );
     }
 }
 

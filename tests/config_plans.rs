@@ -2,11 +2,17 @@
 
 use std::fs;
 use std::path::{Path, PathBuf};
+use std::sync::LazyLock;
 
 use proptest::prelude::*;
 use serde_json::{Value, json};
 use spindrift::config::{History, Overrides, RunPlan, load_text, schema};
-use spindrift::medium::{ColourCharge, EffectSettings, FieldKind, PhaseSettings, TransportKind};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::effects::{MODELS, Model};
+use spindrift::medium::{
+    ColourCharge, FieldKind, FieldSettings, Nucleus, OriginSettings, TransportKind,
+};
+use spindrift::parameters::Form;
 use spindrift::qcd::{CouplingLaw, Loops, ScaleArgument, Species};
 use spindrift::shower::{FlavourOpening, Kernels, Lifetime, Ordering, ZRange};
 use spindrift::source::{Direction, SourceSettings};
@@ -92,8 +98,10 @@ fn defaults_of_the_medium() {
     assert!(medium.limit_to_small_angles && medium.transport.flow);
     assert_eq!(medium.min_energy_gev, 2.0);
     assert_eq!(medium.transport.stated_for, ColourCharge::Gluon);
-    let EffectSettings::CollinearExpansion { phase } = &medium.effects[0];
-    assert_eq!(*phase, PhaseSettings::Interference);
+    let effect = &medium.effects[0];
+    assert_eq!(effect.model.kind, "collinear-expansion");
+    assert_eq!(effect.values.word("phase"), "interference");
+    assert!(!effect.values.flag("pair_production"));
 }
 
 #[test]
@@ -171,8 +179,10 @@ fn every_value_reaches_the_plan() {
     );
     assert_eq!(medium.transport.stated_for, ColourCharge::Quark);
     assert!(!medium.transport.flow && !medium.limit_to_small_angles);
-    let EffectSettings::CollinearExpansion { phase } = &medium.effects[0];
-    assert_eq!(*phase, PhaseSettings::Rescattering { window: 0.9 });
+    assert_eq!(
+        medium.effects[0],
+        PhaseSettings::Rescattering { window: 0.9 }.into()
+    );
     assert_eq!(medium.min_energy_gev, 3.0);
     assert_eq!(plan.record.history, History::Full);
     assert_eq!(
@@ -196,8 +206,13 @@ fn nulls_and_empty_lists_that_mean_the_default() {
     config["variations"] = json!([]);
     config["$schema"] = json!("schema.json");
     assert_eq!(plan(&config.to_string()).digest, plan(LEAST).digest);
-    let held = json!({ "field": { "kind": "brick", "temperature_GeV": 0.3, "length_fm": 4, "pre_equilibrium": "none" } });
-    plan(&least_with_medium(held).to_string());
+    let plain = plan(&least_with_medium(json!({ "field": field("radial") })).to_string());
+    let mut spelt = field("radial");
+    spelt["pre_equilibrium"] = json!("none");
+    spelt["rotation_rad"] = json!(-0.0);
+    spelt["shift_fm"] = json!([0, 0]);
+    let spelt = plan(&least_with_medium(json!({ "field": spelt })).to_string());
+    assert_eq!(plain.digest, spelt.digest);
 }
 
 #[test]
@@ -214,6 +229,42 @@ fn warnings() {
     warned(
         &least_with_medium(json!({ "min_energy_GeV": 200 })),
         "never acts",
+    );
+    let turned = |change: Value| {
+        let mut field = field("brick");
+        field
+            .as_object_mut()
+            .unwrap()
+            .extend(change.as_object().unwrap().clone());
+        least_with_medium(json!({ "field": field }))
+    };
+    warned(&turned(json!({ "rotation_rad": 1 })), "makes no difference");
+    warned(
+        &turned(json!({ "shift_fm": [0, 1] })),
+        "makes no difference",
+    );
+    // T at the centre: 0.1973 * 9 * 0.5^(2/3) * 0.6^(-1/3) * (1 + 0.0225)^(-2/3).
+    let hot = json!({ "kind": "radial", "amplitude": 9, "q_per_fm": 0.25, "start_fm": 0.6 });
+    warned(
+        &least_with_medium(json!({ "field": hot })),
+        "1.3069 GeV in the centre",
+    );
+    let twice = |one: &str, other: &str| {
+        let with = |kind: &str| {
+            let mut all = effects().into_iter();
+            all.find(|effect| effect["kind"] == kind).unwrap()
+        };
+        least_with_medium(json!({ "effects": [with(one), with(other)] }))
+    };
+    warned(
+        &twice("collinear-expansion", "singular-enhancement"),
+        "collinear-expansion and singular-enhancement both describe branchings that the medium induces",
+    );
+    let apart = plan(&twice("collinear-expansion", "drag").to_string());
+    assert_eq!(apart.warnings, [""; 0]);
+    warned(
+        &least_with("record", json!({ "medium_exit": true })),
+        "no medium to leave",
     );
     let expanding =
         json!({ "field": { "kind": "longitudinal", "temperature_GeV": 0.4, "start_fm": 0.6 } });
@@ -260,13 +311,163 @@ fn the_digest_holds_the_content_of_the_field_file_not_its_name() {
     let one = plan("one.h5");
     assert_eq!(one.inputs.len(), 1);
     assert_eq!(one.inputs[0].path, folder.path().join("configs/../one.h5"));
-    let FieldKind::Grid { file } = &one.medium.as_ref().unwrap().field.kind else {
+    let FieldKind::Grid { files, .. } = &one.medium.as_ref().unwrap().field.kind else {
         panic!()
     };
-    assert_eq!(*file, one.inputs[0].path);
+    assert_eq!(files[..], [one.inputs[0].path.clone()]);
     assert_eq!(one.resolved["medium"]["field"]["file"], "../one.h5");
     assert_eq!(one.digest, plan("same.h5").digest);
     assert_ne!(one.digest, plan("other.h5").digest);
+}
+
+/// In a list the order counts, a pattern is sorted, and the digest sees content and order alone.
+#[test]
+fn the_digest_of_many_fields_sees_their_order() {
+    let folder = tempfile::tempdir().unwrap();
+    for (name, content) in [("b.h5", "B"), ("a.h5", "A"), ("c.h5", "A")] {
+        fs::write(folder.path().join(name), content).unwrap();
+    }
+    let plan = |files: Value| {
+        let text = several_fields(files).to_string();
+        load_text(
+            &text,
+            &folder.path().join("run.json"),
+            &Overrides::default(),
+        )
+        .unwrap()
+    };
+    let names = |plan: &RunPlan| -> Vec<String> {
+        let FieldKind::Grid {
+            files,
+            events_per_field,
+        } = &plan.medium.as_ref().unwrap().field.kind
+        else {
+            panic!()
+        };
+        assert_eq!(*events_per_field, 1000);
+        let inputs: Vec<_> = plan.inputs.iter().map(|input| &input.path).collect();
+        assert_eq!(files.iter().collect::<Vec<_>>(), inputs);
+        let name = |path: &PathBuf| path.file_name().unwrap().to_str().unwrap().to_owned();
+        files.iter().map(name).collect()
+    };
+    let listed = plan(json!(["b.h5", "a.h5"]));
+    assert_eq!(names(&listed), ["b.h5", "a.h5"]);
+    assert_eq!(
+        listed.resolved["medium"]["field"]["files"],
+        json!(["b.h5", "a.h5"])
+    );
+    let turned = plan(json!(["a.h5", "b.h5"]));
+    assert_ne!(listed.digest, turned.digest);
+    let matched = plan(json!("[ab].h5"));
+    assert_eq!(names(&matched), ["a.h5", "b.h5"]);
+    assert_eq!(matched.digest, turned.digest);
+    assert_eq!(plan(json!(["b.h5", "c.h5"])).digest, listed.digest);
+    assert_ne!(plan(json!("*.h5")).digest, turned.digest);
+}
+
+#[test]
+fn places_and_tables_belong_to_the_digest() {
+    let folder = tempfile::tempdir().unwrap();
+    let digest = |places: &str, qhat: &str| {
+        fs::write(folder.path().join("places.csv"), places).unwrap();
+        let table = format!("temperature_GeV,qhat_GeV2_per_fm\n0.1,0.1\n0.5,{qhat}\n");
+        fs::write(folder.path().join("qhat.csv"), table).unwrap();
+        let medium = json!({
+            "origin": { "kind": "list", "file": "places.csv" },
+            "transport": { "kind": "table", "file": "qhat.csv", "for": "gluon" },
+        });
+        let text = least_with_medium(medium).to_string();
+        let path = folder.path().join("run.json");
+        let plan = load_text(&text, &path, &Overrides::default()).unwrap();
+        assert_eq!(plan.inputs.len(), 2);
+        plan.digest
+    };
+    let base = digest("1", "8");
+    assert_ne!(digest("2", "8"), base);
+    assert_ne!(digest("1", "9"), base);
+    assert_eq!(digest("1", "8"), base);
+}
+
+/// Every value of the new kinds reaches the plan.
+#[test]
+fn kinds_of_the_medium_reach_the_plan() {
+    let medium = |change: Value| plan(&least_with_medium(change).to_string()).medium.unwrap();
+    let mut radial = field("radial");
+    radial["pre_equilibrium"] = json!("hold");
+    radial["rotation_rad"] = json!(0.5);
+    radial["shift_fm"] = json!([1, -2]);
+    let found = medium(json!({ "field": radial, "origin": origin("field-weighted") }));
+    assert_eq!(
+        found.field,
+        FieldSettings {
+            kind: FieldKind::Radial {
+                amplitude: 3.0,
+                q_per_fm: 0.25,
+                start_fm: 0.6
+            },
+            end_temperature_gev: 0.15,
+            hold_before_start: true,
+            rotation_rad: 0.5,
+            shift_fm: [1.0, -2.0],
+        }
+    );
+    assert_eq!(found.origin, OriginSettings::FieldWeighted { power: 4.0 });
+    let found = medium(json!({ "field": field("grid"), "origin": origin("collision-density") }));
+    assert_eq!(found.origin, OriginSettings::CollisionDensity);
+    assert!(!found.field.hold_before_start);
+    let overlap = |nucleus| OriginSettings::Overlap {
+        nucleus,
+        impact_parameter_fm: 7.0,
+    };
+    let custom = Nucleus {
+        radius_fm: 6.6,
+        diffuseness_fm: 0.55,
+    };
+    assert_eq!(
+        medium(json!({ "origin": origin("overlap") })).origin,
+        overlap(custom)
+    );
+    let lead = json!({ "kind": "overlap", "nucleus": "Pb208", "impact_parameter_fm": 7 });
+    let found = medium(json!({ "origin": lead })).origin;
+    assert_eq!(found, overlap(Nucleus::named("Pb208").unwrap()));
+    let found = medium(json!({ "origin": origin("list") })).origin;
+    assert_eq!(
+        found,
+        OriginSettings::List {
+            file: input("places.csv").into()
+        }
+    );
+    let thermal = json!({ "kind": "thermal", "alpha_s": 0.3, "flavours": 2, "flow": false });
+    let found = medium(json!({ "transport": thermal })).transport;
+    assert_eq!(
+        found.kind,
+        TransportKind::Thermal {
+            alpha_s: 0.3,
+            flavours: 2
+        }
+    );
+    assert!(!found.flow);
+    let found = medium(json!({ "transport": transport("thermal") })).transport;
+    assert_eq!(
+        found.kind,
+        TransportKind::Thermal {
+            alpha_s: 0.3,
+            flavours: 3
+        }
+    );
+    let found = medium(json!({ "transport": transport("table") })).transport;
+    let TransportKind::Table(table) = &found.kind else {
+        panic!()
+    };
+    assert_eq!(table.qhat_gev2_per_fm(), [0.1, 8.0]);
+    assert_eq!(found.stated_for, ColourCharge::Gluon);
+    let angular = plan(&least_with("shower", json!({ "ordering": "angular" })).to_string());
+    assert_eq!(angular.shower.ordering, Ordering::Angular);
+    let record = plan(&least_with("record", json!({})).to_string()).record;
+    assert!(!record.medium_exit);
+    let mut config = least_with_medium(json!({}));
+    config["record"] = json!({ "medium_exit": true });
+    assert!(plan(&config.to_string()).record.medium_exit);
 }
 
 #[test]
@@ -278,6 +479,119 @@ fn a_resolved_config_is_a_config_that_resolves_to_itself() {
         assert_eq!(again.digest, first.digest);
         assert_eq!(format!("{:?}", again.shower), format!("{:?}", first.shower));
     }
+}
+
+fn words(section: &Value, key: &str) -> Vec<String> {
+    let words = section["properties"][key]["enum"].as_array().unwrap();
+    words
+        .iter()
+        .map(|word| word.as_str().unwrap().to_owned())
+        .collect()
+}
+
+/// The kinds of a section of the medium, found in the schema.
+fn words_of(section: &str) -> impl Iterator<Item = String> {
+    words(
+        &schema()["properties"]["medium"]["properties"][section],
+        "kind",
+    )
+    .into_iter()
+}
+
+fn field(kind: &str) -> Value {
+    match kind {
+        "brick" => json!({ "kind": kind, "temperature_GeV": 0.3, "length_fm": 4 }),
+        "longitudinal" => json!({ "kind": kind, "temperature_GeV": 0.4, "start_fm": 0.6 }),
+        "radial" => json!({ "kind": kind, "amplitude": 3, "q_per_fm": 0.25, "start_fm": 0.6 }),
+        "grid" => json!({ "kind": kind, "file": "demo-data/lumpy-fireball.h5" }),
+        _ => panic!("a new kind of field: {kind}"),
+    }
+}
+
+fn several_fields(files: Value) -> Value {
+    let field = json!({ "kind": "grid", "files": files, "events_per_field": 1000,
+        "rotation_rad": 0.5, "shift_fm": [1, -2] });
+    least_with_medium(json!({ "field": field }))
+}
+
+fn origin(kind: &str) -> Value {
+    match kind {
+        "fixed" => json!({ "kind": kind, "x_fm": 1, "y_fm": -2 }),
+        "overlap" => {
+            json!({ "kind": kind, "nucleus": "custom", "radius_fm": 6.6, "diffuseness_fm": 0.55,
+            "impact_parameter_fm": 7 })
+        }
+        "field-weighted" | "collision-density" => json!({ "kind": kind }),
+        "list" => json!({ "kind": kind, "file": input("places.csv") }),
+        _ => panic!("a new kind of origin: {kind}"),
+    }
+}
+
+fn transport(kind: &str) -> Value {
+    match kind {
+        "cubic" => json!({ "kind": kind, "coefficient": 4, "for": "quark" }),
+        "constant" => json!({ "kind": kind, "qhat_GeV2_per_fm": 1, "for": "gluon" }),
+        "thermal" => json!({ "kind": kind, "alpha_s": 0.3 }),
+        "table" => json!({ "kind": kind, "file": input("qhat.csv"), "for": "gluon" }),
+        _ => panic!("a new kind of transport: {kind}"),
+    }
+}
+
+/// The path of a small input file.
+fn input(name: &str) -> String {
+    static FOLDER: LazyLock<tempfile::TempDir> = LazyLock::new(|| {
+        let folder = tempfile::tempdir().unwrap();
+        let write = |name: &str, text: &str| fs::write(folder.path().join(name), text).unwrap();
+        write("places.csv", "x_fm,y_fm,weight\n0,0,1\n1,2,0.5\n");
+        write(
+            "qhat.csv",
+            "temperature_GeV,qhat_GeV2_per_fm\n0.1,0.1\n0.5,8\n",
+        );
+        folder
+    });
+    FOLDER.path().join(name).to_str().unwrap().to_owned()
+}
+
+/// Every model of the registry with every word of its choices.
+fn effects() -> Vec<Value> {
+    let mut effects = Vec::new();
+    for model in MODELS {
+        let mut worlds = vec![vec![]];
+        for key in model.keys {
+            if let Form::Choice(choices) = key.form {
+                let with = |world: &Vec<_>, word| [&world[..], &[(key.name, word)]].concat();
+                worlds = worlds
+                    .iter()
+                    .flat_map(|world| choices.iter().map(move |choice| with(world, choice.name)))
+                    .collect();
+            }
+        }
+        effects.extend(worlds.iter().map(|world| effect(model, world)));
+    }
+    assert!(effects.len() > MODELS.len());
+    effects
+}
+
+/// A model with some words, and a value for every other key that they use.
+fn effect(model: &Model, words: &[(&str, &'static str)]) -> Value {
+    let mut effect = json!({ "kind": model.kind });
+    for key in model.keys {
+        let word = |name: &str| words.iter().find(|(key, _)| *key == name).unwrap().1;
+        if !key
+            .when
+            .iter()
+            .all(|when| when.is.contains(&word(when.key)))
+        {
+            continue;
+        }
+        effect[key.name] = match (key.form, key.default_text()) {
+            (Form::Choice(_), _) => json!(word(key.name)),
+            (_, Some(text)) => serde_json::from_str(text).unwrap(),
+            (Form::Number(range), None) => json!(0.5 * (range.low + range.high)),
+            (form, None) => panic!("{} {}: {form:?}", model.kind, key.name),
+        };
+    }
+    effect
 }
 
 /// One config for every built choice of every key that is a choice, found in the schema.
@@ -316,12 +630,37 @@ fn every_choice() -> Vec<Value> {
             }
         }
     }
-    let phases = &schema()["properties"]["medium"]["properties"]["effects"]["items"]["properties"]
-        ["phase"]["enum"];
-    for phase in phases.as_array().unwrap() {
-        let effects = json!([{ "kind": "collinear-expansion", "phase": phase }]);
-        configs.push(least_with_medium(json!({ "effects": effects })));
+    configs
+        .extend(words_of("field").map(|kind| least_with_medium(json!({ "field": field(&kind) }))));
+    configs.push(several_fields(json!("demo-data/*.h5")));
+    configs.extend(
+        words_of("origin").map(|kind| {
+            least_with_medium(json!({ "field": field("grid"), "origin": origin(&kind) }))
+        }),
+    );
+    for nucleus in words(
+        &schema()["properties"]["medium"]["properties"]["origin"],
+        "nucleus",
+    ) {
+        let mut overlap = origin("overlap");
+        overlap["nucleus"] = json!(nucleus);
+        if nucleus != "custom" {
+            let members = overlap.as_object_mut().unwrap();
+            members.retain(|key, _| key != "radius_fm" && key != "diffuseness_fm");
+        }
+        configs.push(least_with_medium(json!({ "origin": overlap })));
     }
+    configs.extend(
+        words_of("transport")
+            .map(|kind| least_with_medium(json!({ "transport": transport(&kind) }))),
+    );
+    let held = json!({ "kind": "longitudinal", "temperature_GeV": 0.4, "start_fm": 0.6, "pre_equilibrium": "hold" });
+    configs.push(least_with_medium(json!({ "field": held })));
+    configs.extend(
+        effects()
+            .into_iter()
+            .map(|effect| least_with_medium(json!({ "effects": [effect] }))),
+    );
     for parton in Species::names() {
         let mut config: Value = serde_json::from_str(LEAST).unwrap();
         config["source"]["parton"] = json!(parton);
@@ -381,7 +720,9 @@ fn the_schema_describes_every_key() {
         let unit = property.get("x-unit").and_then(Value::as_str);
         assert_eq!(
             unit.is_some(),
-            path.ends_with("GeV") || path.ends_with("_fm"),
+            ["GeV", "_fm", "_rad", "_per_GeV2"]
+                .iter()
+                .any(|ending| path.ends_with(ending)),
             "{path}"
         );
     });
@@ -401,8 +742,8 @@ fn the_schema_and_the_resolved_configs_have_the_same_keys() {
     for config in configs {
         paths(&plan(&config.to_string()).resolved, "", &mut resolved);
     }
-    // The address of the schema is not part of a run; the grid needs a file.
-    resolved.extend([".$schema".to_owned(), ".medium.field.file".to_owned()]);
+    // The address of the schema is not part of a run.
+    resolved.insert(".$schema".to_owned());
     assert_eq!(described, resolved);
 }
 
@@ -451,6 +792,11 @@ fn mutation() -> impl Strategy<Value = Mutation> {
         "\u{e9}",
         "\"kind\": \"grid\",",
         "\"file\": \"/dev/zero\",",
+        "\"files\": \"*.toml\",",
+        "\"files\": [\"Cargo.toml\"], \"events_per_field\": 5,",
+        "\"kind\": \"overlap\", \"nucleus\": \"custom\",",
+        "\"kind\": \"radial\", \"amplitude\": 1e4, \"q_per_fm\": 1e-3,",
+        "\"kind\": \"table\",",
         "\"window\": 1,",
         "-0.0",
         "18446744073709551615",

@@ -9,10 +9,10 @@ use common::{FakeGenerator, provenance};
 use spindrift::config::History;
 use spindrift::event::EventBlock;
 use spindrift::files::event_file::{
-    EVENT_CHUNK_ROWS, EventFile, EventFileError, EventFileWriter, PARTON_CHUNK_ROWS, Provenance,
-    Table, WriteOptions, audit,
+    ColumnSet, EVENT_CHUNK_ROWS, EXIT_COLUMNS, EventFile, EventFileError, EventFileWriter,
+    PARTON_CHUNK_ROWS, PARTON_COLUMNS, Provenance, Table, WriteOptions, audit,
 };
-use spindrift::run::{EventGenerator, RunTotals, Sink, run};
+use spindrift::run::{EventGenerator, RunError, RunTotals, Sink, run};
 
 fn write(
     path: &Path,
@@ -49,6 +49,7 @@ fn read(path: &Path) -> EventBlock {
         let block = block.unwrap();
         all.events.extend(block.events);
         all.partons.extend(block.partons);
+        all.exits.extend(block.exits);
     }
     all
 }
@@ -58,6 +59,27 @@ fn sample(folder: &Path, events: i64) -> PathBuf {
     let path = folder.join("sample.h5");
     write(&path, &FakeGenerator::default(), &provenance(events), 2);
     path
+}
+
+/// The same with exits from a medium.
+fn sample_with_exits(folder: &Path, events: i64, threads: usize) -> PathBuf {
+    let path = folder.join("exits.h5");
+    write(&path, &WITH_EXITS, &provenance_with_exits(events), threads);
+    path
+}
+
+const WITH_EXITS: FakeGenerator = FakeGenerator {
+    history: History::Final,
+    mean_branchings: 8,
+    exits: true,
+    panic_at: None,
+};
+
+fn provenance_with_exits(events: i64) -> Provenance {
+    Provenance {
+        medium_exit: true,
+        ..provenance(events)
+    }
 }
 
 #[test]
@@ -103,6 +125,110 @@ fn what_is_written_is_read_back() {
                     .all(|(_, extent)| *extent == rows)
             );
         }
+    }
+}
+
+#[test]
+fn exits_from_the_medium_are_read_back() {
+    let folder = tempfile::tempdir().unwrap();
+    let events = 2 * EVENT_CHUNK_ROWS as i64 + 17;
+    let mut digests = Vec::new();
+    for threads in [1, 3] {
+        let path = sample_with_exits(folder.path(), events, threads);
+        let expected = generated(&WITH_EXITS, 0..events);
+        assert!(expected.partons.len() > 2 * PARTON_CHUNK_ROWS);
+        let left = expected.exits.iter().filter(|exit| !exit.is_none()).count();
+        assert!(left > 1000 && left < expected.exits.len());
+        assert_eq!(read(&path), expected);
+        let file = EventFile::open(&path).unwrap();
+        assert_eq!(file.provenance(), &provenance_with_exits(events));
+        let extents = file.extents(Table::Partons);
+        assert_eq!(extents.len(), PARTON_COLUMNS.len() + EXIT_COLUMNS.len());
+        assert_eq!(
+            file.event(2777).unwrap().unwrap(),
+            generated(&WITH_EXITS, 2777..2778)
+        );
+        let report = audit(&path).unwrap();
+        assert!(report.is_clean(), "{:?}", report.findings);
+        digests.push(report.digest.unwrap());
+        std::fs::remove_file(path).unwrap();
+    }
+    assert_eq!(digests[0], digests[1]);
+}
+
+/// Exits add datasets and nothing else: every other chunk stays the same to the last byte, and a file without them has
+/// no trace of them.
+#[test]
+fn exits_leave_the_other_columns_alone() {
+    let folder = tempfile::tempdir().unwrap();
+    let (without, with) = (
+        folder.path().join("without.h5"),
+        folder.path().join("with.h5"),
+    );
+    write(&without, &WITH_EXITS, &provenance(5000), 2);
+    write(&with, &WITH_EXITS, &provenance_with_exits(5000), 2);
+    let bytes = [&without, &with].map(|path| std::fs::read(path).unwrap());
+    let files = [&without, &with].map(|path| hdf5::File::open(path).unwrap());
+    for table in [Table::Events, Table::Partons] {
+        let members =
+            |file: &hdf5::File| file.group(table.group()).unwrap().member_names().unwrap();
+        let columns = ColumnSet::default().columns(table);
+        assert_eq!(members(&files[0]).len(), columns.len());
+        for column in columns {
+            let place = format!("{}/{}", table.group(), column.name);
+            let [one, other] = [0, 1].map(|file: usize| {
+                let dataset = files[file].dataset(&place).unwrap();
+                let chunks = (0..dataset.num_chunks().unwrap()).map(|chunk| {
+                    let chunk = dataset.chunk_info(chunk).unwrap();
+                    bytes[file][chunk.addr as usize..][..chunk.size as usize].to_vec()
+                });
+                chunks.collect::<Vec<_>>()
+            });
+            assert!(one.len() > 1 && one == other, "{place}");
+        }
+    }
+    let names = files.map(|file| file.attr_names().unwrap());
+    assert_eq!(names[0], names[1]);
+    let digests = [&without, &with].map(|path| audit(path).unwrap().digest);
+    assert_ne!(digests[0], digests[1]);
+}
+
+#[test]
+fn columns_of_exits_are_all_there_or_none() {
+    for column in &EXIT_COLUMNS {
+        let folder = tempfile::tempdir().unwrap();
+        let path = sample_with_exits(folder.path(), 100, 1);
+        let place = format!("/partons/{}", column.name);
+        let file = hdf5::File::open_rw(&path).unwrap();
+        file.unlink(&place).unwrap();
+        drop(file);
+        let error = audit(&path).unwrap_err().to_string();
+        assert!(error.contains(&place), "{error}");
+    }
+}
+
+/// A generator that makes no exits for a file that keeps them is a defect, told as such, on any number of threads.
+#[test]
+fn exits_that_were_not_made_are_a_defect() {
+    for threads in [1, 2] {
+        let folder = tempfile::tempdir().unwrap();
+        let path = folder.path().join("missing.h5");
+        let provenance = provenance_with_exits(100);
+        let writer = EventFileWriter::create(&path, &provenance, WriteOptions::default()).unwrap();
+        let sink = Sink::File(Box::new(writer));
+        let never = AtomicBool::new(false);
+        let outcome = run(
+            &FakeGenerator::default(),
+            0..100,
+            threads,
+            sink,
+            &(),
+            &never,
+        );
+        let Err(RunError::Defect(reason)) = outcome else {
+            panic!("{outcome:?}");
+        };
+        assert!(reason.contains("keeps exits"), "{reason}");
     }
 }
 
@@ -320,10 +446,11 @@ fn wild_places_of_rows_are_refused() {
 #[test]
 fn a_flipped_bit_in_any_column_fails_its_checksum() {
     let folder = tempfile::tempdir().unwrap();
-    let path = sample(folder.path(), 5000);
+    let path = sample_with_exits(folder.path(), 5000, 2);
     let whole = std::fs::read(&path).unwrap();
+    let set = ColumnSet { medium_exit: true };
     for table in [Table::Events, Table::Partons] {
-        for column in table.columns() {
+        for column in set.columns(table) {
             let place = format!("{}/{}", table.group(), column.name);
             let file = hdf5::File::open(&path).unwrap();
             let chunk = file.dataset(&place).unwrap().chunk_info(1).unwrap();
@@ -356,7 +483,7 @@ fn truncated_files_are_refused_or_read_to_their_end() {
 fn an_abandoned_file_reads_as_its_last_commit() {
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("abandoned.h5");
-    let generator = FakeGenerator::default();
+    let generator = WITH_EXITS;
     let stop = AtomicBool::new(false);
     struct StopSoon<'a>(&'a AtomicBool);
     impl spindrift::run::Progress for StopSoon<'_> {
@@ -366,8 +493,12 @@ fn an_abandoned_file_reads_as_its_last_commit() {
             }
         }
     }
-    let writer =
-        EventFileWriter::create(&path, &provenance(50_000), WriteOptions::default()).unwrap();
+    let writer = EventFileWriter::create(
+        &path,
+        &provenance_with_exits(50_000),
+        WriteOptions::default(),
+    )
+    .unwrap();
     let totals = run(
         &generator,
         0..50_000,

@@ -67,9 +67,33 @@ def check_samples(tally, program):
             tally.run(f"{label}: parents first", history.check_parents_first, path)
 
 
+def check_exits(tally, program):
+    """Every config with a medium, exits recorded: the same events with further columns."""
+    for path in sorted(program.configs.glob("*.json")):
+        config = program.config(path.name)
+        if not config.get("medium"):
+            continue
+        label = f"{path.stem}-exits"
+        plain = program.generate(f"{path.stem}-plain", changed(config, record__medium_exit=False), SAMPLE_EVENTS)
+        out = program.generate(label, changed(config, record__medium_exit=True), SAMPLE_EVENTS)
+        check_one_file(tally, label, out, program.work)
+        tally.run(f"{label}: audit agrees", program.run, "audit", out)
+        tally.run(f"{label}: on the paths of final partons", event_file.check_exits, out)
+        tally.run(f"{label}: nothing else changes", check_same_but_for_exits, plain, out)
+
+
+def check_same_but_for_exits(plain, out):
+    """The columns that both files have are the same."""
+    one, other = event_file.flat_tables(plain), event_file.flat_tables(out)
+    assert set(other) - set(one) == {f"partons/{name}" for name in event_file.EXITS}, set(other) ^ set(one)
+    for name, column in one.items():
+        assert np.array_equal(column, other[name]), f"{name} differs"
+
+
 def check_damage(program):
     """A flipped byte in any column is noticed by HDF5 and by audit."""
-    path = program.generate("to-damage", program.config("first-look.json"), 200)
+    config = changed(program.config("first-look.json"), record__medium_exit=True)
+    path = program.generate("to-damage", config, 200)
     event_file.check_checksum_is_real(path, program.work)
     # The last column tried is left broken.
     code, words = program.exit_code("audit", program.work / "broken.h5")
@@ -90,6 +114,7 @@ def main():
         for path in chosen.files:
             check_one_file(tally, path.name, path, program.work)
         check_samples(tally, program)
+        check_exits(tally, program)
         tally.run("damage is noticed", check_damage, program)
         for module in (configs, twins, fields):
             for name in [name for name in vars(module) if name.startswith("check_")]:

@@ -119,7 +119,7 @@ fn later(what: &str) -> anyhow::Result<ExitCode> {
 pub fn exit_code(error: &anyhow::Error) -> u8 {
     match error.downcast_ref::<RunError>() {
         Some(RunError::Defect(_)) => EXIT_DEFECT,
-        Some(RunError::Output(_)) => EXIT_MACHINE,
+        Some(RunError::Output(_) | RunError::Field(_)) => EXIT_MACHINE,
         Some(RunError::TooLarge(_)) => EXIT_BAD_REQUEST,
         None if error.is::<std::io::Error>() => EXIT_MACHINE,
         None => EXIT_BAD_REQUEST,

@@ -51,8 +51,8 @@ fn show_event(file: &EventFile, id: i64) -> anyhow::Result<()> {
             provenance.last_id
         );
     };
-    for (event, rows) in block.iter() {
-        print_data(&event_tree(event, rows, &file.provenance().effects).to_string())?;
+    for (event, rows, exits) in block.iter_with_exits() {
+        print_data(&event_tree(event, rows, exits, &file.provenance().effects))?;
     }
     Ok(())
 }

@@ -10,13 +10,14 @@ use crate::run::summary::{ChannelSummary, MediumSummary, RunSummary, WeightSumma
 const NAME_WIDTH: usize = 19;
 
 /// Titles of the table of channels.
-const TITLES: [&str; 6] = [
+const TITLES: [&str; 7] = [
     "channel",
     "trials",
     "accepted",
     "share",
     "overshoots",
     "cut by angle",
+    "outside regime",
 ];
 
 /// Prints a summary as a few aligned lines.
@@ -123,10 +124,10 @@ fn write_weights(weights: &WeightSummary, out: &mut Formatter) -> Result {
 fn write_channels(channels: &[ChannelSummary], out: &mut Formatter) -> Result {
     let names = channels.iter().map(|channel| channel.name.len());
     let width = names.max().unwrap_or(0).max(NAME_WIDTH);
-    let mut line = |[name, trials, accepted, share, overshoots, cut]: [&str; 6]| {
+    let mut line = |[name, trials, accepted, share, overshoots, cut, outside]: [&str; 7]| {
         writeln!(
             out,
-            "  {name:width$} {trials:>13} {accepted:>13} {share:>8} {overshoots:>10} {cut:>12}"
+            "  {name:width$} {trials:>13} {accepted:>13} {share:>8} {overshoots:>10} {cut:>12} {outside:>15}"
         )
     };
     line(TITLES)?;
@@ -138,6 +139,7 @@ fn write_channels(channels: &[ChannelSummary], out: &mut Formatter) -> Result {
             &or_dash(channel.acceptance.map(percent)),
             &grouped(channel.overshoots),
             &or_dash(channel.share_cut_by_angle_limit.map(percent)),
+            &or_dash(channel.share_outside_regime.map(percent)),
         ])?;
     }
     writeln!(out)

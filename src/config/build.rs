@@ -1,14 +1,17 @@
 //! From the checked values to the settings of the physics modules.
 
-use std::path::Path;
-
 use serde_json::Value;
 
+use super::inputs::{FIELD, Inputs, PLACES};
+use super::keys::CUSTOM;
 use super::plan::{History, RecordSettings};
+use crate::medium::effects::model;
+use crate::medium::field::Radial;
 use crate::medium::{
-    ColourCharge, EffectSettings, FieldKind, FieldSettings, MediumSettings, OriginSettings,
-    PhaseSettings, TransportKind, TransportSettings,
+    ColourCharge, EffectSettings, FieldKind, FieldSettings, MediumSettings, Nucleus,
+    OriginSettings, TransportKind, TransportSettings,
 };
+use crate::parameters::{Form, Key, Setting, Values};
 use crate::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use crate::shower::{FlavourOpening, Kernels, Lifetime, Ordering, ShowerSettings, ZRange};
 use crate::source::{Direction, PairSettings, SingleSettings, SourceSettings};
@@ -171,6 +174,7 @@ pub fn shower(section: Checked) -> ShowerSettings {
             &[
                 ("virtuality", Ordering::Virtuality),
                 ("collinear", Ordering::Collinear),
+                ("angular", Ordering::Angular),
             ],
         ),
         z_range: z_range(section.section("z_range")),
@@ -209,14 +213,14 @@ fn z_range(section: Checked) -> ZRange {
 }
 
 /// The medium, `None` for null.
-pub fn medium(section: Checked, folder: &Path) -> Option<MediumSettings> {
+pub fn medium(section: Checked, inputs: &Inputs) -> Option<MediumSettings> {
     if section.0.is_null() {
         return None;
     }
     Some(MediumSettings {
-        field: field(section.section("field"), folder),
-        origin: origin(section.section("origin")),
-        transport: transport(section.section("transport")),
+        field: field(section.section("field"), inputs),
+        origin: origin(section.section("origin"), inputs),
+        transport: transport(section.section("transport"), inputs),
         effects: section
             .list("effects")
             .iter()
@@ -227,7 +231,7 @@ pub fn medium(section: Checked, folder: &Path) -> Option<MediumSettings> {
     })
 }
 
-fn field(section: Checked, folder: &Path) -> FieldSettings {
+fn field(section: Checked, inputs: &Inputs) -> FieldSettings {
     let kind = match section.text("kind") {
         "brick" => FieldKind::Brick {
             temperature_gev: section.number("temperature_GeV"),
@@ -237,55 +241,135 @@ fn field(section: Checked, folder: &Path) -> FieldSettings {
             temperature_gev: section.number("temperature_GeV"),
             start_fm: section.number("start_fm"),
         },
+        "radial" => radial(section),
         _ => FieldKind::Grid {
-            file: folder.join(section.text("file")),
+            files: inputs.paths(FIELD),
+            events_per_field: section
+                .0
+                .get("events_per_field")
+                .map_or(u64::MAX, |_| section.count("events_per_field")),
         },
     };
     FieldSettings {
         kind,
         end_temperature_gev: section.number("end_temperature_GeV"),
+        hold_before_start: section
+            .0
+            .get("pre_equilibrium")
+            .is_some_and(|word| word == "hold"),
+        rotation_rad: section.number("rotation_rad"),
+        shift_fm: [0, 1].map(|place| {
+            section.list("shift_fm")[place]
+                .as_f64()
+                .expect("checked as a number")
+        }),
     }
 }
 
-fn origin(section: Checked) -> OriginSettings {
-    OriginSettings::Fixed {
-        x_fm: section.number("x_fm"),
-        y_fm: section.number("y_fm"),
+fn radial(section: Checked) -> FieldKind {
+    FieldKind::Radial {
+        amplitude: section.number("amplitude"),
+        q_per_fm: section.number("q_per_fm"),
+        start_fm: section.number("start_fm"),
     }
 }
 
-fn transport(section: Checked) -> TransportSettings {
-    let kind = if section.text("kind") == "cubic" {
-        TransportKind::Cubic {
+/// The radial field, where all its numbers are there (before errors are told).
+pub fn radial_field(field: Checked) -> Option<Radial> {
+    let number = |key: &str| field.0.get(key)?.as_f64();
+    Some(Radial::new(
+        number("amplitude")?,
+        number("q_per_fm")?,
+        number("start_fm")?,
+    ))
+}
+
+fn origin(section: Checked, inputs: &Inputs) -> OriginSettings {
+    match section.text("kind") {
+        "fixed" => OriginSettings::Fixed {
+            x_fm: section.number("x_fm"),
+            y_fm: section.number("y_fm"),
+        },
+        "overlap" => OriginSettings::Overlap {
+            nucleus: nucleus(section).expect("a checked nucleus has a name or two numbers"),
+            impact_parameter_fm: section.number("impact_parameter_fm"),
+        },
+        "field-weighted" => OriginSettings::FieldWeighted {
+            power: section.number("power"),
+        },
+        "collision-density" => OriginSettings::CollisionDensity,
+        _ => OriginSettings::List {
+            file: inputs.path(PLACES),
+        },
+    }
+}
+
+/// The nucleus of an overlap, where all of it is there (before errors are told).
+pub fn nucleus(origin: Checked) -> Option<Nucleus> {
+    let name = origin.0.get("nucleus")?.as_str()?;
+    if name != CUSTOM {
+        return Nucleus::named(name);
+    }
+    let number = |key: &str| origin.0.get(key)?.as_f64();
+    Some(Nucleus {
+        radius_fm: number("radius_fm")?,
+        diffuseness_fm: number("diffuseness_fm")?,
+    })
+}
+
+fn transport(section: Checked, inputs: &Inputs) -> TransportSettings {
+    let kind = match section.text("kind") {
+        "cubic" => TransportKind::Cubic {
             coefficient: section.number("coefficient"),
-        }
-    } else {
-        TransportKind::Constant {
+        },
+        "constant" => TransportKind::Constant {
             qhat_gev2_per_fm: section.number("qhat_GeV2_per_fm"),
-        }
+        },
+        "thermal" => TransportKind::Thermal {
+            alpha_s: section.number("alpha_s"),
+            flavours: section.small_count("flavours"),
+        },
+        _ => TransportKind::Table(inputs.table()),
     };
-    TransportSettings {
-        kind,
-        stated_for: section.pick(
+    let stated_for = match kind {
+        // It computes both.
+        TransportKind::Thermal { .. } => ColourCharge::Gluon,
+        _ => section.pick(
             "for",
             &[
                 ("quark", ColourCharge::Quark),
                 ("gluon", ColourCharge::Gluon),
             ],
         ),
+    };
+    TransportSettings {
+        kind,
+        stated_for,
         flow: section.flag("flow"),
     }
 }
 
 fn effect(section: Checked) -> EffectSettings {
-    let phase = match section.text("phase") {
-        "interference" => PhaseSettings::Interference,
-        "rescattering" => PhaseSettings::Rescattering {
-            window: section.number("window"),
-        },
-        _ => PhaseSettings::SoftGradient,
-    };
-    EffectSettings::CollinearExpansion { phase }
+    let model = model(section.text("kind")).expect("the checker knows the kinds of the registry");
+    let mut values = Values::default();
+    for key in model.keys {
+        // A key that the chosen words do not use is absent.
+        if let Some(value) = section.0.get(key.name) {
+            values.set(key.name, setting(key, value));
+        }
+    }
+    EffectSettings { model, values }
+}
+
+fn setting(key: &Key, value: &Value) -> Setting {
+    match key.form {
+        Form::Flag => Setting::Flag(value.as_bool().expect("the checker gives a flag")),
+        Form::Choice(choices) => {
+            let chosen = choices.iter().find(|choice| value == choice.name);
+            Setting::Word(chosen.expect("the checker gives a word of the choice").name)
+        }
+        _ => Setting::Number(value.as_f64().expect("the checker gives a number")),
+    }
 }
 
 /// What the event file keeps.
@@ -300,6 +384,7 @@ pub fn record(section: Checked) -> RecordSettings {
             .0
             .get("momentum_bits")
             .map(|_| section.small_count("momentum_bits")),
+        medium_exit: section.flag("medium_exit"),
     }
 }
 

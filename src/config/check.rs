@@ -5,13 +5,13 @@ use std::collections::{HashMap, HashSet};
 use serde_json::{Map, Value};
 
 use super::complaint::{
-    Complaint, describe, missing_key, not_an_object, planned_key, unknown_key, unused_key,
-    wrong_type,
+    Complaint, both_keys, describe, missing_key, neither_key, not_an_object, planned_key,
+    unknown_key, unused_key, wrong_type,
 };
 use super::error::{ConfigError, Problem, Report, quote};
 use super::keys::{self, Choice, Form, Key, Length, Need, Range, Section};
 use super::raw::{self, Lines, Member, Node, Shape};
-use super::usage::{Use, has_planned_kind, used};
+use super::usage::{Use, has_planned_kind, is_written, used};
 use super::values::{choice, count, empty_list, flag, number, parton, text};
 
 /// Where each value of the config stands.
@@ -21,14 +21,17 @@ pub struct Places<'a> {
 }
 
 impl Places<'_> {
-    /// Line of a path, or of the nearest section above it that stands in the file.
+    /// Line of a path, or of the nearest section above it that stands in the file: at the end, the whole config.
     pub fn line(&self, path: &str) -> Option<usize> {
         let mut path = path;
         loop {
             if let Some(at) = self.offsets.get(path) {
                 return Some(self.lines.line(*at));
             }
-            path = &path[..path.rfind(['.', '['])?];
+            if path.is_empty() {
+                return None;
+            }
+            path = &path[..path.rfind(['.', '[']).unwrap_or(0)];
         }
     }
 
@@ -44,7 +47,7 @@ pub fn check<'a>(root: &Node, lines: &'a Lines, report: &mut Report) -> (Value, 
     let mut checker = Checker {
         places: Places {
             lines,
-            offsets: HashMap::new(),
+            offsets: HashMap::from([(String::new(), root.at)]),
         },
         report,
     };
@@ -117,8 +120,9 @@ impl Checker<'_, '_> {
         }
         let mut resolved = Map::new();
         for key in section.built_keys() {
-            let absent = members.iter().all(|member| member.name != key.name);
-            if absent && misspelt.iter().any(|name| name == key.name) {
+            let meant = |name: &str| misspelt.iter().any(|misspelt| misspelt == name);
+            let other_meant = matches!(key.need, Need::Either(other) if meant(other));
+            if !is_written(key.name, &members) && (meant(key.name) || other_meant) {
                 continue;
             }
             if let Some(value) = self.key(path, section, key, &members, node.at)
@@ -181,6 +185,10 @@ impl Checker<'_, '_> {
             self.complain(&full, at, || planned_key(section, key, members));
         } else if used(section, key, members) == Use::No {
             self.complain(&full, at, || unused_key(section, key, members));
+        } else if let Some(other) = earlier_alternative(section, key)
+            && is_written(other.name, members)
+        {
+            self.complain(&full, at, || both_keys(key, other));
         }
     }
 
@@ -210,6 +218,15 @@ impl Checker<'_, '_> {
                 self.complain(&full, section_at, || missing_key(section, key, members));
                 None
             }
+            Need::Either(name) if usage == Use::Yes && !is_written(name, members) => {
+                let other = section.key(name).expect("a test finds both keys");
+                if earlier_alternative(section, key).is_none() {
+                    self.complain(&full, section_at, || {
+                        neither_key(section, key, other, members)
+                    });
+                }
+                None
+            }
             _ => None,
         }
     }
@@ -217,6 +234,7 @@ impl Checker<'_, '_> {
     fn value(&mut self, path: &str, key: &Key, form: &Form, node: &Node) -> Option<Value> {
         let result = match form {
             Form::Section(section) => return self.section(path, section, node),
+            Form::Models(section) => return self.section(path, section(), node),
             Form::OptionalSection(_) if matches!(node.shape, Shape::Null) => Ok(Value::Null),
             Form::OptionalSection(section) => return self.section(path, section, node),
             Form::List(of, length) => return self.list(path, key, of, *length, node),
@@ -232,7 +250,10 @@ impl Checker<'_, '_> {
             Form::Flag => flag(node),
             Form::Choice(choices) => choice(choices, node),
             Form::Parton => parton(node),
-            Form::File | Form::SchemaAddress => text(form, node),
+            Form::Files(most) if matches!(node.shape, Shape::List(_)) => {
+                return self.list(path, key, &Form::File, Length::of(1, *most), node);
+            }
+            Form::File | Form::Files(_) | Form::SchemaAddress => text(form, node),
             Form::EmptyList => empty_list(key, node),
         };
         result
@@ -277,6 +298,15 @@ impl Checker<'_, '_> {
             .collect::<Option<Vec<_>>>()
             .map(Value::Array)
     }
+}
+
+/// The other one of two keys of which one must be there, where it stands first in the table.
+fn earlier_alternative(section: &'static Section, key: &Key) -> Option<&'static Key> {
+    let Need::Either(name) = key.need else {
+        return None;
+    };
+    let place = |name: &str| section.keys.iter().position(|key| key.name == name);
+    (place(name) < place(key.name)).then(|| section.key(name))?
 }
 
 const DIRECTIONS: &[Choice] = &[Choice {

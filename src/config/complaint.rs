@@ -4,7 +4,7 @@ use super::error::{Problem, quote};
 use super::keys::{self, Form, Key, Section};
 use super::nearest::nearest;
 use super::raw::{Member, Node, Shape};
-use super::usage::{Selected, selected, usable_keys, usable_keys_words};
+use super::usage::{Selected, is_written, selected, usable_keys, usable_keys_words};
 
 /// A key that stands in more sections than this is no hint where it belongs.
 const MOST_HOMES: usize = 2;
@@ -104,8 +104,16 @@ pub fn unused_key(section: &'static Section, key: &Key, members: &[&Member]) -> 
             Selected::Word(word) if !when.is.contains(&word) => Some((when, word)),
             _ => None,
         });
-    let (when, word) = failing.expect("an unused key has a condition that fails");
-    let default = if members.iter().any(|member| member.name == when.key) {
+    let Some((when, word)) = failing else {
+        let other = key.with.expect("an unused key has a condition that fails");
+        return Complaint::new(
+            Problem::UnusedKey,
+            format!("\"{}\" without \"{other}\"", key.name),
+            format!("\"{}\" only together with \"{other}\"", key.name),
+            format!("remove it, or add \"{other}\""),
+        );
+    };
+    let default = if is_written(when.key, members) {
         ""
     } else {
         " (the default)"
@@ -124,14 +132,63 @@ fn quoted(words: &[&str]) -> String {
     quoted.join(" or ")
 }
 
+/// What made an absent key required.
+fn required_by(section: &'static Section, key: &Key, members: &[&Member]) -> String {
+    let choices = key
+        .when
+        .iter()
+        .filter_map(|when| match selected(section, when.key, members) {
+            Selected::Word(word) => Some(format!("{} \"{word}\"", when.key)),
+            Selected::Planned | Selected::Unclear => None,
+        });
+    let beside = key.with.map(|other| format!("\"{other}\""));
+    let reasons: Vec<_> = choices.chain(beside).collect();
+    if reasons.is_empty() {
+        String::new()
+    } else {
+        format!(" with {}", reasons.join(" and "))
+    }
+}
+
+/// Neither of two keys of which one must be there.
+pub fn neither_key(
+    section: &'static Section,
+    key: &Key,
+    other: &Key,
+    members: &[&Member],
+) -> Complaint {
+    Complaint::new(
+        Problem::MissingKey,
+        format!("neither \"{}\" nor \"{}\"", key.name, other.name),
+        format!(
+            "\"{}\": {}; or \"{}\": {}",
+            key.name,
+            key.form.words(),
+            other.name,
+            other.form.words()
+        ),
+        format!(
+            "add \"{}\" or \"{}\", one of which is required{}",
+            key.name,
+            other.name,
+            required_by(section, key, members)
+        ),
+    )
+}
+
+/// Both of two keys that exclude each other.
+pub fn both_keys(key: &Key, other: &Key) -> Complaint {
+    Complaint::new(
+        Problem::UnusedKey,
+        format!("\"{}\" beside \"{}\"", key.name, other.name),
+        format!("one of \"{}\" and \"{}\"", other.name, key.name),
+        "remove one of them",
+    )
+}
+
 /// A required key that is absent.
 pub fn missing_key(section: &'static Section, key: &Key, members: &[&Member]) -> Complaint {
-    let chosen = key.when.first().map_or(String::new(), |when| {
-        match selected(section, when.key, members) {
-            Selected::Word(word) => format!(" with {} \"{word}\"", when.key),
-            Selected::Planned | Selected::Unclear => String::new(),
-        }
-    });
+    let chosen = required_by(section, key, members);
     Complaint::new(
         Problem::MissingKey,
         format!("no \"{}\"", key.name),

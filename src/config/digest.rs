@@ -27,16 +27,16 @@ pub fn of_file(path: &Path) -> io::Result<String> {
     }
 }
 
-/// SHA-256 (hex) of a resolved config, without the number of events, with each input file (a JSON pointer) replaced by
-/// its SHA-256.
-pub fn of_config(resolved: &Value, inputs: &[(&str, &str)]) -> String {
+/// SHA-256 (hex) of a resolved config, without the number of events, with the names of input files (at JSON pointers)
+/// replaced by their hashes.
+pub fn of_config(resolved: &Value, inputs: &[(String, Value)]) -> String {
     let mut config = resolved.clone();
     if let Value::Object(members) = &mut config {
         members.retain(|key, _| !LEFT_OUT.contains(&key.as_str()));
     }
-    for (pointer, sha256) in inputs {
+    for (pointer, hashes) in inputs {
         if let Some(value) = config.pointer_mut(pointer) {
-            *value = Value::from(format!("sha256:{sha256}"));
+            *value = hashes.clone();
         }
     }
     let mut text = String::new();
@@ -119,7 +119,9 @@ mod tests {
         let mut other = config.clone();
         other["events"] = json!(2);
         other["medium"]["field"]["file"] = json!("b.h5");
-        let digest = |config: &Value, sha: &str| of_config(config, &[("/medium/field/file", sha)]);
+        let digest = |config: &Value, sha: &str| {
+            of_config(config, &[("/medium/field/file".to_owned(), json!(sha))])
+        };
         assert_eq!(digest(&config, "00"), digest(&other, "00"));
         assert_ne!(digest(&config, "00"), digest(&config, "01"));
         other["seed"] = json!(2);

@@ -12,6 +12,7 @@ mod check;
 mod complaint;
 mod digest;
 mod error;
+mod inputs;
 mod keys;
 mod nearest;
 mod plan;

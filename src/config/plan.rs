@@ -52,6 +52,8 @@ pub struct RecordSettings {
     pub compression: u8,
     /// Mantissa bits kept in momenta (1 to 52), `None` for lossless.
     pub momentum_bits: Option<u8>,
+    /// Whether it is kept where each final parton left the medium, with temperature and flow there.
+    pub medium_exit: bool,
 }
 
 /// Which rows of an event are kept.

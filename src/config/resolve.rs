@@ -7,9 +7,10 @@ use std::path::Path;
 use serde_json::Value;
 
 use super::build::{self, Checked};
-use super::check::{Places, check, check_override};
+use super::check::{check, check_override};
 use super::error::{ConfigError, ConfigErrors, Problem, Report};
-use super::plan::{InputFile, RunPlan};
+use super::inputs::{self, Inputs};
+use super::plan::RunPlan;
 use super::raw::{self, Lines, Member, Node, Shape};
 use super::{digest, rules};
 
@@ -17,10 +18,6 @@ use super::{digest, rules};
 pub const MAX_CONFIG_BYTES: u64 = 8 << 20;
 
 const BYTE_ORDER_MARK: char = '\u{feff}';
-
-/// Where the resolved config names the field file.
-const FIELD_FILE: &str = "medium.field.file";
-const FIELD_FILE_POINTER: &str = "/medium/field/file";
 
 /// Values from the command line that take the place of the config's.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
@@ -69,31 +66,28 @@ pub fn load_text(text: &str, path: &Path, overrides: &Overrides) -> Result<RunPl
             *key = Value::from(value);
         }
     }
-    let warnings = rules::check(&resolved, &places, &mut report);
+    let mut warnings = rules::check(&resolved, &places, &mut report);
     let folder = path.parent().unwrap_or(Path::new(""));
-    let inputs = input_files(&resolved, folder, &places, &mut report);
+    let inputs = inputs::find(&resolved, folder, &places, &mut report);
     if !report.is_empty() {
         return Err(report.finish(path.to_owned()));
     }
-    Ok(plan(resolved, folder, inputs, warnings))
+    rules::warn_of_inputs(&resolved, &inputs, &mut warnings);
+    Ok(plan(resolved, &inputs, warnings))
 }
 
-fn plan(resolved: Value, folder: &Path, inputs: Vec<InputFile>, warnings: Vec<String>) -> RunPlan {
+fn plan(resolved: Value, inputs: &Inputs, warnings: Vec<String>) -> RunPlan {
     let root = Checked(&resolved);
-    let files: Vec<_> = inputs
-        .iter()
-        .map(|input| (FIELD_FILE_POINTER, input.sha256.as_str()))
-        .collect();
     RunPlan {
         events: root.count("events"),
         seed: root.count("seed"),
         source: build::source(root.section("source")),
         coupling: build::coupling(root),
         shower: build::shower(root.section("shower")),
-        medium: build::medium(root.section("medium"), folder),
+        medium: build::medium(root.section("medium"), inputs),
         record: build::record(root.section("record")),
-        digest: digest::of_config(&resolved, &files),
-        inputs,
+        digest: digest::of_config(&resolved, &inputs.hashes()),
+        inputs: inputs.files(),
         warnings,
         resolved,
     }
@@ -212,45 +206,4 @@ fn add_missing(root: &mut Node, overrides: &Overrides) {
             });
         }
     }
-}
-
-/// Finds and hashes every input file.
-fn input_files(
-    resolved: &Value,
-    folder: &Path,
-    places: &Places,
-    report: &mut Report,
-) -> Vec<InputFile> {
-    let Some(name) = resolved.pointer(FIELD_FILE_POINTER).and_then(Value::as_str) else {
-        return Vec::new();
-    };
-    let path = folder.join(name);
-    match hash(&path, report.is_empty()) {
-        Ok(sha256) => vec![InputFile { path, sha256 }],
-        Err(found) => {
-            report.add(|| ConfigError {
-                problem: Problem::InputFile,
-                line: places.line(FIELD_FILE),
-                path: FIELD_FILE.to_owned(),
-                found: format!("{}: {found}", path.display()),
-                allowed: "a readable file; its path starts from the folder of the config"
-                    .to_owned(),
-                remedy: "correct the path, or make the file".to_owned(),
-                nearest: None,
-            });
-            Vec::new()
-        }
-    }
-}
-
-/// The hash of a file; where the config is refused anyway, only whether it is a file.
-fn hash(path: &Path, wanted: bool) -> Result<String, String> {
-    let about = path.metadata().map_err(|error| error.to_string())?;
-    if !about.is_file() {
-        return Err("no regular file".to_owned());
-    }
-    if !wanted {
-        return Ok(String::new());
-    }
-    digest::of_file(path).map_err(|error| error.to_string())
 }

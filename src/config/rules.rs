@@ -6,8 +6,13 @@ use serde_json::Value;
 use super::build::{self, Checked};
 use super::check::Places;
 use super::error::{ConfigError, Problem, Report};
+use super::inputs::{FIELD, Inputs};
+use super::keys::HOTTEST_GEV;
+use crate::medium::effects::{Physics, model};
+use crate::medium::field::TemperatureField;
+use crate::medium::origin::Overlap;
 use crate::qcd::coupling::CouplingError;
-use crate::qcd::{Coupling, Species};
+use crate::qcd::{Coupling, HBAR_C_GEV_FM, Species};
 
 /// From here on a temperature is worth a warning.
 const WARM_GEV: f64 = 1.0;
@@ -33,9 +38,38 @@ pub fn check(resolved: &Value, places: &Places, report: &mut Report) -> Vec<Stri
     rules.collinear_in_medium();
     rules.temperatures();
     rules.cooling_time();
+    rules.radial_field();
+    rules.uniform_field();
+    rules.origin_in_field();
+    rules.impact_parameter();
     rules.effects();
+    rules.physics_counted_twice();
     rules.medium_that_never_acts();
+    rules.exit_from_no_medium();
     rules.warnings
+}
+
+/// Warnings about the files that were found.
+pub fn warn_of_inputs(resolved: &Value, inputs: &Inputs, warnings: &mut Vec<String>) {
+    let number = |pointer: &str| resolved.pointer(pointer).and_then(Value::as_u64);
+    let (Some(events), Some(in_a_row)) =
+        (number("/events"), number("/medium/field/events_per_field"))
+    else {
+        return;
+    };
+    let fields = inputs.paths(FIELD).len() as u64;
+    let round = in_a_row.saturating_mul(fields);
+    if events < round {
+        warnings.push(format!(
+            "medium.field.events_per_field: {events} events use {} of {fields} fields; {round} would use each equally",
+            events.div_ceil(in_a_row)
+        ));
+    } else if !events.is_multiple_of(round) {
+        warnings.push(format!(
+            "medium.field.events_per_field: {events} events use {fields} fields unequally; a multiple of {round} would \
+             use each equally"
+        ));
+    }
 }
 
 struct Rules<'a, 'p> {
@@ -171,7 +205,7 @@ impl<'a> Rules<'a, '_> {
     fn in_boost_invariant_medium(&self) -> bool {
         matches!(
             self.text("medium.field.kind"),
-            Some("longitudinal" | "grid")
+            Some("longitudinal" | "radial" | "grid")
         )
     }
 
@@ -277,6 +311,125 @@ impl<'a> Rules<'a, '_> {
         }
     }
 
+    /// The hottest point at the start is where r^2 = tau^2 - 1/q^2, else the centre; from tau = 1/q on it is as hot as
+    /// A hbar c/tau, so that is when it is cold.
+    fn radial_field(&mut self) {
+        let section = self.get("medium.field");
+        let field = section.and_then(|section| build::radial_field(Checked(section)));
+        let (Some(field), Some(amplitude), Some(q), Some(start)) = (
+            field,
+            self.number("medium.field.amplitude"),
+            self.number("medium.field.q_per_fm"),
+            self.number("medium.field.start_fm"),
+        ) else {
+            return;
+        };
+        let ring = (start * start - 1.0 / (q * q)).max(0.0).sqrt();
+        let hottest = field.fluid([start, ring, 0.0, 0.0]).temperature_gev;
+        let centre = field.fluid([start, 0.0, 0.0, 0.0]).temperature_gev;
+        if hottest > HOTTEST_GEV {
+            self.refuse(
+                "medium.field.amplitude",
+                format!("{amplitude:?}, which makes {hottest:.4} GeV at start_fm"),
+                format!("what makes at most {HOTTEST_GEV} GeV"),
+                "lower amplitude or q_per_fm, or raise start_fm",
+            );
+            return;
+        }
+        if hottest > WARM_GEV {
+            self.warnings.push(format!(
+                "medium.field.amplitude: {centre:.4} GeV in the centre at start_fm is hotter than any collision"
+            ));
+        }
+        let path = "medium.field.end_temperature_GeV";
+        let Some(end) = self.number(path) else {
+            return;
+        };
+        let cooled = amplitude * HBAR_C_GEV_FM / end;
+        if end >= hottest {
+            self.refuse(
+                path,
+                format!("{end:?} GeV"),
+                format!("below the temperature of the field at start_fm, {hottest:.4} GeV, else there is no medium"),
+                "lower end_temperature_GeV or raise amplitude (for vacuum, set effects to [])",
+            );
+        } else if cooled.is_nan() || cooled > LONGEST_COOLING_FM {
+            self.refuse(
+                path,
+                format!("{end:?} GeV, reached at {cooled:.4} fm"),
+                format!("an end temperature that is reached before {LONGEST_COOLING_FM} fm"),
+                "raise end_temperature_GeV, or lower amplitude",
+            );
+        }
+    }
+
+    fn field_is_uniform(&self) -> bool {
+        matches!(
+            self.text("medium.field.kind"),
+            Some("brick" | "longitudinal")
+        )
+    }
+
+    fn uniform_field(&mut self) {
+        if !self.field_is_uniform() {
+            return;
+        }
+        let shifted = self.list("medium.field.shift_fm").iter().any(|x| *x != 0.0);
+        let turned = self
+            .number("medium.field.rotation_rad")
+            .is_some_and(|angle| angle != 0.0);
+        for (path, is_set) in [
+            ("medium.field.rotation_rad", turned),
+            ("medium.field.shift_fm", shifted),
+        ] {
+            if is_set {
+                self.warnings.push(format!(
+                    "{path}: this field is the same everywhere across the beam, so it makes no difference"
+                ));
+            }
+        }
+    }
+
+    fn origin_in_field(&mut self) {
+        let path = "medium.origin.kind";
+        let Some(field) = self.text("medium.field.kind") else {
+            return;
+        };
+        match self.text(path) {
+            Some("field-weighted") if self.field_is_uniform() => self.refuse(
+                path,
+                format!("\"field-weighted\" with the field \"{field}\", which is the same everywhere across the beam"),
+                "\"field-weighted\" with a field \"radial\" or \"grid\"",
+                "set kind to \"fixed\", \"overlap\" or \"list\"",
+            ),
+            Some("collision-density") if field != "grid" => self.refuse(
+                path,
+                format!("\"collision-density\" with the field \"{field}\""),
+                "\"collision-density\" with a field \"grid\", whose file holds the density",
+                "set kind to \"fixed\", \"overlap\" or \"list\"",
+            ),
+            _ => {}
+        }
+    }
+
+    fn impact_parameter(&mut self) {
+        let path = "medium.origin.impact_parameter_fm";
+        let origin = self.get("medium.origin");
+        let nucleus = origin.and_then(|origin| build::nucleus(Checked(origin)));
+        let (Some(nucleus), Some(impact)) = (nucleus, self.number(path)) else {
+            return;
+        };
+        let most = Overlap::largest_impact_fm(&nucleus);
+        if impact > most {
+            self.refuse(
+                path,
+                format!("{impact:?} fm"),
+                format!("at most {most:.4} fm: beyond, these nuclei do not meet"),
+                "lower impact_parameter_fm",
+            );
+        }
+    }
+
     /// Random streams are keyed by the name of the effect: twice the same would be no two independent channels.
     fn effects(&mut self) {
         let effects = self.list("medium.effects");
@@ -294,6 +447,41 @@ impl<'a> Rules<'a, '_> {
                     "remove one of them",
                 );
             }
+        }
+    }
+
+    fn physics_counted_twice(&mut self) {
+        let effects = self.list("medium.effects");
+        let models = effects
+            .iter()
+            .filter_map(|effect| model(effect.get("kind")?.as_str()?));
+        let models: Vec<_> = models.collect();
+        for (place, one) in models.iter().enumerate() {
+            for other in models[..place]
+                .iter()
+                .filter(|other| other.kind != one.kind)
+            {
+                let shared = |physics: &&Physics| other.describes.contains(physics);
+                let shared: Vec<_> = one.describes.iter().filter(shared).collect();
+                if shared.is_empty() {
+                    continue;
+                }
+                let words: Vec<_> = shared.into_iter().map(|physics| physics.words()).collect();
+                self.warnings.push(format!(
+                    "medium.effects: {} and {} both describe {}, which is then counted twice",
+                    other.kind,
+                    one.kind,
+                    words.join(" and ")
+                ));
+            }
+        }
+    }
+
+    fn exit_from_no_medium(&mut self) {
+        let in_vacuum = self.get("medium").is_some_and(Value::is_null);
+        if in_vacuum && self.get("record.medium_exit") == Some(&Value::Bool(true)) {
+            self.warnings
+                .push("record.medium_exit: there is no medium to leave".to_owned());
         }
     }
 

@@ -25,7 +25,7 @@ fn section(section: &'static Section, nullable: bool) -> Map<String, Value> {
         .collect();
     let required: Vec<_> = section
         .built_keys()
-        .filter(|key| key.need == Need::Required && key.when.is_empty())
+        .filter(|key| key.need == Need::Required && key.when.is_empty() && key.with.is_none())
         .map(|key| key.name)
         .collect();
     let kind = if nullable {
@@ -40,9 +40,21 @@ fn section(section: &'static Section, nullable: bool) -> Map<String, Value> {
         "required": required,
         "additionalProperties": false,
     }));
-    let conditions = conditions(section);
+    let mut conditions = conditions(section);
+    conditions.extend(
+        section
+            .built_keys()
+            .filter_map(|key| requirement(section, key)),
+    );
     if !conditions.is_empty() {
         members.insert("allOf".to_owned(), Value::Array(conditions));
+    }
+    let companions: Map<_, _> = section
+        .built_keys()
+        .filter_map(|key| Some((key.name.to_owned(), json!([key.with?]))))
+        .collect();
+    if !companions.is_empty() {
+        members.insert("dependentRequired".to_owned(), Value::Object(companions));
     }
     members
 }
@@ -68,6 +80,12 @@ fn description(key: &Key) -> String {
     }
     for when in key.when {
         text += &format!(" Only with {}: {}.", when.key, when.is.join(", "));
+    }
+    if let Some(other) = key.with {
+        text += &format!(" Only together with {other}.");
+    }
+    if let Need::Either(other) = key.need {
+        text += &format!(" Either this or {other}.");
     }
     let choices = match key.form {
         Form::Choice(choices) => choices,
@@ -99,6 +117,17 @@ fn form(form: &Form) -> Map<String, Value> {
             ]
         })),
         Form::File => object(json!({ "type": "string", "minLength": 1 })),
+        Form::Files(most) => object(json!({
+            "oneOf": [
+                { "type": "string", "minLength": 1 },
+                {
+                    "type": "array",
+                    "items": { "type": "string", "minLength": 1 },
+                    "minItems": 1,
+                    "maxItems": most,
+                },
+            ]
+        })),
         Form::SchemaAddress => object(json!({ "type": "string" })),
         Form::List(of, length) => object(json!({
             "type": "array",
@@ -108,6 +137,7 @@ fn form(form: &Form) -> Map<String, Value> {
         })),
         Form::EmptyList => object(json!({ "type": "array", "maxItems": 0 })),
         Form::Section(inner) => section(inner, false),
+        Form::Models(inner) => section(inner(), false),
         Form::OptionalSection(inner) => section(inner, true),
     }
 }
@@ -126,7 +156,7 @@ fn range(range: Range) -> Map<String, Value> {
     object(json!({ "type": "number", low: range.low, high: range.high }))
 }
 
-/// One condition for each word of each key that others depend on: what it requires and what it forbids.
+/// One condition for each word of each key that others depend on: what it forbids, and what it alone requires.
 fn conditions(section: &'static Section) -> Vec<Value> {
     let selectors = section.built_keys().filter(|selector| {
         section
@@ -153,19 +183,58 @@ fn condition(section: &'static Section, selector: &'static Key, word: &'static s
         for when in key.when.iter().filter(|when| when.key == selector.name) {
             if !when.is.contains(&word) {
                 forbidden.insert(key.name.to_owned(), Value::Bool(false));
-            } else if key.need == Need::Required {
+            } else if is_required_by_one_word(key) {
                 required.push(key.name);
             }
         }
     }
-    let is_default = selector
-        .default_text()
-        .is_some_and(|text| text.trim_matches('"') == word);
-    let needed: &[&str] = if is_default { &[] } else { &[selector.name] };
     json!({
-        "if": { "properties": { selector.name: { "const": word } }, "required": needed },
+        "if": chosen(selector, &[word]),
         "then": { "required": required, "properties": forbidden },
     })
+}
+
+/// That a key has one of some words, written or by default.
+fn chosen(selector: &Key, words: &[&str]) -> Value {
+    let is_default = selector
+        .default_text()
+        .is_some_and(|text| words.contains(&text.trim_matches('"')));
+    let needed: &[&str] = if is_default { &[] } else { &[selector.name] };
+    let word = match words {
+        [word] => json!({ "const": word }),
+        _ => json!({ "enum": words }),
+    };
+    json!({ "properties": { selector.name: word }, "required": needed })
+}
+
+fn is_required_by_one_word(key: &Key) -> bool {
+    key.need == Need::Required && key.when.len() == 1 && key.with.is_none()
+}
+
+/// What is required under several conditions at once, or as one of two keys: conditions within conditions.
+fn requirement(section: &'static Section, key: &'static Key) -> Option<Value> {
+    let innermost = match key.need {
+        Need::Required if !key.when.is_empty() && !is_required_by_one_word(key) => {
+            json!({ "required": [key.name] })
+        }
+        Need::Required if key.with.is_some() => json!({ "required": [key.name] }),
+        // The two name each other; one statement is enough.
+        Need::Either(other) if key.name < other => {
+            json!({ "oneOf": [{ "required": [key.name] }, { "required": [other] }] })
+        }
+        _ => return None,
+    };
+    let beside = key.with.map(|other| json!({ "required": [other] }));
+    let choices = key.when.iter().map(|when| {
+        let selector = section.key(when.key).expect("a test finds every selector");
+        chosen(selector, when.is)
+    });
+    let conditions: Vec<_> = choices.chain(beside).collect();
+    let nested = conditions.into_iter().rev().fold(
+        innermost,
+        |then, condition| json!({ "if": condition, "then": then }),
+    );
+    Some(nested)
 }
 
 fn object(value: Value) -> Map<String, Value> {

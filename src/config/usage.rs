@@ -45,9 +45,21 @@ pub fn selected(section: &'static Section, selector: &str, members: &[&Member]) 
     }
 }
 
-/// Whether the chosen kinds use a key.
+/// Whether the chosen kinds, and the keys beside it, use a key.
 pub fn used(section: &'static Section, key: &Key, members: &[&Member]) -> Use {
     let mut usage = Use::Yes;
+    if let Some(other) = key.with
+        && !is_written(other, members)
+    {
+        // A misspelt key may be the other one.
+        let all_known = members
+            .iter()
+            .all(|member| section.key(&member.name).is_some());
+        if all_known {
+            return Use::No;
+        }
+        usage = Use::Unclear;
+    }
     for when in key.when {
         match selected(section, when.key, members) {
             Selected::Word(word) if when.is.contains(&word) => {}
@@ -56,6 +68,11 @@ pub fn used(section: &'static Section, key: &Key, members: &[&Member]) -> Use {
         }
     }
     usage
+}
+
+/// Whether a key stands in the file.
+pub fn is_written(name: &str, members: &[&Member]) -> bool {
+    members.iter().any(|member| member.name == name)
 }
 
 /// Whether the section's kind is one that a later version will know.

@@ -3,8 +3,8 @@
 mod checks;
 
 pub use checks::{
-    CheckRules, Imbalance, check_colour, check_event, check_fractions, check_mass_shell,
-    check_momentum, check_structure,
+    CheckRules, Imbalance, check_colour, check_event, check_exits, check_fractions,
+    check_mass_shell, check_momentum, check_structure,
 };
 
 /// What a row of the record stands for (the event file's `status` column).
@@ -74,6 +74,58 @@ pub struct Parton {
     pub channel: u8,
 }
 
+/// Where a final parton left the medium, and the fluid that it left: the last point of its straight way from birth at
+/// which the temperature reaches the end temperature.
+#[derive(Clone, Copy, Debug)]
+pub struct MediumExit {
+    /// Time and place `[t, x, y, z]` in fm.
+    pub place_fm: [f32; 4],
+    /// Temperature of the fluid at rest in GeV: the end temperature, or higher where the way leaves the field's data.
+    pub temperature_gev: f32,
+    /// Lab four-velocity components u^x, u^y, u^z of the fluid.
+    pub velocity: [f32; 3],
+}
+
+impl MediumExit {
+    /// Numbers of an exit.
+    pub const NUMBERS: usize = 8;
+
+    /// Of a parton that never was in the medium, and of every row that is not a final parton: not a number throughout.
+    pub const NONE: MediumExit = MediumExit {
+        place_fm: [f32::NAN; 4],
+        temperature_gev: f32::NAN,
+        velocity: [f32::NAN; 3],
+    };
+
+    /// All its numbers, in the order t, x, y, z, temperature, u^x, u^y, u^z.
+    pub fn numbers(&self) -> [f32; Self::NUMBERS] {
+        let [t, x, y, z] = self.place_fm;
+        let [ux, uy, uz] = self.velocity;
+        [t, x, y, z, self.temperature_gev, ux, uy, uz]
+    }
+
+    /// The exit of such numbers.
+    pub fn from_numbers([t, x, y, z, temperature_gev, ux, uy, uz]: [f32; Self::NUMBERS]) -> Self {
+        MediumExit {
+            place_fm: [t, x, y, z],
+            temperature_gev,
+            velocity: [ux, uy, uz],
+        }
+    }
+
+    /// Whether none of its numbers is one.
+    pub fn is_none(&self) -> bool {
+        self.numbers().iter().all(|number| number.is_nan())
+    }
+}
+
+/// Equal to the last bit, so that no exit equals no exit.
+impl PartialEq for MediumExit {
+    fn eq(&self, other: &Self) -> bool {
+        self.numbers().map(f32::to_bits) == other.numbers().map(f32::to_bits)
+    }
+}
+
 /// The event-level columns of one event.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct EventSummary {
@@ -100,16 +152,26 @@ pub struct EventBlock {
     pub events: Vec<EventSummary>,
     /// The rows of all events, in the order of `events`.
     pub partons: Vec<Parton>,
+    /// Where each row left the medium; empty where that is not recorded.
+    pub exits: Vec<MediumExit>,
 }
 
 impl EventBlock {
     /// Each event with its rows.
     pub fn iter(&self) -> impl Iterator<Item = (&EventSummary, &[Parton])> {
+        self.iter_with_exits().map(|(event, rows, _)| (event, rows))
+    }
+
+    /// Each event with its rows and their exits, no exits where they are not recorded.
+    pub fn iter_with_exits(
+        &self,
+    ) -> impl Iterator<Item = (&EventSummary, &[Parton], &[MediumExit])> {
         let mut start = 0;
         self.events.iter().map(move |event| {
-            let rows = &self.partons[start..start + event.partons_count as usize];
-            start += rows.len();
-            (event, rows)
+            let range = start..start + event.partons_count as usize;
+            start = range.end;
+            let exits = self.exits.get(range.clone()).unwrap_or_default();
+            (event, &self.partons[range], exits)
         })
     }
 
@@ -117,5 +179,6 @@ impl EventBlock {
     pub fn clear(&mut self) {
         self.events.clear();
         self.partons.clear();
+        self.exits.clear();
     }
 }

@@ -27,6 +27,8 @@ pub struct Path {
     start_fm: f64,
     step_fm: f64,
     cells: Vec<Cell>,
+    /// Sums over the cells up to each one of the integrals of qhat and l^2 qhat, over the step.
+    sums: Vec<[f64; 2]>,
     moments: [f64; 4],
 }
 
@@ -45,6 +47,7 @@ impl Path {
         self.start_fm = start_fm;
         self.step_fm = step_fm;
         self.cells.clear();
+        self.sums.clear();
         self.moments = [0.0; 4];
     }
 
@@ -66,6 +69,7 @@ impl Path {
             sums[0] += mean;
             sums[1] += mean * c + slope * s2;
             sums[2] += mean * (c2 + s2) + slope * 2.0 * c * s2;
+            self.sums.push([sums[0], sums[2]]);
             sums[3] += mean * (c2 * c2 + 6.0 * c2 * s2 + s4) + slope * 4.0 * c * (c2 * s2 + s4);
         }
         self.moments = sums.map(|sum| sum * h);
@@ -99,6 +103,33 @@ impl Path {
     /// Where the last cell ends, fm from birth.
     pub fn end_fm(&self) -> f64 {
         self.start_fm + self.cells.len() as f64 * self.step_fm
+    }
+
+    /// Where the first cell starts, fm from birth.
+    pub fn start_fm(&self) -> f64 {
+        self.start_fm
+    }
+
+    /// The transport coefficient at `l_fm`, GeV^2/fm; 0 outside the cells.
+    #[inline]
+    pub fn qhat_gev2_per_fm(&self, l_fm: f64) -> f64 {
+        let place = (l_fm - self.start_fm) / self.step_fm;
+        if !(place >= 0.0) {
+            return 0.0;
+        }
+        let cell = place as usize;
+        match self.cells.get(cell) {
+            Some(Cell { mean, slope }) => mean + slope * (l_fm - self.centre(cell)),
+            None => 0.0,
+        }
+    }
+
+    /// int qhat dl from birth to `l_fm`, GeV^2.
+    pub fn integral_to(&self, l_fm: f64) -> f64 {
+        if l_fm >= self.end_fm() {
+            return self.moments[0];
+        }
+        self.pieces(l_fm).map(|piece| piece.integral()).sum()
     }
 
     /// The cosine transform at wave number `k_per_fm`.
@@ -155,41 +186,50 @@ impl Path {
         sum
     }
 
-    /// A place up to `end_fm` drawn with the density max(qhat, 0).
-    pub fn draw_by_qhat(&self, end_fm: f64, stream: &mut Stream) -> f64 {
-        let piece = self.choose(end_fm, stream, Piece::integral);
+    /// A place drawn with the density qhat.
+    pub fn draw_by_qhat(&self, stream: &mut Stream) -> f64 {
+        let (piece, share) = self.choose(0, stream);
+        if piece.slope == 0.0 {
+            return piece.low() + share * piece.width;
+        }
         piece.draw(stream, |_| 1.0)
     }
 
-    /// A place up to `end_fm` drawn with the density l^2 max(qhat, 0).
-    pub fn draw_by_qhat_l2(&self, end_fm: f64, stream: &mut Stream) -> f64 {
-        let piece = self.choose(end_fm, stream, Piece::second_moment);
-        let top = piece.centre + 0.5 * piece.width;
+    /// A place drawn with the density l^2 qhat.
+    pub fn draw_by_qhat_l2(&self, stream: &mut Stream) -> f64 {
+        let (piece, share) = self.choose(1, stream);
+        let (low, top) = (piece.low(), piece.low() + piece.width);
+        if piece.slope == 0.0 {
+            let (low, top) = (low * low * low, top * top * top);
+            return libm::cbrt(low + share * (top - low));
+        }
         piece.draw(stream, |l| (l / top) * (l / top))
     }
 
-    fn choose(&self, end_fm: f64, stream: &mut Stream, mass: impl Fn(&Piece) -> f64) -> Piece {
-        let total: f64 = self.pieces(end_fm).map(|piece| mass(&piece).max(0.0)).sum();
-        let mut rest = stream.random::<f64>() * total;
-        let mut chosen = None;
-        for piece in self.pieces(end_fm) {
-            let share = mass(&piece).max(0.0);
-            if share > 0.0 {
-                chosen = Some(piece);
-            }
-            rest -= share;
-            if rest < 0.0 {
-                break;
-            }
+    /// A cell drawn by its part of the moment of qhat (0) or l^2 qhat (1), and what is left of the uniform number.
+    #[inline]
+    fn choose(&self, moment: usize, stream: &mut Stream) -> (Piece, f64) {
+        let last = self.cells.len() - 1;
+        let target = stream.random::<f64>() * self.sums[last][moment];
+        let mut place = 0;
+        while place < last && self.sums[place][moment] <= target {
+            place += 1;
         }
-        // An induced branching needs a positive rate, so some piece has a positive mass; a path without any has but
-        // its end to offer.
-        chosen.unwrap_or(Piece {
-            centre: end_fm,
-            width: 0.0,
-            mean: 1.0,
-            slope: 0.0,
-        })
+        let below = if place == 0 {
+            0.0
+        } else {
+            self.sums[place - 1][moment]
+        };
+        let Cell { mean, slope } = self.cells[place];
+        let piece = Piece {
+            centre: self.centre(place),
+            width: self.step_fm,
+            mean,
+            slope,
+        };
+        let mass = self.sums[place][moment] - below;
+        // A target that was rounded up to the whole lands at the end of the last cell, be it empty.
+        (piece, ((target - below) / mass).min(1.0))
     }
 
     /// The cells, the last one cut at `end_fm`.
@@ -227,10 +267,8 @@ impl Piece {
         self.mean * self.width
     }
 
-    fn second_moment(&self) -> f64 {
-        let s2 = self.width * self.width / 12.0;
-        (self.mean * (self.centre * self.centre + s2) + self.slope * 2.0 * self.centre * s2)
-            * self.width
+    fn low(&self) -> f64 {
+        self.centre - 0.5 * self.width
     }
 
     /// A place with the density qhat times `weight`, which lies in [0, 1].
@@ -288,6 +326,18 @@ mod tests {
                 mean,
                 slope: 0.8 * (place as f64).cos(),
             });
+        }
+        path.finish();
+        path
+    }
+
+    /// Cells without a slope, one of them empty.
+    fn steps() -> Path {
+        let mut path = Path::default();
+        path.restart(0.4, 0.25);
+        for place in 0..12 {
+            let mean = ((place * 5) % 12) as f64;
+            path.push(Cell { mean, slope: 0.0 });
         }
         path.finish();
         path
@@ -370,20 +420,19 @@ mod tests {
     #[test]
     fn draws_follow_the_integrand() {
         const DRAWS: usize = 100_000;
-        let path = path();
-        for power in [0, 2] {
+        for (path, power) in [(path(), 0), (path(), 2), (steps(), 0), (steps(), 2)] {
             let mut stream = Key::event(9, power).stream(Purpose::INDUCED_VERTEX);
             let mut draws: Vec<f64> = (0..DRAWS)
                 .map(|_| {
                     if power == 0 {
-                        path.draw_by_qhat(2.9, &mut stream)
+                        path.draw_by_qhat(&mut stream)
                     } else {
-                        path.draw_by_qhat_l2(2.9, &mut stream)
+                        path.draw_by_qhat_l2(&mut stream)
                     }
                 })
                 .collect();
             draws.sort_by(f64::total_cmp);
-            let total = integral(&path, |l| if l < 2.9 { l.powi(power as i32) } else { 0.0 });
+            let total = integral(&path, |l| l.powi(power as i32));
             for quantile in [0.05, 0.2, 0.4, 0.6, 0.8, 0.95] {
                 let l = draws[(quantile * DRAWS as f64) as usize];
                 let below =

@@ -5,15 +5,53 @@
 //! at the crossing of the end temperature.
 
 use super::Medium;
-use super::field::{Local, Ray};
+use super::field::{Ceiling, Local, Ray, Stretch, TemperatureField};
 use super::path::{Cell, Path};
 
+/// Energy loss and transport coefficient of the medium are tied by fluctuation and dissipation: ehat = qhat/(4 T).
+const TEMPERATURES_PER_LOSS: f64 = 4.0;
+
 /// The path of one parton, with memory that is used again for the next.
-#[derive(Clone, Debug, Default)]
+#[derive(Clone, Debug)]
 pub struct Trace {
-    /// The gluon's transport coefficient along the path.
+    /// The gluon's transport coefficient along the path, or a bound of it.
     pub path: Path,
+    /// The gluon's energy loss per length along the path, GeV/fm, where an effect asks for it.
+    pub loss: Path,
+    exact: bool,
+    ray: Ray,
     samples: Vec<Local>,
+    ceilings: Vec<Ceiling>,
+}
+
+impl Default for Trace {
+    fn default() -> Trace {
+        Trace {
+            path: Path::default(),
+            loss: Path::default(),
+            exact: true,
+            ray: Ray {
+                birth_fm: [0.0; 4],
+                direction: [0.0, 0.0, 1.0],
+            },
+            samples: Vec::new(),
+            ceilings: Vec::new(),
+        }
+    }
+}
+
+impl Trace {
+    /// Whether the path holds the transport coefficient itself, not a bound.
+    #[inline]
+    pub fn is_exact(&self) -> bool {
+        self.exact
+    }
+
+    /// The ray that was traced.
+    #[inline]
+    pub fn ray(&self) -> &Ray {
+        &self.ray
+    }
 }
 
 /// What a trace found.
@@ -35,14 +73,84 @@ struct Sample {
 }
 
 impl Medium {
-    /// Tabulates the transport coefficient along a ray.
-    pub fn trace(&self, ray: &Ray, trace: &mut Trace) -> Outcome {
-        let Some(stretch) = self.field.stretch(ray, self.end_temperature_gev) else {
+    /// Tabulates the transport coefficient that a parton of a lab energy (GeV) meets along a ray, or bounds of it where
+    /// no effect needs more and the field offers them.
+    pub fn trace(
+        &self,
+        field: &dyn TemperatureField,
+        ray: &Ray,
+        energy_gev: f64,
+        trace: &mut Trace,
+    ) -> Outcome {
+        let Some(stretch) = field.stretch(ray, self.end_temperature_gev) else {
             return Outcome::Empty;
         };
+        trace.ray = *ray;
+        trace.exact = self.needs_whole_path || !field.ceilings(ray, &stretch, &mut trace.ceilings);
+        let at_end_gev = if trace.exact {
+            self.sample_path(field, &stretch, energy_gev, trace)
+        } else {
+            self.bound_path(&stretch, energy_gev, trace);
+            self.temperature_at_end(field, ray, &stretch, trace)
+        };
+        if trace.path.qhat_integral_gev2() <= 0.0 {
+            return Outcome::Empty;
+        }
+        Outcome::Medium {
+            left_hot: field.has_artificial_edge() && at_end_gev >= self.end_temperature_gev,
+        }
+    }
+
+    fn temperature_at_end(
+        &self,
+        field: &dyn TemperatureField,
+        ray: &Ray,
+        stretch: &Stretch,
+        trace: &Trace,
+    ) -> f64 {
+        match trace.ceilings.last() {
+            Some(last) if last.temperature_gev < self.end_temperature_gev => 0.0,
+            _ if !field.has_artificial_edge() => 0.0,
+            _ => field.local(ray, stretch.last_fm).temperature_gev,
+        }
+    }
+
+    fn bound_path(&self, stretch: &Stretch, energy_gev: f64, trace: &mut Trace) {
+        let segments = trace.ceilings.len() as f64;
+        trace.path.restart(
+            stretch.first_fm,
+            (stretch.last_fm - stretch.first_fm) / segments,
+        );
+        for ceiling in &trace.ceilings {
+            let mean = if ceiling.temperature_gev < self.end_temperature_gev {
+                0.0
+            } else {
+                let at_rest = self.transport.gluon_qhat_ceiling_gev2_per_fm(
+                    ceiling.temperature_gev,
+                    energy_gev * ceiling.flow_factor,
+                );
+                if self.transport.flow {
+                    at_rest * ceiling.flow_factor
+                } else {
+                    at_rest
+                }
+            };
+            trace.path.push(Cell { mean, slope: 0.0 });
+        }
+        trace.path.finish();
+    }
+
+    /// The exact path; returns the temperature at its end.
+    fn sample_path(
+        &self,
+        field: &dyn TemperatureField,
+        stretch: &Stretch,
+        energy_gev: f64,
+        trace: &mut Trace,
+    ) -> f64 {
         let step_fm = (stretch.last_fm - stretch.first_fm) / stretch.cells as f64;
-        self.field.sample(
-            ray,
+        field.sample(
+            &trace.ray,
             stretch.first_fm,
             0.5 * step_fm,
             2 * stretch.cells + 1,
@@ -50,31 +158,40 @@ impl Medium {
         );
         trace.path.restart(stretch.first_fm, step_fm);
         for cell in 0..stretch.cells {
-            let samples = [0, 1, 2].map(|place| self.sample(&trace.samples[2 * cell + place]));
+            let samples = self.samples_of(&trace.samples, cell, energy_gev);
             trace.path.push(self.cell(samples, step_fm));
         }
         trace.path.finish();
-        if trace.path.qhat_integral_gev2() <= 0.0 {
-            return Outcome::Empty;
+        if self.needs_loss {
+            self.sample_loss(stretch, step_fm, energy_gev, trace);
         }
-        let at_end = trace.samples[2 * stretch.cells].temperature_gev;
-        Outcome::Medium {
-            left_hot: self.field.has_artificial_edge() && at_end >= self.end_temperature_gev,
+        trace.samples[2 * stretch.cells].temperature_gev
+    }
+
+    fn sample_loss(&self, stretch: &Stretch, step_fm: f64, energy_gev: f64, trace: &mut Trace) {
+        trace.loss.restart(stretch.first_fm, step_fm);
+        for cell in 0..stretch.cells {
+            let samples = self
+                .samples_of(&trace.samples, cell, energy_gev)
+                .map(|sample| Sample {
+                    qhat: sample.qhat
+                        / (TEMPERATURES_PER_LOSS * sample.temperature_gev.max(f64::MIN_POSITIVE)),
+                    ..sample
+                });
+            trace.loss.push(self.cell(samples, step_fm));
         }
+        trace.loss.finish();
     }
 
     #[inline]
-    fn sample(&self, local: &Local) -> Sample {
-        let flow = if self.transport.flow {
-            local.flow_factor
-        } else {
-            1.0
-        };
-        let qhat = self.transport.gluon_qhat_gev2_per_fm(local.temperature_gev) * flow;
-        Sample {
-            temperature_gev: local.temperature_gev,
-            qhat,
-        }
+    fn samples_of(&self, samples: &[Local], cell: usize, energy_gev: f64) -> [Sample; 3] {
+        [0, 1, 2].map(|place| {
+            let local = &samples[2 * cell + place];
+            Sample {
+                temperature_gev: local.temperature_gev,
+                qhat: self.qhat_of(local, energy_gev),
+            }
+        })
     }
 
     #[inline]
@@ -129,11 +246,12 @@ impl Medium {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::medium::field::{Stretch, TemperatureField};
+    use crate::medium::field::Fluid;
     use crate::medium::{
         ColourCharge, FieldKind, FieldSettings, MediumSettings, OriginSettings, TransportKind,
         TransportSettings,
     };
+    use std::sync::Arc;
 
     /// Hot up to a distance along any ray, cold beyond.
     struct Sliver {
@@ -157,6 +275,14 @@ mod tests {
                 flow_factor: 1.0,
             }
         }
+
+        fn fluid(&self, _point_fm: [f64; 4]) -> Fluid {
+            Fluid::EMPTY
+        }
+
+        fn first_tau_fm(&self) -> f64 {
+            0.0
+        }
     }
 
     /// A medium that ends inside a cell has no negative moment, however small the hot part.
@@ -164,13 +290,13 @@ mod tests {
     fn partly_hot_cells_keep_their_sign() {
         for hot_fm in [1e-6, 0.01, 0.06, 0.2, 0.31, 0.59, 0.61, 0.7, 1.1] {
             let settings = MediumSettings {
-                field: FieldSettings {
-                    kind: FieldKind::Brick {
+                field: FieldSettings::new(
+                    FieldKind::Brick {
                         temperature_gev: 0.3,
                         length_fm: 1.0,
                     },
-                    end_temperature_gev: 0.15,
-                },
+                    0.15,
+                ),
                 origin: OriginSettings::Fixed {
                     x_fm: 0.0,
                     y_fm: 0.0,
@@ -186,13 +312,13 @@ mod tests {
                 limit_to_small_angles: true,
                 min_energy_gev: 2.0,
             };
-            let medium = Medium::new(&settings, Box::new(Sliver { hot_fm }));
+            let medium = Medium::new(&settings, Arc::new(Sliver { hot_fm }));
             let mut trace = Trace::default();
             let ray = Ray {
                 birth_fm: [0.0; 4],
                 direction: [1.0, 0.0, 0.0],
             };
-            medium.trace(&ray, &mut trace);
+            medium.trace(medium.field(), &ray, 10.0, &mut trace);
             let path = &trace.path;
             assert!(
                 (path.qhat_integral_gev2() / hot_fm - 1.0).abs() < 1e-9,

@@ -3,7 +3,7 @@
 use std::fmt::Write;
 
 use super::numbers::significant;
-use crate::event::{EventSummary, Parton, Status};
+use crate::event::{EventSummary, MediumExit, Parton, Status};
 use crate::qcd::Species;
 
 /// Levels that are indented; deeper ones stand below each other.
@@ -16,19 +16,27 @@ const NUMBER_WIDTH: usize = 11;
 const TREE_WIDTH: usize = 36;
 
 /// The event in words, then its rows as a tree: daughters under their parent (`final` history: final partons under
-/// their hard parton). `effects` names the channels from 2 on.
-pub fn event_tree(event: &EventSummary, rows: &[Parton], effects: &[String]) -> String {
+/// their hard parton). `exits` holds an exit from the medium for every row, or nothing; `effects` names the channels
+/// from 2 on.
+pub fn event_tree(
+    event: &EventSummary,
+    rows: &[Parton],
+    exits: &[MediumExit],
+    effects: &[String],
+) -> String {
     let mut text = heading(event, rows.len());
     let number = |name: &str| format!("{name:>NUMBER_WIDTH$}");
-    let columns = ["energy", "virtuality", "fraction", "birth t", "x", "y", "z"].map(number);
-    let _ = writeln!(
-        text,
-        "{:TREE_WIDTH$}{}  channel",
-        "parton",
-        columns.concat()
-    );
-    let units = ["GeV", "GeV", "", "fm", "fm", "fm", "fm"].map(number);
-    let _ = writeln!(text, "{:TREE_WIDTH$}{}", "", units.concat());
+    let mut columns = vec!["energy", "virtuality", "fraction", "birth t", "x", "y", "z"];
+    let mut units = vec!["GeV", "GeV", "", "fm", "fm", "fm", "fm"];
+    if !exits.is_empty() {
+        columns.extend(["exit t", "x", "y", "z", "exit T"]);
+        units.extend(["fm", "fm", "fm", "fm", "GeV"]);
+    }
+    let [columns, units] = [columns, units].map(|words| words.into_iter().map(number));
+    let columns: String = columns.collect();
+    let _ = writeln!(text, "{:TREE_WIDTH$}{columns}  channel", "parton");
+    let units: String = units.collect();
+    let _ = writeln!(text, "{:TREE_WIDTH$}{units}", "");
     let daughters = daughters(rows);
     let mut open: Vec<(usize, String, &str)> = roots(rows)
         .into_iter()
@@ -36,7 +44,14 @@ pub fn event_tree(event: &EventSummary, rows: &[Parton], effects: &[String]) -> 
         .map(|row| (row, String::new(), ""))
         .collect();
     while let Some((row, indent, joint)) = open.pop() {
-        let _ = writeln!(text, "{}", line(row, &rows[row], &indent, joint, effects));
+        let named = format!(
+            "{indent}{joint}{row} {} {}",
+            name(&rows[row]),
+            status(rows[row].status)
+        );
+        let numbers = numbers(&rows[row], exits.get(row));
+        let channel = channel(rows[row].channel, effects);
+        let _ = writeln!(text, "{named:TREE_WIDTH$}{numbers}  {channel}");
         let below = match joint {
             "" => String::new(),
             _ if indent.chars().count() >= 2 * INDENTED_LEVELS => indent,
@@ -91,16 +106,12 @@ fn daughters(rows: &[Parton]) -> Vec<Vec<usize>> {
     daughters
 }
 
-fn line(row: usize, parton: &Parton, indent: &str, joint: &str, effects: &[String]) -> String {
-    let name = format!(
-        "{indent}{joint}{row} {} {}",
-        name(parton),
-        status(parton.status)
-    );
+/// The columns of numbers of a row; a dash stands for an exit that is not there.
+fn numbers(parton: &Parton, exit: Option<&MediumExit>) -> String {
     let squared = f64::from(parton.virtuality_squared_gev2);
     let virtuality = squared.abs().sqrt().copysign(squared);
     let [t, x, y, z] = parton.birth_fm.map(f64::from);
-    let numbers = [
+    let mut numbers = vec![
         parton.momentum_gev[3],
         virtuality,
         f64::from(parton.splitting_fraction),
@@ -109,12 +120,15 @@ fn line(row: usize, parton: &Parton, indent: &str, joint: &str, effects: &[Strin
         y,
         z,
     ];
-    let numbers = numbers.map(|value| format!("{:>NUMBER_WIDTH$}", significant(value, DIGITS)));
-    format!(
-        "{name:TREE_WIDTH$}{}  {}",
-        numbers.concat(),
-        channel(parton.channel, effects)
-    )
+    if let Some(exit) = exit {
+        numbers.extend(exit.place_fm.map(f64::from));
+        numbers.push(exit.temperature_gev.into());
+    }
+    let words = numbers.into_iter().map(|value| match value {
+        _ if value.is_nan() => "-".to_owned(),
+        _ => significant(value, DIGITS),
+    });
+    words.map(|word| format!("{word:>NUMBER_WIDTH$}")).collect()
 }
 
 fn name(parton: &Parton) -> String {

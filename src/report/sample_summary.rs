@@ -145,7 +145,14 @@ impl SampleSummary {
             None => "lossless".to_owned(),
             Some(bits) => format!("momenta rounded to {bits} mantissa bits"),
         };
-        writeln!(out, "record        {history}; {kinematics}; {momenta}")?;
+        let exits = match provenance.medium_exit {
+            true => "; where final partons left the medium",
+            false => "",
+        };
+        writeln!(
+            out,
+            "record        {history}; {kinematics}; {momenta}{exits}"
+        )?;
         if provenance.open_colour_lines > 0 {
             writeln!(
                 out,

@@ -1,12 +1,23 @@
 //! From a plan to a generator: reads the inputs and builds source, medium and shower.
 
+use std::fs::Metadata;
+use std::path::{Path, PathBuf};
+use std::sync::Arc;
+use std::time::SystemTime;
+
 use thiserror::Error;
 
+use super::exits::MediumExits;
+use super::fields::{FieldReadError, FieldSeries, Schedule};
 use super::generator::Generator;
+use super::origins::BirthError;
+use super::provenance::event_ids;
+use super::surroundings::{Surroundings, births_follow_the_field, one_more, surroundings};
 use crate::config::{History, RunPlan};
-use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{Brick, Grid, Longitudinal, TemperatureField};
-use crate::medium::{FieldKind, FieldSettings, Medium};
+use crate::files::field_file::{FieldFileError, read_outline};
+use crate::medium::field::{Brick, TemperatureField};
+use crate::medium::origin::{CollisionDensity, Origin, Placement};
+use crate::medium::{FieldKind, Medium, MediumSettings, OriginSettings};
 use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
@@ -20,6 +31,23 @@ pub enum AssembleError {
     /// The coupling cannot be had.
     #[error(transparent)]
     Coupling(#[from] CouplingError),
+    /// There is no distribution of birth places.
+    #[error(transparent)]
+    Births(#[from] BirthError),
+    /// There is no distribution of birth places in a field of a file.
+    #[error("{}: {problem}", path.display())]
+    BirthsIn {
+        /// The file.
+        path: PathBuf,
+        /// Why.
+        problem: BirthError,
+    },
+    /// An input file is no longer what it was when the run began.
+    #[error("{} was changed after the run began; the events so far have its former content", path.display())]
+    Changed {
+        /// The file.
+        path: PathBuf,
+    },
 }
 
 /// A generator, and what the user should hear about its inputs.
@@ -37,25 +65,27 @@ pub struct Assembled {
 pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let mut warnings = Vec::new();
     let source = source::build(&plan.source);
-    let medium = match &plan.medium {
-        None => None,
-        Some(settings) => Some(Medium::new(
-            settings,
-            field(&settings.field, &mut warnings)?,
-        )),
+    let places = match &plan.medium {
+        None => Places::default(),
+        Some(settings) => places(settings, event_ids(plan).start, &mut warnings)?,
     };
     let shower = Shower::new(
         &plan.shower,
         &plan.coupling,
-        medium,
+        places.medium,
         source.largest_virtuality_gev(),
     )?;
     let generator = Generator {
         seed: plan.seed,
         source,
         shower,
-        origin: plan.medium.as_ref().map(|medium| medium.origin),
+        origin: places.origin,
+        fields: places.fields,
         full_history: plan.record.history == History::Full,
+        exits: plan.record.medium_exit.then(|| MediumExits {
+            field: places.field,
+            end_temperature_gev: places.end_temperature_gev,
+        }),
     };
     Ok(Assembled {
         generator,
@@ -63,23 +93,118 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     })
 }
 
-fn field(
-    settings: &FieldSettings,
+/// What the hard partons are put into.
+#[derive(Default)]
+struct Places {
+    medium: Option<Medium>,
+    /// The field, where the medium has but one.
+    field: Option<Arc<dyn TemperatureField>>,
+    end_temperature_gev: f64,
+    origin: Option<Arc<dyn Origin>>,
+    fields: Option<FieldSeries>,
+}
+
+fn places(
+    settings: &MediumSettings,
+    first_id: i64,
     warnings: &mut Vec<String>,
-) -> Result<Box<dyn TemperatureField>, FieldFileError> {
-    Ok(match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Box::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Box::new(Longitudinal::new(*temperature_gev, *start_fm)),
-        FieldKind::Grid { file } => {
-            let mut data = read_field(file)?;
-            warnings.append(&mut data.warnings);
-            Box::new(Grid::new(data, settings.end_temperature_gev))
+) -> Result<Places, AssembleError> {
+    match &settings.field.kind {
+        FieldKind::Grid {
+            files,
+            events_per_field,
+        } if files.len() > 1 => {
+            let schedule = Schedule {
+                count: files.len(),
+                events_per_field: *events_per_field,
+            };
+            several(settings, files, schedule, first_id, warnings)
         }
+        FieldKind::Grid { files, .. } => one(settings, files.first(), warnings),
+        _ => one(settings, None, warnings),
+    }
+}
+
+fn one(
+    settings: &MediumSettings,
+    file: Option<&PathBuf>,
+    warnings: &mut Vec<String>,
+) -> Result<Places, AssembleError> {
+    let file = file.map(PathBuf::as_path);
+    let Surroundings { field, origin } = surroundings(settings, file, warnings)?;
+    Ok(Places {
+        medium: Some(Medium::new(settings, Arc::clone(&field))),
+        field: Some(field),
+        end_temperature_gev: settings.field.end_temperature_gev,
+        origin,
+        fields: None,
     })
+}
+
+/// All files are looked at, but only the first field is read before the run.
+fn several(
+    settings: &MediumSettings,
+    files: &[PathBuf],
+    schedule: Schedule,
+    first_id: i64,
+    warnings: &mut Vec<String>,
+) -> Result<Places, AssembleError> {
+    let mut weights = Vec::with_capacity(files.len());
+    let mut seen = Vec::with_capacity(files.len());
+    for file in files {
+        seen.push(version(file));
+        weights.push(weight(&settings.origin, file)?);
+    }
+    let mean = weights.iter().sum::<f64>() / weights.len() as f64;
+    for weight in &mut weights {
+        *weight /= mean;
+    }
+    let file = &files[schedule.field(first_id)];
+    let mut first = surroundings(settings, Some(file), warnings)?;
+    let origin = if births_follow_the_field(&settings.origin) {
+        None
+    } else {
+        first.origin.take()
+    };
+    let (files, reading) = (files.to_vec(), settings.clone());
+    let read = move |index: usize| {
+        let file = &files[index];
+        if version(file) != seen[index] {
+            let path = file.clone();
+            return Err(FieldReadError::from(AssembleError::Changed { path }));
+        }
+        one_more(&reading, file).map_err(FieldReadError::from)
+    };
+    Ok(Places {
+        medium: Some(Medium::new(settings, nothing())),
+        field: None,
+        end_temperature_gev: settings.field.end_temperature_gev,
+        origin,
+        fields: Some(FieldSeries::new(schedule, weights, first_id, first, read)),
+    })
+}
+
+/// Length and time of the last change, where the system tells them.
+fn version(file: &Path) -> Option<(u64, Option<SystemTime>)> {
+    let version = |about: Metadata| (about.len(), about.modified().ok());
+    file.metadata().ok().map(version)
+}
+
+/// A field counts by its number of collisions where these are the places of birth.
+fn weight(origin: &OriginSettings, file: &Path) -> Result<f64, AssembleError> {
+    let outline = read_outline(file)?;
+    if !matches!(origin, OriginSettings::CollisionDensity) {
+        return Ok(1.0);
+    }
+    let density = CollisionDensity::new(&outline, Placement::new(0.0, [0.0; 2]));
+    let density = density.map_err(|problem| AssembleError::BirthsIn {
+        path: file.to_owned(),
+        problem: problem.into(),
+    })?;
+    Ok(density.integral())
+}
+
+/// The medium's own field where every event brings its field along.
+fn nothing() -> Arc<dyn TemperatureField> {
+    Arc::new(Brick::new(0.0, 0.0))
 }

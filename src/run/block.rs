@@ -2,7 +2,7 @@
 
 use std::ops::Range;
 
-use super::{EventGenerator, EventTooLarge, FinalPartons, RunError, RunTotals};
+use super::{EventError, EventGenerator, FinalPartons, RunError, RunTotals};
 use crate::event::EventBlock;
 
 /// Events in a block: enough that handing it over costs nothing, few enough that memory stays small.
@@ -34,7 +34,18 @@ pub(super) fn fill<G: EventGenerator>(
     worker: &mut G::Worker,
     ids: Range<i64>,
     block: &mut EventBlock,
-) -> Result<FinalPartons, EventTooLarge> {
+) -> Result<FinalPartons, EventError> {
+    let filled = make(generator, worker, ids, block);
+    generator.rest(worker);
+    filled
+}
+
+fn make<G: EventGenerator>(
+    generator: &G,
+    worker: &mut G::Worker,
+    ids: Range<i64>,
+    block: &mut EventBlock,
+) -> Result<FinalPartons, EventError> {
     let mut finals = FinalPartons::default();
     for id in ids {
         let first_row = block.partons.len();
@@ -72,6 +83,14 @@ pub(super) fn settle<C>(
             ids.end,
             block.events.len(),
             block.partons.len()
+        )));
+    }
+    if !block.exits.is_empty() && block.exits.len() != rows {
+        return Err(RunError::Defect(format!(
+            "events {}..{} have {rows} rows, but {} exits from the medium",
+            ids.start,
+            ids.end,
+            block.exits.len()
         )));
     }
     totals.events += block.events.len() as u64;

@@ -1,8 +1,12 @@
 //! Makes one event from its number: source, origin and shower put together.
 
-use super::{EventGenerator, EventTooLarge, RunCounters};
+use std::sync::Arc;
+
+use super::exits::MediumExits;
+use super::fields::{Claim, FieldSeries, LostField};
+use super::{EventError, EventGenerator, EventTooLarge, RunCounters};
 use crate::event::{EventBlock, EventSummary};
-use crate::medium::OriginSettings;
+use crate::medium::origin::Origin;
 use crate::random::{Key, Purpose};
 use crate::shower::Shower;
 use crate::shower::counters::ShowerCounters;
@@ -20,29 +24,68 @@ pub struct Generator {
     pub source: Box<dyn HardSource>,
     /// The shower with its medium.
     pub shower: Shower,
-    /// Where jets are born; `None` without a medium.
-    pub origin: Option<OriginSettings>,
+    /// Where jets are born; `None` without a medium, and where each field has its own places of birth.
+    pub origin: Option<Arc<dyn Origin>>,
+    /// The temperature fields, where a run has several.
+    pub fields: Option<FieldSeries>,
     /// Keep branched partons.
     pub full_history: bool,
+    /// The medium whose exits are recorded; `None` where they are not.
+    pub exits: Option<MediumExits>,
+}
+
+/// What one worker owns.
+pub struct EventWorker {
+    /// Working memory of the showers.
+    pub walker: Walker,
+    /// The present field, where a run has several.
+    claim: Option<Claim>,
+}
+
+impl EventWorker {
+    /// Gives up the present field.
+    fn leave(&mut self) {
+        self.walker.field = None;
+        self.claim = None;
+    }
+
+    /// Goes into the field of an event.
+    fn enter(&mut self, fields: &FieldSeries, id: i64) -> Result<(), LostField> {
+        if self.claim.as_ref().is_some_and(|claim| claim.covers(id)) {
+            return Ok(());
+        }
+        self.leave();
+        let claim = fields.claim(id)?;
+        self.walker.field = Some(Arc::clone(&claim.surroundings().field));
+        self.claim = Some(claim);
+        Ok(())
+    }
 }
 
 impl EventGenerator for Generator {
-    type Worker = Walker;
+    type Worker = EventWorker;
     type Counters = ShowerCounters;
 
-    fn worker(&self) -> Walker {
-        self.shower.walker()
+    fn worker(&self) -> EventWorker {
+        EventWorker {
+            walker: self.shower.walker(),
+            claim: None,
+        }
     }
 
     fn generate(
         &self,
-        walker: &mut Walker,
+        worker: &mut EventWorker,
         id: i64,
         block: &mut EventBlock,
-    ) -> Result<(), EventTooLarge> {
+    ) -> Result<(), EventError> {
+        if let Some(fields) = &self.fields {
+            worker.enter(fields, id)?;
+        }
         let key = Key::event(self.seed, id as u64);
         let hard = self.source.draw(&mut key.stream(Purpose::SOURCE));
-        let origin_fm = self.origin_fm();
+        let source_weight = hard.weight * self.field_weight(id);
+        let origin_fm = self.origin_fm(worker, key);
         let first_row = block.partons.len();
         let mut record = Record {
             rows: &mut block.partons,
@@ -50,22 +93,33 @@ impl EventGenerator for Generator {
         };
         let weight = self
             .shower
-            .shower(walker, &hard, key, origin_fm, &mut record)
+            .shower(&mut worker.walker, &hard, key, origin_fm, &mut record)
             .map_err(|reason| EventTooLarge { id, reason })?;
+        if let Some(exits) = &self.exits {
+            exits.append(
+                worker.walker.field.as_deref(),
+                &block.partons[first_row..],
+                &mut block.exits,
+            );
+        }
         block.events.push(EventSummary {
             id,
-            source_weight: hard.weight,
-            weight: hard.weight * weight,
+            source_weight,
+            weight: source_weight * weight,
             hard_scale_gev: hard.hard_scale_gev,
             origin_fm: origin_fm.map(|component| component as f32),
-            field: if self.origin.is_some() { 0 } else { NO_FIELD },
+            field: self.field(id),
             partons_count: (block.partons.len() - first_row) as i32,
         });
         Ok(())
     }
 
-    fn counters(&self, walker: &Walker) -> ShowerCounters {
-        walker.tally.counters.clone()
+    fn rest(&self, worker: &mut EventWorker) {
+        worker.leave();
+    }
+
+    fn counters(&self, worker: &EventWorker) -> ShowerCounters {
+        worker.walker.tally.counters.clone()
     }
 }
 
@@ -91,16 +145,35 @@ impl RunCounters for ShowerCounters {
             named.push((name("accepted"), channel.accepted));
             named.push((name("overshoots"), channel.overshoots));
             named.push((name("cut_by_angle_limit"), channel.cut_by_angle_limit()));
+            named.push((name("outside_regime"), channel.outside_regime));
         }
         named
     }
 }
 
 impl Generator {
-    fn origin_fm(&self) -> [f64; 4] {
-        match self.origin {
-            None => [0.0; 4],
-            Some(OriginSettings::Fixed { x_fm, y_fm }) => [0.0, x_fm, y_fm, 0.0],
+    /// The `field` column of an event.
+    fn field(&self, id: i64) -> i32 {
+        match &self.fields {
+            Some(fields) => fields.schedule().field(id) as i32,
+            None if self.origin.is_some() => 0,
+            None => NO_FIELD,
         }
+    }
+
+    fn field_weight(&self, id: i64) -> f64 {
+        self.fields
+            .as_ref()
+            .map_or(1.0, |fields| fields.weights()[fields.schedule().field(id)])
+    }
+
+    fn origin_fm(&self, worker: &EventWorker, key: Key) -> [f64; 4] {
+        let claim = worker.claim.as_ref();
+        let own = claim.and_then(|claim| claim.surroundings().origin.as_ref());
+        let Some(origin) = own.or(self.origin.as_ref()) else {
+            return [0.0; 4];
+        };
+        let [x, y] = origin.draw(&mut key.stream(Purpose::ORIGIN));
+        [0.0, x, y, 0.0]
     }
 }

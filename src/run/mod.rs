@@ -6,13 +6,17 @@
 pub mod assemble;
 mod block;
 mod clock;
+pub mod exits;
+pub mod fields;
 mod final_partons;
 pub mod forecast;
 pub mod generator;
+mod origins;
 mod parallel;
 pub mod provenance;
 mod serial;
 pub mod summary;
+mod surroundings;
 
 use std::ops::Range;
 use std::sync::atomic::AtomicBool;
@@ -22,6 +26,7 @@ use crate::files::event_file::{EventFileError, EventFileWriter, WeightSums};
 use crate::shower::tree::TooManyBranchings;
 
 pub use block::EVENTS_PER_BLOCK;
+use fields::LostField;
 pub use final_partons::FinalPartons;
 
 /// Makes events from event numbers; shared by all workers.
@@ -34,17 +39,21 @@ pub trait EventGenerator: Sync {
     /// A fresh worker.
     fn worker(&self) -> Self::Worker;
 
-    /// Appends the one event of number `id` to `out`: its summary and its rows. The event may depend on nothing but
-    /// the generator and `id`.
+    /// Appends the one event of number `id` to `out`: its summary, its rows, and their exits from the medium where the
+    /// run records them. The event may depend on nothing but the generator and `id`.
     ///
     /// # Errors
-    /// [`EventTooLarge`] where the event would not end.
+    /// [`EventError`] where the event would not end, or an input that it needs is lost.
     fn generate(
         &self,
         worker: &mut Self::Worker,
         id: i64,
         out: &mut EventBlock,
-    ) -> Result<(), EventTooLarge>;
+    ) -> Result<(), EventError>;
+
+    /// The worker has come to the end of a block, and may not be asked for the next one soon: it gives up what others
+    /// may wait for.
+    fn rest(&self, _worker: &mut Self::Worker) {}
 
     /// What a worker has counted.
     fn counters(&self, worker: &Self::Worker) -> Self::Counters;
@@ -117,6 +126,17 @@ pub struct EventTooLarge {
     pub reason: TooManyBranchings,
 }
 
+/// Why an event cannot be made.
+#[derive(Clone, Debug, thiserror::Error)]
+pub enum EventError {
+    /// It would not end.
+    #[error(transparent)]
+    TooLarge(#[from] EventTooLarge),
+    /// Its temperature field cannot be had.
+    #[error(transparent)]
+    Field(#[from] LostField),
+}
+
 /// Events that [`probe`] makes.
 const PROBED_EVENTS: i64 = 16;
 
@@ -124,8 +144,8 @@ const PROBED_EVENTS: i64 = 16;
 /// written.
 ///
 /// # Errors
-/// [`EventTooLarge`] for the first such event.
-pub fn probe<G: EventGenerator>(generator: &G, ids: Range<i64>) -> Result<(), EventTooLarge> {
+/// [`EventError`] for the first such event.
+pub fn probe<G: EventGenerator>(generator: &G, ids: Range<i64>) -> Result<(), EventError> {
     let mut worker = generator.worker();
     let mut block = EventBlock::default();
     for id in ids.start..ids.end.min(ids.start + PROBED_EVENTS) {
@@ -144,9 +164,24 @@ pub enum RunError {
     /// An event would not end; what was committed before is intact.
     #[error(transparent)]
     TooLarge(#[from] EventTooLarge),
+    /// A temperature field cannot be had; what was committed before is intact.
+    #[error("{0}; the events committed before are intact")]
+    Field(LostField),
     /// A worker panicked or broke the driver's contract: a defect of the program.
     #[error("a defect in the program stopped the run: {0}")]
     Defect(String),
+}
+
+impl From<EventError> for RunError {
+    fn from(error: EventError) -> RunError {
+        match error {
+            EventError::TooLarge(event) => RunError::TooLarge(event),
+            EventError::Field(lost @ LostField::Panicked { .. }) => {
+                RunError::Defect(lost.to_string())
+            }
+            EventError::Field(lost) => RunError::Field(lost),
+        }
+    }
 }
 
 /// Makes the events `ids` on `threads` threads and sends them to `sink` in ascending order.
@@ -191,6 +226,18 @@ fn close<C: RunCounters>(sink: Sink, totals: &mut RunTotals<C>) -> Result<(), Ev
         totals.committed_events = writer.committed_events().unsigned_abs();
         Ok(())
     }
+}
+
+/// Commits what was written before an event could not be made; other failures leave the file as it is.
+fn keep(sink: Sink, error: RunError) -> RunError {
+    let events_before_are_sound = matches!(error, RunError::TooLarge(_) | RunError::Field(_));
+    if let Sink::File(mut writer) = sink
+        && events_before_are_sound
+        && let Err(failure) = writer.commit()
+    {
+        return failure.into();
+    }
+    error
 }
 
 /// What a panic said.

@@ -11,8 +11,8 @@ use crossbeam_channel::{Receiver, RecvTimeoutError, Sender, unbounded};
 
 use super::block::{block_count, block_ids, event_count, fill, settle};
 use super::{
-    EventGenerator, EventTooLarge, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
-    close, panic_message,
+    EventError, EventGenerator, FinalPartons, Progress, RunCounters, RunError, RunTotals, Sink,
+    close, keep, panic_message,
 };
 use crate::config::RecordSettings;
 use crate::event::EventBlock;
@@ -44,7 +44,7 @@ pub(super) fn run<G: EventGenerator>(
         Sink::File(writer) => Some(writer.record()),
     };
     let mut totals: RunTotals<G::Counters> = RunTotals::default();
-    std::thread::scope(|scope| {
+    let made = std::thread::scope(|scope| {
         let workers: Vec<_> = (0..threads)
             .map(|_| {
                 let reports = reports.clone();
@@ -81,7 +81,10 @@ pub(super) fn run<G: EventGenerator>(
             }
         }
         Ok::<_, RunError>(())
-    })?;
+    });
+    if let Err(error) = made {
+        return Err(keep(sink, error));
+    }
     totals.completed = totals.events == event_count(&ids);
     close(sink, &mut totals)?;
     Ok(totals)
@@ -117,7 +120,7 @@ enum Task {
 enum Report {
     Made(u64, EventBlock, FinalPartons),
     Packed(PackedGroup),
-    TooLarge(EventTooLarge),
+    Failed(EventError),
     Panicked(String),
 }
 
@@ -224,7 +227,7 @@ fn work<G: EventGenerator>(
                     let mut block: EventBlock = take(&board.spare_blocks);
                     match fill(generator, &mut worker, block_ids(ids, index), &mut block) {
                         Ok(finals) => Report::Made(index, block, finals),
-                        Err(event) => Report::TooLarge(event),
+                        Err(error) => Report::Failed(error),
                     }
                 }
                 Task::Pack(group) => {
@@ -312,7 +315,7 @@ impl<C> Coordinator<'_, C> {
                 self.early_groups[slot].insert(group.index, group);
                 self.write_groups(slot)
             }
-            Ok(Report::TooLarge(event)) => Err(event.into()),
+            Ok(Report::Failed(error)) => Err(error.into()),
             Ok(Report::Panicked(message)) => Err(RunError::Defect(message)),
             Err(RecvTimeoutError::Timeout) => Ok(()),
             Err(RecvTimeoutError::Disconnected) => {

@@ -2,8 +2,10 @@
 
 use std::ffi::OsString;
 use std::fs;
+use std::path::{Path, PathBuf};
 
 use super::clock::now_utc;
+use super::fields::FieldSeries;
 use super::generator::Generator;
 use super::{EventGenerator, RunCounters};
 use crate::config::RunPlan;
@@ -47,7 +49,7 @@ pub fn describe(plan: &RunPlan, generator: &Generator) -> Provenance {
         first_id: ids.start,
         last_id: ids.end - 1,
         kinematics: match plan.shower.ordering {
-            Ordering::Virtuality => Kinematics::Exact,
+            Ordering::Virtuality | Ordering::Angular => Kinematics::Exact,
             Ordering::Collinear => Kinematics::Collinear,
         },
         open_colour_lines: generator.source.open_colour_lines() as i32,
@@ -56,26 +58,46 @@ pub fn describe(plan: &RunPlan, generator: &Generator) -> Provenance {
         history: plan.record.history,
         compression: plan.record.compression,
         momentum_bits: plan.record.momentum_bits,
+        medium_exit: plan.record.medium_exit,
         effects: medium.map_or(Vec::new(), |medium| effect_names(&medium.effects)),
-        fields: medium.map_or(Vec::new(), |medium| vec![field(plan, &medium.field)]),
+        fields: medium.map_or(Vec::new(), |medium| {
+            let weights = generator.fields.as_ref().map(FieldSeries::weights);
+            fields(plan, &medium.field, weights)
+        }),
         counters: counters.named().into_iter().map(|(name, _)| name).collect(),
     }
 }
 
-fn field(plan: &RunPlan, settings: &FieldSettings) -> FieldEntry {
-    let (name, sha256) = match &settings.kind {
-        FieldKind::Brick { .. } => ("brick".to_owned(), String::new()),
-        FieldKind::Longitudinal { .. } => ("longitudinal".to_owned(), String::new()),
-        FieldKind::Grid { file } => {
-            let input = plan.inputs.iter().find(|input| input.path == *file);
-            let input = input.expect("the config hashes every input file");
-            let name = file.file_name().unwrap_or(file.as_os_str());
-            (name.to_string_lossy().into_owned(), input.sha256.clone())
-        }
+/// The fields that the events count, with their weights.
+fn fields(plan: &RunPlan, settings: &FieldSettings, weights: Option<&[f64]>) -> Vec<FieldEntry> {
+    let analytic = |name: &str| {
+        vec![FieldEntry {
+            name: name.to_owned(),
+            sha256: String::new(),
+            weight: 1.0,
+        }]
     };
+    match &settings.kind {
+        FieldKind::Brick { .. } => analytic("brick"),
+        FieldKind::Longitudinal { .. } => analytic("longitudinal"),
+        FieldKind::Radial { .. } => analytic("radial"),
+        FieldKind::Grid { files, .. } => {
+            let entry = |(index, file): (usize, &PathBuf)| FieldEntry {
+                weight: weights.map_or(1.0, |weights| weights[index]),
+                ..file_entry(plan, file)
+            };
+            files.iter().enumerate().map(entry).collect()
+        }
+    }
+}
+
+fn file_entry(plan: &RunPlan, file: &Path) -> FieldEntry {
+    let input = plan.inputs.iter().find(|input| input.path == *file);
+    let input = input.expect("the config hashes every input file");
+    let name = file.file_name().unwrap_or(file.as_os_str());
     FieldEntry {
-        name,
-        sha256,
+        name: name.to_string_lossy().into_owned(),
+        sha256: input.sha256.clone(),
         weight: 1.0,
     }
 }

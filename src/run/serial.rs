@@ -6,7 +6,7 @@ use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 
 use super::block::{block_count, block_ids, event_count, fill, settle};
-use super::{EventGenerator, Progress, RunError, RunTotals, Sink, close, panic_message};
+use super::{EventGenerator, Progress, RunError, RunTotals, Sink, close, keep, panic_message};
 use crate::event::EventBlock;
 use crate::files::event_file::{EventFileWriter, PackedGroup, Packer, RowGroup, RowGrouper};
 
@@ -35,7 +35,10 @@ pub(super) fn run<G: EventGenerator>(
         totals.counters = generator.counters(&worker);
         Ok::<_, RunError>(())
     }));
-    made.unwrap_or_else(|panic| Err(RunError::Defect(panic_message(panic))))?;
+    let made = made.unwrap_or_else(|panic| Err(RunError::Defect(panic_message(panic))));
+    if let Err(error) = made {
+        return Err(keep(sink, error));
+    }
     totals.completed = totals.events == event_count(&ids);
     close(sink, &mut totals)?;
     Ok(totals)

@@ -16,6 +16,8 @@ use crate::shower::counters::{ChannelCounters, ShowerCounters};
 const CAUTION: &str = "parton level, leading logarithm: no hadronization, no underlying event";
 /// An effective sample below this share of the events deserves a warning.
 const POOR_EFFECTIVE_SHARE: f64 = 0.1;
+/// More of an effect than this share outside its regime deserves a warning.
+const MUCH_OUTSIDE_REGIME: f64 = 0.1;
 /// More paths than this share leaving the field's data while hot deserve a warning.
 const MANY_PATHS_LEFT_HOT: f64 = 0.01;
 
@@ -119,8 +121,14 @@ pub struct ChannelSummary {
     pub acceptance: Option<f64>,
     /// Trials above their envelope.
     pub overshoots: u64,
-    /// Share of the effect's branchings that the limit to small angles cut away; `None` for the vacuum.
+    /// Share of the effect's branchings that the limit to small angles cut away; `None` where it cut nothing, and for
+    /// effects whose spectrum ends at small angles by itself.
     pub share_cut_by_angle_limit: Option<f64>,
+    /// Share of what the effect did (branchings that it made or let pass, partons that it acted on) outside the regime
+    /// of its model; `None` for the vacuum and for an effect that did nothing.
+    pub share_outside_regime: Option<f64>,
+    /// The regime in words; `None` for the vacuum.
+    pub regime: Option<&'static str>,
 }
 
 /// What partons met.
@@ -210,6 +218,9 @@ impl RunSummary {
                 channel.name, channel.overshoots, channel.trials
             ));
         }
+        for channel in &self.channels {
+            warnings.extend(channel.regime_warning());
+        }
         if self.events > 0
             && self
                 .medium
@@ -266,16 +277,18 @@ fn channels(plan: &RunPlan, counters: &ShowerCounters) -> Vec<ChannelSummary> {
     let effects = plan
         .medium
         .as_ref()
-        .map_or(Vec::new(), |medium| effect_names(&medium.effects));
-    let names = std::iter::once("vacuum".to_owned()).chain(effects);
-    let numbered = counters.channels.iter().enumerate();
-    let rows = names.zip(numbered);
-    rows.map(|(name, (place, counts))| ChannelSummary::new(name, place > 0, counts))
+        .map_or(&[][..], |medium| &medium.effects);
+    let regimes = effects.iter().map(|effect| Some(effect.model.regime));
+    let channels = std::iter::once(("vacuum".to_owned(), None))
+        .chain(effect_names(effects).into_iter().zip(regimes));
+    channels
+        .zip(&counters.channels)
+        .map(|((name, regime), counts)| ChannelSummary::new(name, regime, counts))
         .collect()
 }
 
 impl ChannelSummary {
-    fn new(name: String, is_induced: bool, counts: &ChannelCounters) -> ChannelSummary {
+    fn new(name: String, regime: Option<&'static str>, counts: &ChannelCounters) -> ChannelSummary {
         let cut = counts.cut_by_angle_limit() as f64;
         ChannelSummary {
             name,
@@ -284,8 +297,25 @@ impl ChannelSummary {
             acceptance: ratio(counts.accepted as f64, counts.trials as f64),
             overshoots: counts.overshoots,
             share_cut_by_angle_limit: ratio(cut, cut + counts.accepted as f64)
-                .filter(|_| is_induced),
+                .filter(|_| regime.is_some() && counts.cut_units > 0),
+            share_outside_regime: ratio(counts.outside_regime as f64, counts.accepted as f64)
+                .filter(|_| regime.is_some()),
+            regime,
         }
+    }
+}
+
+impl ChannelSummary {
+    fn regime_warning(&self) -> Option<String> {
+        let share = self
+            .share_outside_regime
+            .filter(|share| *share > MUCH_OUTSIDE_REGIME)?;
+        let regime = self.regime?;
+        Some(format!(
+            "{}: {:.0} % of what it did lies outside the regime of its model ({regime})",
+            self.name,
+            100.0 * share
+        ))
     }
 }
 

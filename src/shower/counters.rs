@@ -17,6 +17,9 @@ pub struct ChannelCounters {
     /// Expected number of branchings that the limit to small angles cut away, taking coupling and phase factor at the
     /// branchings that it left; in units of [`CUT_UNIT`], so that sums do not depend on their order.
     pub cut_units: u64,
+    /// Accepted trials outside the regime of the effect; of an effect on paths, settled partons (which then count as
+    /// accepted).
+    pub outside_regime: u64,
 }
 
 impl ChannelCounters {
@@ -62,6 +65,7 @@ impl AddAssign<&ShowerCounters> for ShowerCounters {
             sum.accepted += part.accepted;
             sum.overshoots += part.overshoots;
             sum.cut_units += part.cut_units;
+            sum.outside_regime += part.outside_regime;
         }
         self.branchings += other.branchings;
         self.legs_below_min_energy += other.legs_below_min_energy;

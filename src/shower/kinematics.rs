@@ -91,6 +91,11 @@ impl Frame {
         ]
     }
 
+    /// P+ of the jet, GeV.
+    pub fn plus_gev(&self) -> f64 {
+        self.plus_gev
+    }
+
     /// The axis of the jet.
     pub fn axis(&self) -> [f64; 3] {
         self.axis

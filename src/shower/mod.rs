@@ -16,7 +16,9 @@ pub mod ordering;
 pub mod proposal;
 pub mod tree;
 
-use crate::medium::Medium;
+use crate::medium::effects::{PathEffect, RateEffect};
+use crate::medium::field::TemperatureField;
+use crate::medium::{Medium, Placed};
 use crate::qcd::{Coupling, CouplingError, CouplingSettings};
 use crate::random::{Key, Purpose};
 use crate::source::HardProcess;
@@ -53,6 +55,8 @@ pub enum Ordering {
     Virtuality,
     /// Daughters start at t without constraint: leading-log evolution, fractions only.
     Collinear,
+    /// As `Virtuality`, and a vacuum emission's angle lies below that of the branching its parton was born in.
+    Angular,
 }
 
 /// Range of the light-cone fraction.
@@ -126,21 +130,22 @@ impl Shower {
         let stairs =
             [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));
         // Without effects nothing of the medium can act: the vacuum to the last bit.
-        let medium = medium.filter(|medium| !medium.effects().is_empty());
-        let effect_purposes = match &medium {
-            Some(medium) => medium
-                .effects()
-                .iter()
-                .map(|effect| Purpose::named(effect.name()))
-                .collect(),
-            None => Vec::new(),
-        };
+        let medium = medium.filter(|medium| !medium.effect_names().is_empty());
+        let (mut effect_purposes, mut path_purposes) = (Vec::new(), Vec::new());
+        if let Some(medium) = &medium {
+            let named = |rate: &Placed<dyn RateEffect>| Purpose::named(rate.effect.name());
+            effect_purposes.extend(medium.rates().iter().map(named));
+            let named = |path: &Placed<dyn PathEffect>| Purpose::named(path.effect.name());
+            path_purposes.extend(medium.paths().iter().map(named));
+        }
         let evolution = Evolution {
             rate,
             stairs,
             medium,
             emits: [settings.kernels.q_qg, settings.kernels.g_gg],
+            makes_pairs: settings.kernels.g_qq,
             effect_purposes,
+            path_purposes,
             envelope_factor: settings.envelope_factor,
         };
         Ok(Shower {
@@ -151,7 +156,12 @@ impl Shower {
 
     /// Working memory for one worker.
     pub fn walker(&self) -> Walker {
-        Walker::new(self.evolution.effect_purposes.len())
+        Walker::new(
+            self.evolution
+                .medium
+                .as_ref()
+                .map_or(0, |medium| medium.effect_names().len()),
+        )
     }
 
     /// Showers a hard process born at `origin_fm` (`[t, x, y, z]`); returns the shower's weight.
@@ -166,7 +176,8 @@ impl Shower {
         origin_fm: [f64; 4],
         record: &mut Record,
     ) -> Result<f64, TooManyBranchings> {
-        walker.walk(self.tools(), hard, key, origin_fm, record)
+        let field = walker.field.clone();
+        walker.walk(self.tools(field.as_deref()), hard, key, origin_fm, record)
     }
 
     /// The first branchings alone of what [`Shower::shower`] makes of the same arguments, `None` for a hard parton that
@@ -179,11 +190,13 @@ impl Shower {
         key: Key,
         origin_fm: [f64; 4],
     ) -> ([Option<Branching>; 2], f64) {
-        walker.first_branchings(self.tools(), hard, key, origin_fm)
+        let field = walker.field.clone();
+        walker.first_branchings(self.tools(field.as_deref()), hard, key, origin_fm)
     }
 
-    fn tools(&self) -> Tools<'_> {
+    fn tools<'a>(&'a self, field: Option<&'a dyn TemperatureField>) -> Tools<'a> {
         Tools {
+            field,
             evolution: &self.evolution,
             settings: &self.settings,
         }

@@ -5,7 +5,8 @@
 //! 1987, Nucl. Phys. B 289:810; from memory). Redrawing the pair instead would change the no-branching probability.
 
 use super::kinematics::relative_transverse_gev2;
-use super::leg::{Branching, Evolution, Leg, Tally};
+use super::leg::{Branching, Leg, Tally};
+use super::tree::Tools;
 
 /// What two partons made together must obey.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -42,7 +43,7 @@ impl Constraint {
 /// Evolves one or two legs until they fit together; a missing second leg counts as final.
 #[inline]
 pub fn settle(
-    evolution: &Evolution,
+    tools: Tools,
     legs: &mut [Leg],
     largest_t_gev2: [f64; 2],
     constraint: Constraint,
@@ -50,7 +51,7 @@ pub fn settle(
 ) -> [Option<Branching>; 2] {
     let mut branchings = [None; 2];
     for (branching, leg) in branchings.iter_mut().zip(legs.iter_mut()) {
-        *branching = leg.evolve(evolution, tally);
+        *branching = leg.evolve(tools, tally);
     }
     loop {
         let virtualities =
@@ -61,6 +62,6 @@ pub fn settle(
         let first_is_larger =
             virtualities[0] * largest_t_gev2[1] > virtualities[1] * largest_t_gev2[0];
         let resumed = if first_is_larger { 0 } else { 1 };
-        branchings[resumed] = legs[resumed].evolve(evolution, tally);
+        branchings[resumed] = legs[resumed].evolve(tools, tally);
     }
 }

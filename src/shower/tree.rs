@@ -6,13 +6,18 @@ use rand_distr::OpenClosed01;
 use thiserror::Error;
 
 use std::f64::consts::TAU;
+use std::sync::Arc;
 
 use super::kinematics::{Frame, Place, direction, relative_transverse_gev2};
-use super::leg::{Branching, Evolution, Leg, Tally};
+use super::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
 use super::ordering::{Constraint, settle};
 use super::{Lifetime, Ordering, ShowerSettings};
-use crate::event::{CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, NO_PARENT, Parton, Status};
-use crate::medium::field::Ray;
+use crate::event::{
+    CHANNEL_FIRST_EFFECT, CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, NO_PARENT, Parton, Status,
+};
+use crate::medium::Medium;
+use crate::medium::effects::Flight;
+use crate::medium::field::{Ray, TemperatureField};
 use crate::numerics::elementary::ln;
 use crate::qcd::kernels::Splitting;
 use crate::qcd::{FIRST_COLOUR_TAG, HBAR_C_GEV_FM, Species};
@@ -46,7 +51,9 @@ struct Node {
     species: Species,
     key: Key,
     branching: Branching,
+    /// At the vertex, and so with the virtuality `branching.t`.
     place: Place,
+    jet_fraction: f64,
     jet: usize,
     vertex_fm: [f64; 4],
     azimuth: [f64; 2],
@@ -58,7 +65,9 @@ struct Node {
 struct Settled {
     species: Species,
     key: Key,
+    /// At birth.
     place: Place,
+    jet_fraction: f64,
     jet: usize,
     birth_fm: [f64; 4],
     colours: [i32; 2],
@@ -67,16 +76,27 @@ struct Settled {
     channel: u8,
 }
 
+/// A settled parton at the end of its way.
+struct Flown {
+    place: Place,
+    momentum_gev: [f64; 4],
+    t_gev2: f64,
+}
+
 /// The working memory of one worker's showers.
 pub struct Walker {
     legs: [Leg; 2],
     stack: Vec<Node>,
     frames: [Option<Frame>; 2],
     next_colour: i32,
+    /// Place of the effect and four-momentum gained (GeV), of the parton that was settled last.
+    exchanges: Vec<(usize, [f64; 4])>,
     /// Row of the event's first parton in the record.
     first_row: usize,
     /// What judging changes.
     pub tally: Tally,
+    /// The temperature field of the event, where a run has several.
+    pub field: Option<Arc<dyn TemperatureField>>,
 }
 
 impl Walker {
@@ -87,12 +107,14 @@ impl Walker {
             stack: Vec::new(),
             frames: [None; 2],
             next_colour: FIRST_COLOUR_TAG,
+            exchanges: Vec::new(),
             first_row: 0,
             tally: Tally {
                 weight: 1.0,
                 counters: super::counters::ShowerCounters::new(effects),
                 trials_left: MOST_MEDIUM_TRIALS,
             },
+            field: None,
         }
     }
 
@@ -156,7 +178,9 @@ impl Walker {
         for (jet, parton) in hard.partons().iter().enumerate() {
             let plus_gev = match tools.settings.ordering {
                 Ordering::Collinear => 2.0 * parton.energy_gev,
-                Ordering::Virtuality => hard.plus_momentum_gev(jet, virtualities),
+                Ordering::Virtuality | Ordering::Angular => {
+                    hard.plus_momentum_gev(jet, virtualities)
+                }
             };
             self.frames[jet] = Some(Frame::new(parton.direction, plus_gev));
             let row = self.record_hard(hard, jet, origin_fm, record);
@@ -164,6 +188,7 @@ impl Walker {
                 species: parton.species,
                 key: key.daughter(jet as u64),
                 place: Place::PRIMARY,
+                jet_fraction: 1.0,
                 jet,
                 birth_fm: origin_fm,
                 colours: parton.colours,
@@ -188,27 +213,30 @@ impl Walker {
         for (place, parton) in partons.iter().enumerate() {
             let key = key.daughter(place as u64);
             let leg = &mut self.legs[place];
-            leg.start(tools.evolution, parton.species, key, largest_t);
-            let ray = Ray {
-                birth_fm: origin_fm,
-                direction: parton.direction,
-            };
-            leg.enter_medium(
+            leg.start(
                 tools.evolution,
+                parton.species,
                 key,
                 largest_t,
-                (parton.energy_gev, ray),
-                &mut self.tally,
+                AngularOrder::NONE,
             );
+            let entrance = Entrance {
+                key,
+                largest_t_gev2: largest_t,
+                energy_gev: parton.energy_gev,
+                ray: &Ray {
+                    birth_fm: origin_fm,
+                    direction: parton.direction,
+                },
+            };
+            leg.enter_medium(tools, &entrance, &mut self.tally);
         }
         let constraint = match (tools.settings.ordering, hard.topology) {
             (Ordering::Collinear, _) | (_, Topology::Single) => Constraint::None,
-            (Ordering::Virtuality, Topology::Pair { sqrt_s_gev }) => {
-                Constraint::TwoBody { sqrt_s_gev }
-            }
+            (_, Topology::Pair { sqrt_s_gev }) => Constraint::TwoBody { sqrt_s_gev },
         };
         settle(
-            tools.evolution,
+            tools,
             &mut self.legs[..partons.len()],
             [largest_t; 2],
             constraint,
@@ -250,18 +278,25 @@ impl Walker {
             z,
             daughters,
             channel,
+            ..
         } = node.branching;
         let largest_t = match tools.settings.ordering {
             Ordering::Collinear => [t, t],
-            Ordering::Virtuality => [z * t, (1.0 - z) * t],
+            Ordering::Virtuality | Ordering::Angular => [z * t, (1.0 - z) * t],
         };
         let keys = [node.key.daughter(0), node.key.daughter(1)];
+        let fractions = [z, 1.0 - z];
         for daughter in 0..2 {
+            let order = match tools.settings.ordering {
+                Ordering::Angular => self.angular_order(node, fractions[daughter]),
+                Ordering::Virtuality | Ordering::Collinear => AngularOrder::NONE,
+            };
             self.legs[daughter].start(
                 tools.evolution,
                 daughters[daughter],
                 keys[daughter],
                 largest_t[daughter],
+                order,
             );
         }
         if tools.evolution.medium.is_some() {
@@ -269,10 +304,10 @@ impl Walker {
         }
         let constraint = match tools.settings.ordering {
             Ordering::Collinear => Constraint::None,
-            Ordering::Virtuality => Constraint::Daughters { t, z },
+            Ordering::Virtuality | Ordering::Angular => Constraint::Daughters { t, z },
         };
         let branchings = settle(
-            tools.evolution,
+            tools,
             &mut self.legs,
             largest_t,
             constraint,
@@ -280,7 +315,7 @@ impl Walker {
         );
         let places = match tools.settings.ordering {
             Ordering::Collinear => node.place.split(z, [0.0; 2]),
-            Ordering::Virtuality => {
+            Ordering::Virtuality | Ordering::Angular => {
                 let virtualities =
                     branchings.map(|branching| branching.map_or(0.0, |branching| branching.t));
                 // The constraint holds to the last bit or the loop would have gone on, so the root exists.
@@ -295,11 +330,12 @@ impl Walker {
                 species: daughters[daughter],
                 key: keys[daughter],
                 place: places[daughter],
+                jet_fraction: fractions[daughter] * node.jet_fraction,
                 jet: node.jet,
                 birth_fm: node.vertex_fm,
                 colours: colours[daughter],
                 parent: node.row,
-                splitting_fraction: if daughter == 0 { z } else { 1.0 - z },
+                splitting_fraction: fractions[daughter],
                 channel: CHANNEL_VACUUM + channel as u8,
             };
             self.settle_one(tools, settled, branchings[daughter], daughter, record);
@@ -319,14 +355,13 @@ impl Walker {
                 birth_fm: node.vertex_fm,
                 direction: direction(momentum),
             };
-            let state = (momentum[3], ray);
-            self.legs[daughter].enter_medium(
-                tools.evolution,
-                keys[daughter],
-                largest_t[daughter],
-                state,
-                &mut self.tally,
-            );
+            let entrance = Entrance {
+                key: keys[daughter],
+                largest_t_gev2: largest_t[daughter],
+                energy_gev: momentum[3],
+                ray: &ray,
+            };
+            self.legs[daughter].enter_medium(tools, &entrance, &mut self.tally);
         }
     }
 
@@ -334,6 +369,17 @@ impl Walker {
         self.frames[jet]
             .as_ref()
             .expect("a jet has its frame before it has daughters")
+    }
+
+    /// Angles of a daughter's emissions lie below that of the branching that made it.
+    fn angular_order(&self, node: &Node, fraction: f64) -> AngularOrder {
+        let Branching { t, z, .. } = node.branching;
+        let spread_gev2 = t / (z * (1.0 - z));
+        let energy_gev = self.frame(node.jet).momentum(&node.place, t)[3];
+        AngularOrder {
+            most_gev2: spread_gev2 * fraction * fraction,
+            birth_angle2: spread_gev2 / (energy_gev * energy_gev),
+        }
     }
 
     /// Records a settled parton, and puts it on the stack if it branched.
@@ -346,59 +392,164 @@ impl Walker {
         leg: usize,
         record: &mut Record,
     ) {
-        let t = branching.map_or(0.0, |branching| branching.t);
-        let momentum = match tools.settings.ordering {
+        let t = match tools.settings.ordering {
             // Fractions only: light-like momenta along the jet.
-            Ordering::Collinear => self.frame(parton.jet).momentum(&parton.place, 0.0),
-            Ordering::Virtuality => self.frame(parton.jet).momentum(&parton.place, t),
+            Ordering::Collinear => 0.0,
+            Ordering::Virtuality | Ordering::Angular => {
+                branching.map_or(0.0, |branching| branching.t)
+            }
         };
+        let mut flown = Flown {
+            place: parton.place,
+            momentum_gev: self.frame(parton.jet).momentum(&parton.place, t),
+            t_gev2: branching.map_or(0.0, |branching| branching.t),
+        };
+        let (azimuth, vertex_fm, time_fm) = match &branching {
+            None => ([1.0, 0.0], parton.birth_fm, f64::INFINITY),
+            Some(branching) => self.geometry(tools, &parton, branching, flown.momentum_gev, leg),
+        };
+        self.exchanges.clear();
+        if let Some(medium) = &tools.evolution.medium
+            && !medium.paths().is_empty()
+        {
+            self.fly(tools, medium, &parton, leg, time_fm, &mut flown);
+        }
         let is_final = branching.is_none();
         let mut row = parton.parent;
         if is_final || record.full_history {
-            row = (record.rows.len() - self.first_row) as i32;
-            record.rows.push(Parton {
-                momentum_gev: momentum,
-                birth_fm: parton.birth_fm.map(|component| component as f32),
-                virtuality_squared_gev2: t as f32,
-                splitting_fraction: parton.splitting_fraction as f32,
-                jet_fraction: parton.place.fraction as f32,
-                pdg: parton.species.pdg(),
-                parent: parton.parent,
-                colour: parton.colours[0],
-                anticolour: parton.colours[1],
-                status: if is_final {
-                    Status::Final
-                } else {
-                    Status::Branched
-                },
-                channel: parton.channel,
-            });
+            row = self.record_parton(&parton, &flown, is_final, record);
+        }
+        if !self.exchanges.is_empty() {
+            let owner = if record.full_history {
+                row
+            } else {
+                parton.parent
+            };
+            self.record_exchanges(&parton, owner, record);
         }
         if let Some(branching) = branching {
-            let (azimuth, vertex_fm) = self.geometry(tools, &parton, &branching, momentum, leg);
-            let Settled {
-                species,
-                key,
-                place,
-                jet,
-                colours,
-                ..
-            } = parton;
             self.stack.push(Node {
-                species,
-                key,
-                branching,
-                place,
-                jet,
+                species: parton.species,
+                key: parton.key,
+                branching: Branching {
+                    t: flown.t_gev2,
+                    ..branching
+                },
+                place: flown.place,
+                jet_fraction: parton.jet_fraction,
+                jet: parton.jet,
                 vertex_fm,
                 azimuth,
-                colours,
+                colours: parton.colours,
                 row,
             });
         }
     }
 
-    /// Azimuth (cosine and sine) and vertex of a branching.
+    fn record_parton(
+        &self,
+        parton: &Settled,
+        flown: &Flown,
+        is_final: bool,
+        record: &mut Record,
+    ) -> i32 {
+        let row = (record.rows.len() - self.first_row) as i32;
+        record.rows.push(Parton {
+            momentum_gev: flown.momentum_gev,
+            birth_fm: parton.birth_fm.map(|component| component as f32),
+            virtuality_squared_gev2: flown.t_gev2 as f32,
+            splitting_fraction: parton.splitting_fraction as f32,
+            jet_fraction: parton.jet_fraction as f32,
+            pdg: parton.species.pdg(),
+            parent: parton.parent,
+            colour: parton.colours[0],
+            anticolour: parton.colours[1],
+            status: if is_final {
+                Status::Final
+            } else {
+                Status::Branched
+            },
+            channel: parton.channel,
+        });
+        row
+    }
+
+    /// Lets the effects on paths act on a parton on its way to its vertex, and notes what each exchanged.
+    fn fly(
+        &mut self,
+        tools: Tools,
+        medium: &Medium,
+        parton: &Settled,
+        leg: usize,
+        time_fm: f64,
+        flown: &mut Flown,
+    ) {
+        let is_final = time_fm.is_infinite();
+        let Some(journey) = self.legs[leg].journey(medium, time_fm, is_final) else {
+            return;
+        };
+        let frame = self.frames[parton.jet]
+            .as_ref()
+            .expect("a jet has its frame before it has daughters");
+        let mut flight = Flight {
+            plus_gev: parton.place.fraction * frame.plus_gev(),
+            transverse_gev: parton.place.transverse_gev,
+            t_gev2: flown.t_gev2,
+        };
+        for (path, purpose) in medium.paths().iter().zip(&tools.evolution.path_purposes) {
+            let before = flight;
+            let mut stream = parton.key.stream(*purpose);
+            let is_inside = path.effect.act(&journey, &mut flight, &mut stream);
+            let counters = &mut self.tally.counters.channels[path.place + 1];
+            counters.accepted += 1;
+            counters.outside_regime += !is_inside as u64;
+            if flight != before {
+                let earlier = flown.momentum_gev;
+                *flown = Flown {
+                    place: Place {
+                        fraction: flight.plus_gev / frame.plus_gev(),
+                        transverse_gev: flight.transverse_gev,
+                    },
+                    t_gev2: flight.t_gev2,
+                    momentum_gev: [0.0; 4],
+                };
+                flown.momentum_gev = frame.momentum(&flown.place, flown.t_gev2);
+                let gain = std::array::from_fn(|i| flown.momentum_gev[i] - earlier[i]);
+                self.exchanges.push((path.place, gain));
+            }
+        }
+    }
+
+    /// One row for each effect that exchanged four-momentum with a parton: taken from the medium where the energy is
+    /// positive, else given to it.
+    fn record_exchanges(&self, parton: &Settled, owner: i32, record: &mut Record) {
+        for (place, gain) in &self.exchanges {
+            let taken = gain[3] > 0.0;
+            let sign = if taken { 1.0 } else { -1.0 };
+            let momentum_gev = gain.map(|component| sign * component);
+            let [px, py, pz, energy] = momentum_gev;
+            let invariant = energy * energy - px * px - py * py - pz * pz;
+            record.rows.push(Parton {
+                momentum_gev,
+                birth_fm: parton.birth_fm.map(|component| component as f32),
+                virtuality_squared_gev2: invariant as f32,
+                splitting_fraction: 0.0,
+                jet_fraction: 0.0,
+                pdg: 0,
+                parent: owner,
+                colour: 0,
+                anticolour: 0,
+                status: if taken {
+                    Status::TakenFromMedium
+                } else {
+                    Status::GivenToMedium
+                },
+                channel: CHANNEL_FIRST_EFFECT + *place as u8,
+            });
+        }
+    }
+
+    /// Azimuth (cosine and sine), vertex and time of flight (fm) of a branching.
     fn geometry(
         &self,
         tools: Tools,
@@ -406,31 +557,26 @@ impl Walker {
         branching: &Branching,
         momentum: [f64; 4],
         leg: usize,
-    ) -> ([f64; 2], [f64; 4]) {
+    ) -> ([f64; 2], [f64; 4], f64) {
         let mut stream = parton.key.stream(Purpose::GEOMETRY);
         let (sin, cos) = libm::sincos(TAU * stream.random::<f64>());
         let uniform: f64 = stream.sample(OpenClosed01);
         let mean_fm = 2.0 * momentum[3] / branching.t * HBAR_C_GEV_FM;
-        let time_fm = if branching.channel > 0 {
-            self.legs[leg].induced_vertex_fm(tools.evolution, branching, parton.key)
-        } else {
-            match tools.settings.lifetime {
-                Lifetime::Exponential => -ln(uniform) * mean_fm,
-                Lifetime::Mean => mean_fm,
-            }
-        };
+        let induced_fm = self.legs[leg].induced_vertex_fm(tools, branching, parton.key);
+        let time_fm = induced_fm.unwrap_or_else(|| match tools.settings.lifetime {
+            Lifetime::Exponential => -ln(uniform) * mean_fm,
+            Lifetime::Mean => mean_fm,
+        });
         let per_energy = time_fm / momentum[3];
         let [t, x, y, z] = parton.birth_fm;
         let [px, py, pz, _] = momentum;
-        (
-            [cos, sin],
-            [
-                t + time_fm,
-                x + px * per_energy,
-                y + py * per_energy,
-                z + pz * per_energy,
-            ],
-        )
+        let vertex_fm = [
+            t + time_fm,
+            x + px * per_energy,
+            y + py * per_energy,
+            z + pz * per_energy,
+        ];
+        ([cos, sin], vertex_fm, time_fm)
     }
 
     /// Leading-colour flow: each splitting into a gluon opens one new line.
@@ -460,8 +606,18 @@ fn splitting(parent: Species, daughters: [Species; 2]) -> Splitting {
 /// What a walk reads but never changes.
 #[derive(Clone, Copy)]
 pub struct Tools<'a> {
+    /// The temperature field of the event, where it is not the medium's own.
+    pub field: Option<&'a dyn TemperatureField>,
     /// Rates, envelopes, medium.
     pub evolution: &'a Evolution,
     /// The shower's choices.
     pub settings: &'a ShowerSettings,
+}
+
+impl<'a> Tools<'a> {
+    /// The temperature field of the event.
+    #[inline]
+    pub fn field(self, medium: &'a Medium) -> &'a dyn TemperatureField {
+        self.field.unwrap_or_else(|| medium.field())
+    }
 }

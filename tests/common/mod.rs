@@ -9,10 +9,11 @@ use rand_pcg::Pcg64;
 
 use spindrift::config::History;
 use spindrift::event::{
-    CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, EventBlock, EventSummary, NO_PARENT, Parton, Status,
+    CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, EventBlock, EventSummary, MediumExit, NO_PARENT, Parton,
+    Status,
 };
 use spindrift::files::event_file::{FieldEntry, Kinematics, Provenance};
-use spindrift::run::{EventGenerator, EventTooLarge, RunCounters};
+use spindrift::run::{EventError, EventGenerator, RunCounters};
 
 pub const ENERGY_GEV: f64 = 100.0;
 
@@ -21,6 +22,8 @@ pub const ENERGY_GEV: f64 = 100.0;
 pub struct FakeGenerator {
     pub history: History,
     pub mean_branchings: u64,
+    /// Gives final partons an exit from a made-up medium.
+    pub exits: bool,
     /// Panics at this event.
     pub panic_at: Option<i64>,
 }
@@ -30,6 +33,7 @@ impl Default for FakeGenerator {
         FakeGenerator {
             history: History::Final,
             mean_branchings: 8,
+            exits: false,
             panic_at: None,
         }
     }
@@ -63,7 +67,7 @@ impl EventGenerator for FakeGenerator {
         worker: &mut FakeCounters,
         id: i64,
         out: &mut EventBlock,
-    ) -> Result<(), EventTooLarge> {
+    ) -> Result<(), EventError> {
         assert_ne!(self.panic_at, Some(id), "told to panic");
         let mut random = Pcg64::seed_from_u64(id.unsigned_abs());
         let branchings = random.random_range(0..=2 * self.mean_branchings);
@@ -75,9 +79,12 @@ impl EventGenerator for FakeGenerator {
             weight: 0.5 + random.random::<f64>(),
             hard_scale_gev: ENERGY_GEV / 2.0,
             origin_fm: [0.0, random.random(), random.random(), 0.0],
-            field: -1,
+            field: if self.exits { 0 } else { -1 },
             partons_count: rows.len() as i32,
         });
+        if self.exits {
+            out.exits.extend(rows.iter().map(made_up_exit));
+        }
         out.partons.extend(rows);
         Ok(())
     }
@@ -124,6 +131,24 @@ fn event_rows(random: &mut Pcg64, branchings: u64, history: History) -> Vec<Part
     match history {
         History::Full => rows,
         History::Final => only_hard_and_final(&rows),
+    }
+}
+
+/// The exit from a medium that ends at a time, on the path of a final parton.
+pub fn made_up_exit(row: &Parton) -> MediumExit {
+    const END_FM: f64 = 2.5;
+    let birth = row.birth_fm.map(f64::from);
+    let length = END_FM - birth[0];
+    if row.status != Status::Final || length <= 0.0 {
+        return MediumExit::NONE;
+    }
+    let [px, py, pz, _] = row.momentum_gev;
+    let size = (px * px + py * py + pz * pz).sqrt();
+    let along = |axis: usize| (birth[axis] + row.momentum_gev[axis - 1] / size * length) as f32;
+    MediumExit {
+        place_fm: [END_FM as f32, along(1), along(2), along(3)],
+        temperature_gev: 0.15,
+        velocity: [along(1) / 9.0, along(2) / 9.0, along(3)],
     }
 }
 
@@ -301,6 +326,7 @@ pub fn provenance(events: i64) -> Provenance {
         history: History::Final,
         compression: 1,
         momentum_bits: None,
+        medium_exit: false,
         effects: vec!["collinear-expansion".into()],
         fields: vec![FieldEntry {
             name: "fireball.h5".into(),

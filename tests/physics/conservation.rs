@@ -13,7 +13,7 @@
 use std::collections::HashMap;
 
 use spindrift::event::{CheckRules, Parton, Status, check_event};
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::numerics::vectors::invariant_square;
 use spindrift::qcd::{HBAR_C_GEV_FM, Species};
 use spindrift::run::EventGenerator;

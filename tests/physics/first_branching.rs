@@ -14,7 +14,7 @@
 use serde_json::Value;
 
 use spindrift::event::{Parton, Status};
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::qcd::Species;
 
 use super::support::reference::{self, Cumulative, logit, number};

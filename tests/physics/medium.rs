@@ -10,77 +10,23 @@
 //! Smallest visible bias: 0.4 % of a cumulative distribution; of the probability of an induced first branching p,
 //! 4.9 sqrt(p(1-p)/N), 2 % of it at p = .14.
 
+use std::sync::Arc;
+
 use serde_json::Value;
 
-use spindrift::medium::effects::collinear_expansion::CollinearExpansion;
-use spindrift::medium::effects::{Passage, RateEffect};
+use spindrift::medium::effects::collinear_expansion::{
+    CollinearExpansion, PhaseSettings, wave_number_per_fm,
+};
 use spindrift::medium::field::{Brick, Ray};
 use spindrift::medium::trace::{Outcome, Trace};
-use spindrift::medium::{FieldKind, Medium, MediumSettings, PhaseSettings, TransportKind};
-use spindrift::qcd::{HBAR_C_GEV_FM, Species};
+use spindrift::medium::{FieldKind, Medium, MediumSettings, TransportKind};
+use spindrift::qcd::HBAR_C_GEV_FM;
 
-use super::support::reference::{self, Cumulative, logit, number};
-use super::support::setup::{Setup, brick, up};
-use super::support::statistics::{LARGEST_DISTANCE, SIGNIFICANCE, binomial_p_value, distance};
+use super::support::first_branching::Sample;
+use super::support::reference::{self, number};
+use super::support::setup::brick;
 
 const EVENTS: u64 = 400_000;
-const INTERPOLATION_ERROR: f64 = 1e-5;
-
-#[derive(Default)]
-struct Sample {
-    unbranched: u64,
-    induced: u64,
-    ln_t: Vec<f64>,
-    logit_z: [Vec<f64>; 2],
-}
-
-fn sample(setup: &Setup) -> Sample {
-    let mut sample = Sample::default();
-    setup.first_branchings(EVENTS, |branching, weight| {
-        assert_eq!(weight, 1.0, "the density lies between 0 and its envelope");
-        let Some(branching) = branching else {
-            sample.unbranched += 1;
-            return;
-        };
-        sample.induced += (branching.channel > 0) as u64;
-        sample.ln_t.push(branching.t.ln());
-        let pair = !branching.daughters[1].is_gluon();
-        sample.logit_z[pair as usize].push(logit(branching.z));
-    });
-    sample
-}
-
-/// How far each statistic lies over its limit; the first is the probability of no branching, the second the induced
-/// share, then t and z.
-fn verdicts(case: &Value, mut sample: Sample) -> Vec<f64> {
-    let tail = |count, p| binomial_p_value(count, EVENTS, p).ln() / SIGNIFICANCE.ln();
-    let unbranched = number(case, "no_branching_probability");
-    let mut found = vec![
-        tail(sample.unbranched, unbranched),
-        tail(sample.induced, number(case, "induced_first_branchings")),
-    ];
-    let mut follow = |draws: &mut Vec<f64>, table: Cumulative| {
-        let limit = LARGEST_DISTANCE + INTERPOLATION_ERROR * (draws.len() as f64).sqrt();
-        found.push(distance(draws, |x| table.at(x)) / limit);
-    };
-    let t = &case["t"];
-    let table = Cumulative::new(&t["ln_t"], &t["cumulative"], 1.0 - unbranched);
-    follow(&mut sample.ln_t, table);
-    let kinds: &[&str] = if case["parton"] == "gluon" {
-        &["g-gg", "g-qq"]
-    } else {
-        &["q-qg"]
-    };
-    for (kind, draws) in kinds.iter().zip(&mut sample.logit_z) {
-        let entry = &case["z"][*kind];
-        let total = number(entry, "total");
-        follow(
-            draws,
-            Cumulative::new(&entry["logit_z"], &entry["cumulative"], total),
-        );
-    }
-    found
-}
 
 fn check(phase: &str) {
     let cases = reference::cases("medium");
@@ -90,7 +36,7 @@ fn check(phase: &str) {
     let mut count = 0;
     for (place, case) in chosen.enumerate() {
         let setup = reference::setup(case).with_seed(500 + place as u64);
-        let found = verdicts(case, sample(&setup));
+        let found = Sample::of(&setup, EVENTS).over_limits(case);
         println!("{}: over limit {found:.2?}", reference::name(case));
         assert!(
             found.iter().all(|value| *value < 1.0),
@@ -130,7 +76,8 @@ fn biased_media_fail() {
     let worst = |case: &Value, change: &dyn Fn(&mut MediumSettings)| {
         let mut setup = reference::setup(case).with_seed(600);
         change(setup.medium.as_mut().expect("a medium"));
-        verdicts(case, sample(&setup))
+        Sample::of(&setup, EVENTS)
+            .over_limits(case)
             .into_iter()
             .fold(0.0, f64::max)
     };
@@ -178,25 +125,26 @@ fn relative_changes_are_those_of_the_table() {
         else {
             panic!("a brick");
         };
-        let medium = Medium::new(&settings, Box::new(Brick::new(temperature_gev, length_fm)));
+        let medium = Medium::new(&settings, Arc::new(Brick::new(temperature_gev, length_fm)));
         let mut trace = Trace::default();
         let ray = Ray {
             birth_fm: [0.0; 4],
             direction: [0.6, 0.0, 0.8],
         };
         assert_eq!(
-            medium.trace(&ray, &mut trace),
+            medium.trace(medium.field(), &ray, 100.0, &mut trace),
             Outcome::Medium { left_hot: false }
         );
-        let passage = Passage {
-            species: up(),
-            energy_gev,
-            path: &trace.path,
-        };
+        let effect = CollinearExpansion::new(
+            "tested".into(),
+            reference::phase(&case["medium"]["effect"]),
+            false,
+        );
         for row in case["samples"].as_array().expect("a list") {
             let (t, z) = (number(row, "t_GeV2"), number(row, "z"));
             let expected = number(row, "ratio_without_limit");
-            let found = medium.effects()[0].relative_change(&passage, t, z);
+            let found = effect.strength_gev2(&trace.path, wave_number_per_fm(t, energy_gev))
+                / (z * (1.0 - z) * t);
             // The table has 12 digits.
             let scale = 1e-9 * (1.0 + expected.abs());
             assert!(
@@ -224,20 +172,15 @@ fn quoted_values_of_the_relative_change() {
     ];
     for (length_fm, t, phase, expected) in quoted {
         let settings = brick(length_fm, 1.0, phase);
-        let medium = Medium::new(&settings, Box::new(Brick::new(0.3, length_fm)));
+        let medium = Medium::new(&settings, Arc::new(Brick::new(0.3, length_fm)));
         let mut trace = Trace::default();
         let ray = Ray {
             birth_fm: [0.0; 4],
             direction: [1.0, 0.0, 0.0],
         };
-        medium.trace(&ray, &mut trace);
-        let passage = Passage {
-            species: Species::GLUON,
-            energy_gev: 100.0,
-            path: &trace.path,
-        };
-        let effect = CollinearExpansion::new("collinear-expansion".into(), phase);
-        let found = effect.relative_change(&passage, t, 0.5);
+        medium.trace(medium.field(), &ray, 100.0, &mut trace);
+        let effect = CollinearExpansion::new("collinear-expansion".into(), phase, false);
+        let found = effect.strength_gev2(&trace.path, wave_number_per_fm(t, 100.0)) / (0.25 * t);
         // Half of the last digit quoted.
         assert!(
             (found / expected - 1.0).abs() < 5e-6,

@@ -5,7 +5,8 @@
 //! - Vertices of induced first branchings: Kolmogorov-Smirnov at 10^-6, 3 checks.
 
 use spindrift::event::{EventSummary, Parton};
-use spindrift::medium::{FieldKind, MediumSettings, PhaseSettings, TransportKind};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::{FieldKind, MediumSettings, TransportKind};
 use spindrift::qcd::{HBAR_C_GEV_FM, Species};
 use spindrift::shower::FlavourOpening;
 

@@ -13,124 +13,35 @@
 //! (5.5). Checks: 26 for primaries, 3 for whole events, 2 for pairs.
 //! Smallest visible bias: 0.01 to 0.5 % of <w> of a primary, 0.3 % of <w> of an event, 2 % of <w> of a pair.
 
-use spindrift::medium::field::{Brick, Ray};
-use spindrift::medium::{Medium, MediumSettings, PhaseSettings};
-use spindrift::qcd::{Coupling, Species};
-use spindrift::random::{Key, Purpose};
+use spindrift::medium::MediumSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::field::Ray;
+use spindrift::qcd::Species;
+use spindrift::random::Key;
+use spindrift::shower::ShowerSettings;
 use spindrift::shower::counters::ShowerCounters;
 use spindrift::shower::kinematics::relative_transverse_gev2;
-use spindrift::shower::leg::{Branching, Evolution, Leg, Tally};
+use spindrift::shower::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
-use spindrift::shower::proposal::FractionRange;
-use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use spindrift::shower::tree::Tools;
 
-use super::support::reference::{self, Cumulative, logit, number};
-use super::support::setup::{ALPHA_S, Setup, brick, fixed, shower_settings, up};
+use super::support::first_branching::weighted_pulls;
+use super::support::reference::{self, number};
+use super::support::setup::{ALPHA_S, Setup, brick, fixed, up};
 use super::support::statistics::{LARGEST_PULL, Mean, pull_between};
 
 const EVENTS: u64 = 600_000;
 const ENVELOPE_FACTOR: f64 = 4.0;
 /// 1 + R may be this negative.
 const LOWEST_DENSITY: f64 = -5.0;
-const POINTS: usize = 20;
-/// Two-sided 10^-6/20.
-const LARGEST_PULL_OF_POINTS: f64 = 5.4513;
-
-/// Means of w times an indicator: below each point of a table.
-struct Weighted {
-    table: Cumulative,
-    points: Vec<f64>,
-    means: Vec<Mean>,
-}
-
-impl Weighted {
-    fn new(table: Cumulative) -> Weighted {
-        let points = table.some_points(POINTS);
-        Weighted {
-            means: vec![Mean::default(); points.len()],
-            table,
-            points,
-        }
-    }
-
-    fn add(&mut self, x: f64, weight: f64) {
-        for (point, mean) in self.points.iter().zip(&mut self.means) {
-            mean.add(if x < *point { weight } else { 0.0 });
-        }
-    }
-
-    fn add_nothing(&mut self) {
-        self.means.iter_mut().for_each(|mean| mean.add_zeros(1));
-    }
-
-    fn largest_pull(&self) -> f64 {
-        let pulls = self.points.iter().zip(&self.means);
-        pulls
-            .map(|(point, mean)| mean.pull(self.table.at(*point)).abs())
-            .fold(0.0, f64::max)
-    }
-}
 
 /// Pulls of <w>, of the unbranched share, and the largest ones of t and of z of each kind; weights as `weigh` says.
 fn pulls(case: &serde_json::Value, seed: u64, weigh: impl Fn(f64) -> f64) -> Vec<f64> {
     let mut setup = reference::setup(case).with_seed(seed);
     setup.shower.envelope_factor = ENVELOPE_FACTOR;
-    let table = |entry: &serde_json::Value, x: &str| {
-        Weighted::new(Cumulative::new(&entry[x], &entry["cumulative"], 1.0))
-    };
-    let mut in_t = table(&case["t"], "ln_t");
-    let kinds: &[&str] = if case["parton"] == "gluon" {
-        &["g-gg", "g-qq"]
-    } else {
-        &["q-qg"]
-    };
-    let mut in_z: Vec<Weighted> = kinds
-        .iter()
-        .map(|kind| table(&case["z"][*kind], "logit_z"))
-        .collect();
-    let (mut all, mut unbranched) = (Mean::default(), Mean::default());
-    setup.first_branchings(EVENTS, |branching, weight| {
-        let weight = weigh(weight);
-        all.add(weight);
-        let Some(branching) = branching else {
-            unbranched.add(weight);
-            in_t.add_nothing();
-            in_z.iter_mut().for_each(Weighted::add_nothing);
-            return;
-        };
-        unbranched.add_zeros(1);
-        in_t.add(branching.t.ln(), weight);
-        let pair = !branching.daughters[1].is_gluon();
-        for (kind, weighted) in in_z.iter_mut().enumerate() {
-            if kind == pair as usize {
-                weighted.add(logit(branching.z), weight);
-            } else {
-                weighted.add_nothing();
-            }
-        }
-    });
-    println!(
-        "{}: <w> - 1 = {:+.1e} +- {:.1e}, <w^2> = {:.3}, effective {:.2} of the events",
-        reference::name(case),
-        all.value() - 1.0,
-        all.error(),
-        all.variance() + 1.0,
-        all.effective_size() / EVENTS as f64
-    );
-    let of_weight = if all.variance() > 0.0 {
-        all.pull(1.0)
-    } else {
-        0.0
-    };
-    let mut found = vec![
-        of_weight,
-        unbranched.pull(number(case, "no_branching_probability")),
-    ];
-    // Points share one limit; scaled to the limit of a single pull.
-    let scale = LARGEST_PULL / LARGEST_PULL_OF_POINTS;
-    found.push(in_t.largest_pull() * scale);
-    found.extend(in_z.iter().map(|weighted| weighted.largest_pull() * scale));
-    found
+    let found = weighted_pulls(case, &setup, EVENTS, weigh);
+    println!("{}: {}", reference::name(case), found.weights);
+    found.pulls
 }
 
 fn cases() -> Vec<serde_json::Value> {
@@ -209,6 +120,7 @@ fn whole_events_have_the_mean_weight_one() {
 /// Two daughters of a branching: what they are evolved with.
 struct Pair {
     evolution: Evolution,
+    settings: ShowerSettings,
     t: f64,
     z: f64,
     energies_gev: [f64; 2],
@@ -216,30 +128,14 @@ struct Pair {
 }
 
 fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> Pair {
-    let mut settings = shower_settings();
-    settings.envelope_factor = envelope_factor;
-    let coupling = fixed(alpha_s);
-    let rate = VacuumRate {
-        coupling: Coupling::new(&coupling).expect("a fixed coupling"),
-        range: FractionRange {
-            end_t_gev2: settings.virtuality_cutoff_gev,
-            kind: settings.z_range,
-        },
-        flavours: FlavourRule::new(&settings, coupling.quark_masses_gev),
-    };
     // Energetic enough for the density to be negative up to the virtualities that the constraint discards.
-    let (t, z, energy_gev) = (200.0, 0.4, 500.0);
-    let stairs = [false, true].map(|gluon| Staircase::new(&rate, &settings, gluon, t));
-    let medium = medium.map(|medium| Medium::new(&medium, Box::new(Brick::new(0.3, 2.0))));
+    let (t, z, energy_gev) = (200.0_f64, 0.4, 500.0);
+    let mut setup = Setup::single(up(), energy_gev, t.sqrt()).with_coupling(fixed(alpha_s));
+    setup.shower.envelope_factor = envelope_factor;
+    setup.medium = medium;
     Pair {
-        evolution: Evolution {
-            rate,
-            stairs,
-            medium,
-            emits: [true, true],
-            effect_purposes: vec![Purpose::named("collinear-expansion")],
-            envelope_factor,
-        },
+        evolution: setup.evolution(),
+        settings: setup.shower,
         t,
         z,
         energies_gev: [z * energy_gev, (1.0 - z) * energy_gev],
@@ -248,6 +144,14 @@ fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> P
 }
 
 impl Pair {
+    fn tools(&self) -> Tools<'_> {
+        Tools {
+            field: None,
+            evolution: &self.evolution,
+            settings: &self.settings,
+        }
+    }
+
     fn largest_t(&self) -> [f64; 2] {
         [self.z * self.t, (1.0 - self.z) * self.t]
     }
@@ -258,13 +162,24 @@ impl Pair {
         for (place, leg) in legs.iter_mut().enumerate() {
             let key = Key::event(self.seed, id).daughter(place as u64);
             let largest_t = self.largest_t()[place];
-            leg.start(&self.evolution, species[place], key, largest_t);
+            leg.start(
+                &self.evolution,
+                species[place],
+                key,
+                largest_t,
+                AngularOrder::NONE,
+            );
             let ray = Ray {
                 birth_fm: [0.0; 4],
                 direction: [1.0, 0.0, 0.0],
             };
-            let state = (self.energies_gev[place], ray);
-            leg.enter_medium(&self.evolution, key, largest_t, state, tally);
+            let entrance = Entrance {
+                key,
+                largest_t_gev2: largest_t,
+                energy_gev: self.energies_gev[place],
+                ray: &ray,
+            };
+            leg.enter_medium(self.tools(), &entrance, tally);
         }
         legs
     }
@@ -278,7 +193,7 @@ impl Pair {
             z: self.z,
         };
         let largest = self.largest_t();
-        let branchings = settle(&self.evolution, &mut legs, largest, constraint, &mut tally);
+        let branchings = settle(self.tools(), &mut legs, largest, constraint, &mut tally);
         (branchings, tally.weight)
     }
 
@@ -287,7 +202,7 @@ impl Pair {
     fn by_hand(&self, id: u64) -> ([Option<Branching>; 2], f64, f64, bool) {
         let mut tallies = [tally(), tally()];
         let mut legs = self.legs(id, &mut tallies[0]);
-        let mut branchings = [0, 1].map(|i| legs[i].evolve(&self.evolution, &mut tallies[i]));
+        let mut branchings = [0, 1].map(|i| legs[i].evolve(self.tools(), &mut tallies[i]));
         let mut remembered = [tallies[0].weight, tallies[1].weight];
         let mut kept = remembered[0] * remembered[1];
         let mut resumed = false;
@@ -300,7 +215,7 @@ impl Pair {
             let share = [0, 1].map(|i| t[i] / self.largest_t()[i]);
             let i = (share[1] >= share[0]) as usize;
             tallies[i].weight = 1.0;
-            branchings[i] = legs[i].evolve(&self.evolution, &mut tallies[i]);
+            branchings[i] = legs[i].evolve(self.tools(), &mut tallies[i]);
             kept *= tallies[i].weight;
             remembered[i] = tallies[i].weight;
         }

@@ -21,7 +21,7 @@
 use std::sync::atomic::AtomicBool;
 
 use spindrift::event::{EventBlock, Parton, Status};
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
 use spindrift::qcd::Species;
 use spindrift::run::{EventGenerator, Sink, run};
 
@@ -184,7 +184,7 @@ fn twins(setup: &Setup, adds_only: bool, other_seed: Option<u64>) -> Totals {
         .clear();
     vacuum_setup.seed = other_seed.unwrap_or(setup.seed);
     let (vacuum, medium) = (vacuum_setup.generator(), setup.generator());
-    let (mut vacuum_walker, mut medium_walker) = (vacuum.worker(), medium.worker());
+    let (mut vacuum_worker, mut medium_worker) = (vacuum.worker(), medium.worker());
     let mut blocks = [EventBlock::default(), EventBlock::default()];
     let mut totals = Totals {
         events: 0,
@@ -201,10 +201,10 @@ fn twins(setup: &Setup, adds_only: bool, other_seed: Option<u64>) -> Totals {
     for id in 0..EVENTS {
         blocks.iter_mut().for_each(EventBlock::clear);
         vacuum
-            .generate(&mut vacuum_walker, id, &mut blocks[0])
+            .generate(&mut vacuum_worker, id, &mut blocks[0])
             .unwrap();
         medium
-            .generate(&mut medium_walker, id, &mut blocks[1])
+            .generate(&mut medium_worker, id, &mut blocks[1])
             .unwrap();
         let [before, after] = [&blocks[0].partons, &blocks[1].partons];
         let mut found = Comparison::default();
@@ -215,7 +215,7 @@ fn twins(setup: &Setup, adds_only: bool, other_seed: Option<u64>) -> Totals {
             adds_only,
             &mut found,
         );
-        let accepted = medium_walker.tally.counters.channels[1].accepted;
+        let accepted = medium_worker.walker.tally.counters.channels[1].accepted;
         if adds_only && accepted == acted {
             assert!(
                 before == after || other_seed.is_some(),
@@ -233,7 +233,7 @@ fn twins(setup: &Setup, adds_only: bool, other_seed: Option<u64>) -> Totals {
         totals.unexplained += found.unexplained;
         totals.same += found.same;
     }
-    totals.overshoots = medium_walker.tally.counters.channels[0].overshoots;
+    totals.overshoots = medium_worker.walker.tally.counters.channels[0].overshoots;
     println!(
         "{:?}: of {} events {} changed, {} met no accepted induced trial; pairs: {} same, {} with an induced branching, \
          {} with a lower or missing vacuum branching, {} relieved, {} unexplained",

@@ -25,6 +25,13 @@ PARTONS = {
     "virtuality_squared": ("f4", "GeV^2"), "splitting_fraction": ("f4", "1"), "jet_fraction": ("f4", "1"),
     "birth_t": ("f4", "fm"), "birth_x": ("f4", "fm"), "birth_y": ("f4", "fm"), "birth_z": ("f4", "fm"), "channel": ("u1", "1"),
 }  # fmt: skip
+# Only where record.medium_exit is true, and then all of them.
+EXITS = {
+    "exit_t": ("f4", "fm"), "exit_x": ("f4", "fm"), "exit_y": ("f4", "fm"), "exit_z": ("f4", "fm"),
+    "exit_temperature": ("f4", "GeV"), "exit_ux": ("f4", "1"), "exit_uy": ("f4", "1"), "exit_uz": ("f4", "1"),
+}  # fmt: skip
+FINAL = 1
+SINGLE = float(np.finfo("f4").eps)
 COUNTERS = ("trials", "overshoots")
 
 
@@ -52,10 +59,20 @@ def check_attributes(path):
             assert any(counter in name for name in file.attrs), f"no counter of {counter}"
 
 
+def records_exits(file):
+    """Whether the config in the file asks for exits from the medium."""
+    return json.loads(file.attrs["config"])["record"]["medium_exit"]
+
+
+def parton_columns(file):
+    """The columns that a file's table of partons must have."""
+    return PARTONS | EXITS if records_exits(file) else PARTONS
+
+
 def check_layout(path):
     """Every dataset: type, units, description, chunks, growth, checksum, named axis; nothing undocumented."""
     with h5py.File(path) as file:
-        for group, columns, scale in (("events", EVENTS, "event"), ("partons", PARTONS, "parton")):
+        for group, columns, scale in (("events", EVENTS, "event"), ("partons", parton_columns(file), "parton")):
             names = set(file[group])
             assert set(columns) <= names, f"missing in /{group}: {set(columns) - names}"
             assert names - set(columns) <= {"variation_weights"}, f"undocumented in /{group}: {names - set(columns)}"
@@ -106,8 +123,34 @@ def check_xarray(path):
 def jagged(path):
     """partons[event, row] with all columns, and the attributes."""
     with h5py.File(path) as file:
-        columns = {name: file["partons"][name][()] for name in PARTONS}
+        columns = {name: file["partons"][name][()] for name in parton_columns(file)}
         return ak.unflatten(ak.zip(columns), file["events/partons_count"][()]), dict(file.attrs)
+
+
+def check_exits(path):
+    """Exits: final partons alone have them, whole; on the light-like path from birth, not colder than the end temperature."""
+    partons, attributes = jagged(path)
+    field = json.loads(attributes["config"])["medium"]["field"]
+    rows = {name: np.asarray(ak.flatten(partons[name])).astype("f8") for name in ak.fields(partons)}
+    missing = np.array([np.isnan(rows[name]) for name in EXITS])
+    assert np.all(missing.all(axis=0) == missing.any(axis=0)), "an exit is there in part"
+    there = ~missing[0]
+    assert np.all(rows["status"][there] == FINAL), "a row that is no final parton has an exit"
+    finals = rows["status"] == FINAL
+    assert 0 < there.sum() <= finals.sum(), f"{there.sum()} exits of {finals.sum()} final partons"
+    rows = {name: column[there] for name, column in rows.items()}
+    length = rows["exit_t"] - rows["birth_t"]
+    assert np.all(length >= 0.0), "an exit before birth"
+    size = np.sqrt(rows["px"] ** 2 + rows["py"] ** 2 + rows["pz"] ** 2)
+    for axis in "xyz":
+        off = rows[f"exit_{axis}"] - rows[f"birth_{axis}"] - rows[f"p{axis}"] / size * length
+        allowed = SINGLE * (np.abs(rows[f"exit_{axis}"]) + rows["exit_t"]) + 1e-9 * length
+        assert np.all(np.abs(off) <= allowed), f"an exit off its path along {axis} by {np.abs(off).max():.1e} fm"
+    coldest = np.float32(field["end_temperature_GeV"])
+    assert rows["exit_temperature"].min() >= coldest, f"an exit at {rows['exit_temperature'].min()} GeV"
+    if field["kind"] == "brick":
+        assert np.allclose(rows["exit_t"], field["length_fm"], rtol=1e-5), "the brick is not left at its end"
+        assert np.all(rows["exit_ux"] == 0.0) and np.all(rows["exit_uz"] == 0.0), "a brick moves"
 
 
 def flat_tables(path):
@@ -118,7 +161,9 @@ def flat_tables(path):
 
 def check_checksum_is_real(path, work):
     """A byte flipped in stored data is noticed by HDF5 itself, for every column."""
-    for target in [f"events/{name}" for name in EVENTS] + [f"partons/{name}" for name in PARTONS]:
+    with h5py.File(path) as file:
+        targets = [f"events/{name}" for name in EVENTS] + [f"partons/{name}" for name in parton_columns(file)]
+    for target in targets:
         with h5py.File(path) as file:
             chunk = file[target].id.get_chunk_info(0)
         content = bytearray(path.read_bytes())

@@ -82,6 +82,12 @@ class Leg:
         """Density per d ln t du of one channel, without the cut of the z range."""
         return self.vacuum_density(channel, t, u) * (1.0 + self.induced_ratio(channel, t, u))
 
+    def part_density(self, channel, t, u, part):
+        """The density of all, of what the vacuum channel keeps, or of what is induced."""
+        ratio = self.induced_ratio(channel, t, u)
+        share = {"all": 1.0 + ratio, "vacuum": 1.0 + np.minimum(ratio, 0.0), "induced": np.maximum(ratio, 0.0)}[part]
+        return self.vacuum_density(channel, t, u) * share
+
     def vacuum_density(self, channel, t, u):
         z, rest = 1.0 / (1.0 + np.exp(-u)), 1.0 / (1.0 + np.exp(u))
         if channel == "q-qg":
@@ -234,9 +240,6 @@ class Leg:
 
         def integrand(y):
             t = self.t_of(y)
-            vacuum = self.vacuum_density(channel, t, column)
-            ratio = self.induced_ratio(channel, t, column)
-            share = {"all": 1.0 + ratio, "vacuum": 1.0 + np.minimum(ratio, 0.0), "induced": np.maximum(ratio, 0.0)}[part]
-            return vacuum * share * np.exp(-self.survival_spline(y)) * self.dlnt_dy(y)
+            return self.part_density(channel, t, column, part) * np.exp(-self.survival_spline(y)) * self.dlnt_dy(y)
 
         return integrate_rows(integrand, edges, gauss(12))

@@ -1,324 +1,16 @@
-//! The table of keys: name, form, unit, range, default, when it is used, and what it means.
-//!
-//! This file says what an entry is; [`table`] and [`medium`] hold the entries.
+//! The table of keys: [`table`], [`medium`] and what belongs to it hold the entries.
 
+mod effects;
+mod field;
 mod medium;
+mod origin;
 mod table;
+mod transport;
 
+pub use crate::parameters::{Choice, Form, Key, Length, Need, Range, Section, When};
+pub use field::HOTTEST_GEV;
+pub use origin::CUSTOM;
 pub use table::CONFIG;
-
-use crate::qcd::Species;
-
-/// A JSON object of the config: its keys.
-#[derive(Debug)]
-pub struct Section {
-    /// What the object is about.
-    pub about: &'static str,
-    /// Its keys, in the order of the resolved config.
-    pub keys: &'static [Key],
-}
-
-/// One key.
-#[derive(Clone, Copy, Debug)]
-pub struct Key {
-    /// Its name.
-    pub name: &'static str,
-    /// What its value looks like.
-    pub form: Form,
-    /// Unit, where it has a dimension.
-    pub unit: Option<&'static str>,
-    /// Whether it must be there.
-    pub need: Need,
-    /// The choices that use it: all must hold.
-    pub when: &'static [When],
-    /// False for a key that a later version will know.
-    pub built: bool,
-    /// What it means.
-    pub about: &'static str,
-    /// The likely mistake behind a value out of range.
-    pub hint: Option<&'static str>,
-}
-
-/// Whether a key must be there.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Need {
-    /// Always, where it is used.
-    Required,
-    /// No; absent means something by itself.
-    Optional,
-    /// No; absent means this JSON text.
-    Default(&'static str),
-}
-
-/// A key is used when another key of the same section has one of some values.
-#[derive(Clone, Copy, Debug)]
-pub struct When {
-    /// The other key, a [`Form::Choice`].
-    pub key: &'static str,
-    /// Its values.
-    pub is: &'static [&'static str],
-}
-
-/// What a value looks like.
-#[derive(Clone, Copy, Debug)]
-pub enum Form {
-    /// A finite number in a range.
-    Number(Range),
-    /// An integer from the first to the second, both included.
-    Count(u64, u64),
-    /// `true` or `false`.
-    Flag,
-    /// One of some words.
-    Choice(&'static [Choice]),
-    /// The name of a parton.
-    Parton,
-    /// `"transverse"` or a vector.
-    Direction,
-    /// The path of a file.
-    File,
-    /// The address of a JSON Schema, for editors; not looked at.
-    SchemaAddress,
-    /// A list of so many values of one form.
-    List(&'static Form, Length),
-    /// A list that must be empty until a later version.
-    EmptyList,
-    /// An object.
-    Section(&'static Section),
-    /// An object or null.
-    OptionalSection(&'static Section),
-}
-
-/// Smallest and largest length of a list.
-#[derive(Clone, Copy, Debug)]
-pub struct Length {
-    /// Smallest.
-    pub least: usize,
-    /// Largest.
-    pub most: usize,
-}
-
-/// One word of a [`Form::Choice`].
-#[derive(Clone, Copy, Debug)]
-pub struct Choice {
-    /// The word.
-    pub name: &'static str,
-    /// False for a word that a later version will know.
-    pub built: bool,
-    /// What it means.
-    pub about: &'static str,
-}
-
-/// A range of numbers.
-#[derive(Clone, Copy, Debug)]
-pub struct Range {
-    /// Lower end.
-    pub low: f64,
-    /// Upper end.
-    pub high: f64,
-    /// Whether the lower end belongs to it.
-    pub low_included: bool,
-    /// Whether the upper end belongs to it.
-    pub high_included: bool,
-}
-
-impl Range {
-    /// Both ends excluded.
-    const fn between(low: f64, high: f64) -> Self {
-        Range {
-            low,
-            high,
-            low_included: false,
-            high_included: false,
-        }
-    }
-
-    /// Upper end included.
-    const fn above(low: f64, high: f64) -> Self {
-        Range {
-            high_included: true,
-            ..Range::between(low, high)
-        }
-    }
-
-    /// Both ends included.
-    const fn from(low: f64, high: f64) -> Self {
-        Range {
-            low_included: true,
-            ..Range::above(low, high)
-        }
-    }
-
-    /// Whether a number lies in it; never for NaN.
-    pub fn contains(&self, number: f64) -> bool {
-        let above = number > self.low || (self.low_included && number == self.low);
-        let below = number < self.high || (self.high_included && number == self.high);
-        above && below
-    }
-
-    /// The range in words.
-    pub fn words(&self) -> String {
-        let low = if self.low_included {
-            "at least"
-        } else {
-            "above"
-        };
-        let high = if self.high_included {
-            "at most"
-        } else {
-            "below"
-        };
-        format!("{low} {} and {high} {}", self.low, self.high)
-    }
-}
-
-impl Key {
-    const fn new(name: &'static str, form: Form, need: Need, about: &'static str) -> Self {
-        Key {
-            name,
-            form,
-            unit: None,
-            need,
-            when: &[],
-            built: true,
-            about,
-            hint: None,
-        }
-    }
-
-    const fn required(name: &'static str, form: Form, about: &'static str) -> Self {
-        Key::new(name, form, Need::Required, about)
-    }
-
-    const fn optional(name: &'static str, form: Form, about: &'static str) -> Self {
-        Key::new(name, form, Need::Optional, about)
-    }
-
-    const fn default(
-        name: &'static str,
-        form: Form,
-        default: &'static str,
-        about: &'static str,
-    ) -> Self {
-        Key::new(name, form, Need::Default(default), about)
-    }
-
-    /// A key that a later version will know.
-    const fn planned(name: &'static str, about: &'static str) -> Self {
-        Key {
-            built: false,
-            ..Key::optional(name, Form::Flag, about)
-        }
-    }
-
-    const fn unit(self, unit: &'static str) -> Self {
-        Key {
-            unit: Some(unit),
-            ..self
-        }
-    }
-
-    const fn when(self, when: &'static [When]) -> Self {
-        Key { when, ..self }
-    }
-
-    const fn hint(self, hint: &'static str) -> Self {
-        Key {
-            hint: Some(hint),
-            ..self
-        }
-    }
-
-    /// The default as JSON text.
-    pub fn default_text(&self) -> Option<&'static str> {
-        match self.need {
-            Need::Default(text) => Some(text),
-            Need::Required | Need::Optional => None,
-        }
-    }
-}
-
-impl Choice {
-    const fn built(name: &'static str, about: &'static str) -> Self {
-        Choice {
-            name,
-            built: true,
-            about,
-        }
-    }
-
-    const fn planned(name: &'static str, about: &'static str) -> Self {
-        Choice {
-            built: false,
-            ..Choice::built(name, about)
-        }
-    }
-}
-
-impl Section {
-    /// The key of a name.
-    pub fn key(&self, name: &str) -> Option<&'static Key> {
-        self.keys.iter().find(|key| key.name == name)
-    }
-
-    /// The keys that this version knows.
-    pub fn built_keys(&self) -> impl Iterator<Item = &'static Key> {
-        self.keys.iter().filter(|key| key.built)
-    }
-}
-
-impl Form {
-    /// The section that a value of this form (or each item of the list) is.
-    pub fn section(&self) -> Option<&'static Section> {
-        match self {
-            Form::Section(section) | Form::OptionalSection(section) => Some(section),
-            Form::List(of, _) => of.section(),
-            _ => None,
-        }
-    }
-
-    /// What is allowed, in words, without the unit.
-    pub fn words(&self) -> String {
-        match self {
-            Form::Number(range) => format!("a number {}", range.words()),
-            Form::Count(least, most) => format!("an integer from {least} to {most}"),
-            Form::Flag => "true or false".to_owned(),
-            Form::Choice(choices) => {
-                let built = choices.iter().filter(|choice| choice.built);
-                one_of(built.map(|choice| choice.name))
-            }
-            Form::Parton => one_of(Species::names().iter().copied()),
-            Form::Direction => {
-                "\"transverse\" or a vector [x, y, z] of numbers that is not zero".to_owned()
-            }
-            Form::File => "the path of a file, relative to the folder of the config".to_owned(),
-            Form::SchemaAddress => "a string".to_owned(),
-            Form::List(of, length) => length.words(&of.words()),
-            Form::EmptyList => "an empty list, [], in this version".to_owned(),
-            Form::Section(_) => "an object { ... }".to_owned(),
-            Form::OptionalSection(_) => "an object { ... } or null".to_owned(),
-        }
-    }
-}
-
-impl Length {
-    const fn of(least: usize, most: usize) -> Self {
-        Length { least, most }
-    }
-
-    fn words(&self, of: &str) -> String {
-        let Length { least, most } = self;
-        if least == most {
-            format!("a list of {least}, each {of}")
-        } else {
-            format!("a list of {least} to {most}, each {of}")
-        }
-    }
-}
-
-fn one_of<'a>(words: impl Iterator<Item = &'a str>) -> String {
-    let quoted: Vec<_> = words.map(|word| format!("\"{word}\"")).collect();
-    quoted.join(", ")
-}
 
 /// Every section with its path, and every key in it, from the root down.
 pub fn walk(visit: &mut impl FnMut(&str, &'static Section)) {
@@ -387,7 +79,15 @@ mod tests {
             let name = join(path, key.name);
             let same = section.keys.iter().filter(|other| other.name == key.name);
             assert_eq!(same.count(), 1, "{name}");
-            let expected = [("_GeV2_per_fm", "GeV^2/fm"), ("_GeV", "GeV"), ("_fm", "fm")]
+            let endings = [
+                ("_GeV2_per_fm", "GeV^2/fm"),
+                ("_per_GeV2", "GeV^-2"),
+                ("_per_fm", "1/fm"),
+                ("_GeV", "GeV"),
+                ("_fm", "fm"),
+                ("_rad", "rad"),
+            ];
+            let expected = endings
                 .into_iter()
                 .find(|(ending, _)| key.name.ends_with(ending))
                 .map(|(_, unit)| unit);
@@ -412,20 +112,17 @@ mod tests {
                     );
                 }
             }
-            // The schema states the need of a conditional key under its one selector.
-            if key.need == Need::Required {
-                assert!(key.when.len() <= 1, "{path} {}", key.name);
+            let names = |name: &str| section.key(name).filter(|key| key.built);
+            if let Some(other) = key.with {
+                assert!(names(other).is_some(), "{path} {}", key.name);
+            }
+            // Two keys of which one must be there name each other, and the same choices use them.
+            if let Need::Either(other) = key.need {
+                let other = names(other).expect("the other key exists");
+                assert_eq!(other.need, Need::Either(key.name), "{path} {}", key.name);
+                let facts = |key: &Key| format!("{:?}", (key.when, key.with));
+                assert_eq!(facts(key), facts(other), "{path} {}", key.name);
             }
         });
-    }
-
-    #[test]
-    fn range_ends() {
-        let range = Range::above(0.0, 1.0);
-        assert!(!range.contains(0.0) && range.contains(1.0) && range.contains(f64::MIN_POSITIVE));
-        assert!(!Range::between(0.0, 1.0).contains(1.0));
-        assert!(Range::from(0.0, 1.0).contains(0.0));
-        assert!(!range.contains(f64::NAN) && !range.contains(f64::INFINITY));
-        assert_eq!(range.words(), "above 0 and at most 1");
     }
 }

@@ -193,7 +193,10 @@ static SHOWER: Section = Section {
                     "collinear",
                     "daughters start at t, no constraint: leading-log evolution of fractions, for validation, in vacuum only",
                 ),
-                Choice::planned("angular", "virtuality with angles ordered as well"),
+                Choice::built(
+                    "angular",
+                    "as virtuality, and a vacuum emission's angle lies below that of the branching that made its parent",
+                ),
             ]),
             "\"virtuality\"",
             "Where daughters start and what constrains them.",
@@ -309,6 +312,12 @@ static RECORD: Section = Section {
             "momentum_bits",
             Form::Count(1, MANTISSA_BITS),
             "Mantissa bits kept in momenta, stated in the file; absent: lossless.",
+        ),
+        Key::default(
+            "medium_exit",
+            Form::Flag,
+            "false",
+            "Where each final parton left the medium, with temperature and flow there, as further columns.",
         ),
         Key::planned(
             "variation_weights",

@@ -4,11 +4,13 @@
 //! daughters, leading colour. Each check appends what it finds; nothing found means that the event is sound.
 
 mod colour;
+mod exits;
 mod fractions;
 mod momentum;
 mod structure;
 
 pub use colour::check_colour;
+pub use exits::check_exits;
 pub use fractions::check_fractions;
 pub use momentum::{check_mass_shell, check_momentum};
 pub use structure::check_structure;

@@ -33,26 +33,34 @@ pub fn check_mass_shell(rows: &[Parton], rules: &CheckRules, found: &mut Vec<Imb
 
 /// Checks that four-momentum is conserved.
 ///
-/// `full` history: daughters add up to their parent at every vertex; the vertices of partons that exchanged momentum
-/// with the medium are left to the sum over the event. Every history: final partons add up to the hard ones (plus
-/// what was taken from the medium, minus what was given to it). A source without recoiler conserves energy and, along
-/// its hard parton's direction only, not the longitudinal momentum.
+/// `full` history: daughters add up to their parent at every vertex, and primaries to the hard partons. Every history:
+/// final partons add up to the hard ones (plus what was taken from the medium, minus what was given to it). A source
+/// without recoiler conserves energy and, along its hard parton's direction only, not the longitudinal momentum.
 pub fn check_momentum(rows: &[Parton], rules: &CheckRules, found: &mut Vec<Imbalance>) {
     let allowed = rules.momentum_tolerance * hard_energy_gev(rows);
     if rules.full_history {
         check_vertices(rows, allowed, found);
-        let primaries: Vec<_> = primaries(rows).collect();
-        check_against_hard(rows, sum(primaries), rules, allowed, "primaries", found);
+        let at_birth = primaries_at_birth(rows);
+        check_against_hard(rows, at_birth, rules, allowed, "primaries", found);
     }
     let mut finals = sum(rows.iter().filter(|row| row.status == Status::Final));
-    for exchange in rows {
-        match exchange.status {
-            Status::GivenToMedium => add(&mut finals, exchange, 1.0),
-            Status::TakenFromMedium => add(&mut finals, exchange, -1.0),
-            _ => {}
-        }
+    for exchange in rows.iter().filter(|row| super::is_exchange(row)) {
+        add(&mut finals, exchange, -gain_sign(exchange));
     }
     check_against_hard(rows, finals, rules, allowed, "final partons", found);
+}
+
+fn primaries_at_birth(rows: &[Parton]) -> [f64; 4] {
+    let mut total = sum(primaries(rows));
+    for exchange in rows.iter().filter(|row| super::is_exchange(row)) {
+        let owner = &rows[exchange.parent as usize];
+        let is_primary =
+            usize::try_from(owner.parent).is_ok_and(|parent| rows[parent].status == Status::Hard);
+        if is_primary {
+            add(&mut total, exchange, -gain_sign(exchange));
+        }
+    }
+    total
 }
 
 fn primaries(rows: &[Parton]) -> impl Iterator<Item = &Parton> {
@@ -62,17 +70,24 @@ fn primaries(rows: &[Parton]) -> impl Iterator<Item = &Parton> {
     })
 }
 
+/// Daughters at birth add up to their parent at its vertex: what a daughter exchanged with the medium on its way is in
+/// its row, and is taken out again.
 fn check_vertices(rows: &[Parton], allowed: f64, found: &mut Vec<Imbalance>) {
-    let mut exchanged = vec![false; rows.len()];
+    let mut gained = vec![[0.0; 4]; rows.len()];
     for row in rows.iter().filter(|row| super::is_exchange(row)) {
-        exchanged[row.parent as usize] = true;
+        add(&mut gained[row.parent as usize], row, gain_sign(row));
     }
     for (row, daughters) in daughters_by_parent(rows).iter().enumerate() {
-        if rows[row].status != Status::Branched || exchanged[row] {
+        if rows[row].status != Status::Branched {
             continue;
         }
         let mut excess = sum(daughters.iter().map(|daughter| &rows[*daughter]));
         add(&mut excess, &rows[row], -1.0);
+        for daughter in daughters {
+            for (component, gain) in excess.iter_mut().zip(gained[*daughter]) {
+                *component -= gain;
+            }
+        }
         let largest = largest_component(&excess);
         if largest > allowed {
             found.push(Imbalance::of_row(
@@ -81,6 +96,15 @@ fn check_vertices(rows: &[Parton], allowed: f64, found: &mut Vec<Imbalance>) {
                 largest,
             ));
         }
+    }
+}
+
+/// The sign with which an exchange row counts as a gain of the partons; 0 for other rows.
+fn gain_sign(row: &Parton) -> f64 {
+    match row.status {
+        Status::GivenToMedium => -1.0,
+        Status::TakenFromMedium => 1.0,
+        _ => 0.0,
     }
 }
 

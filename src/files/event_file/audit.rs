@@ -9,7 +9,7 @@ use super::layout::Table;
 use super::provenance::{Kinematics, Provenance, WeightSums};
 use super::reader::EventFile;
 use crate::config::History;
-use crate::event::{CheckRules, EventBlock, EventSummary, Imbalance, check_event};
+use crate::event::{CheckRules, EventBlock, EventSummary, Imbalance, check_event, check_exits};
 
 /// Offenders that are kept; the rest is only counted.
 const KEPT_FINDINGS: usize = 10;
@@ -166,7 +166,7 @@ fn check_extents(file: &EventFile, report: &mut AuditReport) {
 
 fn read_all(file: &EventFile, report: &mut AuditReport) {
     let rules = rules_of(file.provenance());
-    let mut digest = ContentDigest::default();
+    let mut digest = ContentDigest::new(file.provenance().columns());
     let mut sums = WeightSums::default();
     let mut last_id = None;
     for block in file.blocks() {
@@ -217,8 +217,9 @@ fn check_block(
     last_id: &mut Option<i64>,
     report: &mut AuditReport,
 ) {
-    for (event, rows) in block.iter() {
+    for (event, rows, exits) in block.iter_with_exits() {
         let mut found = check_event(rows, rules);
+        check_exits(event, rows, exits, rules, &mut found);
         check_summary(event, provenance, *last_id, &mut found);
         *last_id = Some(event.id);
         for imbalance in found {

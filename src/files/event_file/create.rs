@@ -127,7 +127,7 @@ fn create_table(
     put_text(&scale, "description", table.scale_description())?;
     let group = file.create_group(table.group())?;
     let mut columns = Vec::new();
-    for column in table.columns() {
+    for column in provenance.columns().columns(table) {
         let dataset = create_column(&group, table, column, provenance.compression)?;
         attach_scale(&dataset, &scale, 0)?;
         if column.width > 1 {

@@ -2,8 +2,8 @@
 
 use sha2::{Digest, Sha256};
 
-use super::layout::Table;
-use crate::event::{EventBlock, EventSummary, Parton};
+use super::layout::{ColumnSet, Table, exit_number};
+use crate::event::{EventBlock, EventSummary, MediumExit, Parton};
 
 /// SHA-256 of the content: every column's little-endian bytes hashed on its own, then the list of all of them.
 ///
@@ -12,31 +12,32 @@ use crate::event::{EventBlock, EventSummary, Parton};
 /// `hashlib.sha256(file["partons/px"][...].tobytes()).hexdigest()`.
 #[derive(Debug)]
 pub struct ContentDigest {
+    set: ColumnSet,
     events: Vec<Sha256>,
     partons: Vec<Sha256>,
     next_parton_row: i64,
 }
 
-impl Default for ContentDigest {
-    fn default() -> Self {
-        let hashers = |table: Table| table.columns().iter().map(|_| Sha256::new()).collect();
+impl ContentDigest {
+    /// The digest of a file with such columns, before its first event.
+    pub fn new(set: ColumnSet) -> Self {
+        let hashers = |table| set.columns(table).iter().map(|_| Sha256::new()).collect();
         ContentDigest {
+            set,
             events: hashers(Table::Events),
             partons: hashers(Table::Partons),
             next_parton_row: 0,
         }
     }
-}
 
-impl ContentDigest {
-    /// Adds the events of a block.
+    /// Adds the events of a block, which holds exits where the file has them.
     pub fn add(&mut self, block: &EventBlock) {
         let mut starts = Vec::with_capacity(block.events.len());
         for event in &block.events {
             starts.push(self.next_parton_row);
             self.next_parton_row += i64::from(event.partons_count);
         }
-        for (column, hasher) in Table::Events.columns().iter().zip(&mut self.events) {
+        for (column, hasher) in self.set.columns(Table::Events).iter().zip(&mut self.events) {
             let mut bytes = Vec::new();
             for (event, start) in block.events.iter().zip(&starts) {
                 append_event_value(column.name, event, *start, &mut bytes);
@@ -44,9 +45,17 @@ impl ContentDigest {
             hasher.update(&bytes);
         }
         let mut bytes = Vec::new();
-        for (column, hasher) in Table::Partons.columns().iter().zip(&mut self.partons) {
+        for (column, hasher) in self
+            .set
+            .columns(Table::Partons)
+            .iter()
+            .zip(&mut self.partons)
+        {
             bytes.clear();
-            append_parton_column(column.name, &block.partons, &mut bytes);
+            match exit_number(column.name) {
+                Some(number) => append_exit_column(number, &block.exits, &mut bytes),
+                None => append_parton_column(column.name, &block.partons, &mut bytes),
+            }
             hasher.update(&bytes);
         }
     }
@@ -55,7 +64,7 @@ impl ContentDigest {
     pub fn finish(self) -> String {
         let mut all = Sha256::new();
         for (table, hashers) in [(Table::Events, self.events), (Table::Partons, self.partons)] {
-            for (column, hasher) in table.columns().iter().zip(hashers) {
+            for (column, hasher) in self.set.columns(table).iter().zip(hashers) {
                 let line = format!(
                     "/{}/{} {}\n",
                     table.group(),
@@ -118,13 +127,13 @@ fn append_parton_column(name: &str, partons: &[Parton], bytes: &mut Vec<u8>) {
     }
 }
 
-fn append<const N: usize>(
-    partons: &[Parton],
-    bytes: &mut Vec<u8>,
-    value: impl Fn(&Parton) -> [u8; N],
-) {
-    for parton in partons {
-        bytes.extend_from_slice(&value(parton));
+fn append_exit_column(number: usize, exits: &[MediumExit], bytes: &mut Vec<u8>) {
+    append(exits, bytes, |exit| exit.numbers()[number].to_le_bytes());
+}
+
+fn append<R, const N: usize>(rows: &[R], bytes: &mut Vec<u8>, value: impl Fn(&R) -> [u8; N]) {
+    for row in rows {
+        bytes.extend_from_slice(&value(row));
     }
 }
 

@@ -1,5 +1,7 @@
 //! What stands where in an event file: tables, columns, types, units, chunk lengths.
 
+use crate::event::MediumExit;
+
 /// The `format` attribute of an event file.
 pub const FORMAT_NAME: &str = "spindrift events";
 /// The `format_version` attribute that this program writes and reads.
@@ -9,6 +11,9 @@ pub const FORMAT_VERSION: i32 = 1;
 pub const EVENT_CHUNK_ROWS: usize = 2048;
 /// Rows in a chunk of every parton column.
 pub const PARTON_CHUNK_ROWS: usize = 32_768;
+
+/// Most temperature fields of a file.
+pub const MOST_FIELDS: usize = 4096;
 
 /// Bits of a double's mantissa, the value of the `momentum_bits` attribute of a lossless file.
 pub(super) const FULL_MANTISSA_BITS: u8 = 52;
@@ -54,11 +59,21 @@ impl Table {
             Table::Partons => PARTON_CHUNK_ROWS,
         }
     }
+}
 
-    /// The columns, in the order in which packed groups hold their chunks.
-    pub const fn columns(self) -> &'static [Column] {
-        match self {
+/// Which columns a file has: a property of the file.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub struct ColumnSet {
+    /// `/partons` has [`EXIT_COLUMNS`] too.
+    pub medium_exit: bool,
+}
+
+impl ColumnSet {
+    /// The columns of a table, in the order in which packed groups hold their chunks.
+    pub const fn columns(self, table: Table) -> &'static [Column] {
+        match table {
             Table::Events => &EVENT_COLUMNS,
+            Table::Partons if self.medium_exit => &PARTON_COLUMNS_WITH_EXITS,
             Table::Partons => &PARTON_COLUMNS,
         }
     }
@@ -187,7 +202,7 @@ pub const EVENT_COLUMNS: [Column; 8] = [
     ),
 ];
 
-/// Columns of `/partons`.
+/// Columns of `/partons` that every file has.
 pub const PARTON_COLUMNS: [Column; 17] = [
     column(
         "pdg",
@@ -252,3 +267,60 @@ pub const PARTON_COLUMNS: [Column; 17] = [
         "what produced it: 0 hard process, 1 vacuum branching, 2.. the effects in config order",
     ),
 ];
+
+/// Columns of `/partons` where the run recorded the exits of final partons, after [`PARTON_COLUMNS`].
+pub const EXIT_COLUMNS: [Column; MediumExit::NUMBERS] = [
+    column(
+        "exit_t",
+        Element::F32,
+        "fm",
+        "time at which a final parton left the medium; not a number where it never was in it",
+    ),
+    column("exit_x", Element::F32, "fm", "place of the exit, x"),
+    column("exit_y", Element::F32, "fm", "place of the exit, y"),
+    column("exit_z", Element::F32, "fm", "place of the exit, z"),
+    column(
+        "exit_temperature",
+        Element::F32,
+        "GeV",
+        "temperature of the fluid at the exit; above the end temperature where the path leaves the field's data",
+    ),
+    column(
+        "exit_ux",
+        Element::F32,
+        "1",
+        "four-velocity of the fluid at the exit in the lab, u^x",
+    ),
+    column(
+        "exit_uy",
+        Element::F32,
+        "1",
+        "four-velocity of the fluid at the exit in the lab, u^y",
+    ),
+    column(
+        "exit_uz",
+        Element::F32,
+        "1",
+        "four-velocity of the fluid at the exit in the lab, u^z",
+    ),
+];
+
+/// All columns that `/partons` may have.
+const PARTON_COLUMNS_WITH_EXITS: [Column; PARTON_COLUMNS.len() + EXIT_COLUMNS.len()] = {
+    let mut all = [PARTON_COLUMNS[0]; PARTON_COLUMNS.len() + EXIT_COLUMNS.len()];
+    let mut place = 0;
+    while place < all.len() {
+        all[place] = if place < PARTON_COLUMNS.len() {
+            PARTON_COLUMNS[place]
+        } else {
+            EXIT_COLUMNS[place - PARTON_COLUMNS.len()]
+        };
+        place += 1;
+    }
+    all
+};
+
+/// Place of an exit's number among [`MediumExit::numbers`], `None` for another column.
+pub(super) fn exit_number(column: &str) -> Option<usize> {
+    EXIT_COLUMNS.iter().position(|exit| exit.name == column)
+}

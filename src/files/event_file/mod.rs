@@ -25,8 +25,8 @@ pub use audit::{AuditReport, Finding, audit};
 pub use digest::ContentDigest;
 pub use error::EventFileError;
 pub use layout::{
-    Column, EVENT_CHUNK_ROWS, EVENT_COLUMNS, Element, FORMAT_NAME, FORMAT_VERSION,
-    PARTON_CHUNK_ROWS, PARTON_COLUMNS, Table,
+    Column, ColumnSet, EVENT_CHUNK_ROWS, EVENT_COLUMNS, EXIT_COLUMNS, Element, FORMAT_NAME,
+    FORMAT_VERSION, MOST_FIELDS, PARTON_CHUNK_ROWS, PARTON_COLUMNS, Table,
 };
 pub use pack::{PackedGroup, Packer};
 pub use provenance::{CrossSection, FieldEntry, Kinematics, Provenance, WeightSums};

@@ -4,12 +4,14 @@ use std::ops::Range;
 
 use super::checksum::fletcher32;
 use super::layout::{
-    EVENT_COLUMNS, Element, FULL_MANTISSA_BITS, PARTON_COLUMNS, PLACE_COMPONENTS, Table,
+    Column, ColumnSet, EVENT_COLUMNS, EXIT_COLUMNS, Element, FULL_MANTISSA_BITS, PARTON_COLUMNS,
+    PLACE_COMPONENTS, Table,
 };
 use super::planes::PlaneEncoder;
+use super::provenance::columns_of;
 use super::row_groups::RowGroup;
 use crate::config::RecordSettings;
-use crate::event::{EventSummary, Parton};
+use crate::event::{EventSummary, MediumExit, Parton};
 
 /// Rows of which all columns are gathered before the next ones are looked at: few enough to stay in the cache.
 const TILE_ROWS: usize = 256;
@@ -63,24 +65,27 @@ impl PackedGroup {
 pub struct Packer {
     encoder: Option<PlaneEncoder>,
     momentum_bits: Option<u8>,
+    columns: ColumnSet,
     /// Byte planes of all columns of a group, one column after another.
     planes: Vec<u8>,
 }
 
 impl Packer {
-    /// A packer for the compression and the momentum rounding of a run.
+    /// A packer for the compression, the momentum rounding and the columns of a run.
     pub fn new(record: &RecordSettings) -> Self {
         Packer {
             encoder: (record.compression > 0).then(|| PlaneEncoder::new(record.compression)),
             momentum_bits: record.momentum_bits,
+            columns: columns_of(record),
             planes: Vec::new(),
         }
     }
 
-    /// Packs a group into `packed`, whose memory is reused and whose content is lost.
+    /// Packs a group into `packed`, whose memory is reused and whose content is lost. Its blocks hold exits where the
+    /// file keeps them.
     pub fn pack(&mut self, group: &RowGroup, packed: &mut PackedGroup) {
         packed.restart(group);
-        let columns = group.table.columns();
+        let columns = self.columns.columns(group.table);
         let lengths = columns.iter().map(|column| column.chunk_bytes(group.table));
         let total = lengths.clone().sum();
         if group.rows < group.table.chunk_rows() {
@@ -89,7 +94,12 @@ impl Packer {
         self.planes.resize(total, 0);
         match group.table {
             Table::Events => self.gather_events(group, packed),
-            Table::Partons => self.gather_partons(group),
+            Table::Partons => {
+                self.gather_partons(group);
+                if self.columns.medium_exit {
+                    self.gather_exits(group);
+                }
+            }
         }
         let mut start = 0;
         for (column, length) in columns.iter().zip(lengths) {
@@ -144,6 +154,28 @@ impl Packer {
             }
         }
     }
+
+    fn gather_exits(&mut self, group: &RowGroup) {
+        let mut filled = 0;
+        let planes = &mut self.planes[parton_planes_bytes()..];
+        for (block, rows) in &group.segments {
+            let exits = block.exits.get(rows.clone());
+            let exits = exits.expect("a run whose file keeps exits makes one for each row");
+            for tile in exits.chunks(TILE_ROWS) {
+                let columns = planes.chunks_exact_mut(EXIT_COLUMNS[0].chunk_bytes(Table::Partons));
+                for (number, own) in columns.enumerate() {
+                    scatter_exits(number, tile, own, filled);
+                }
+                filled += tile.len();
+            }
+        }
+    }
+}
+
+/// Bytes of the planes of [`PARTON_COLUMNS`], after which those of [`EXIT_COLUMNS`] stand.
+fn parton_planes_bytes() -> usize {
+    let bytes = |column: &Column| column.chunk_bytes(Table::Partons);
+    PARTON_COLUMNS.iter().map(bytes).sum()
 }
 
 /// Puts one column of some events, whose first parton row is given, into its planes.
@@ -224,6 +256,13 @@ fn scatter_momentum(
 
 fn scatter_single(rows: &[Parton], to: (&mut [u8], usize), value: impl Fn(&Parton) -> f32) {
     scatter::<4, 1, _>(rows, to, |row| [value(row).to_bits().into()]);
+}
+
+/// Puts one number of some exits into its planes.
+fn scatter_exits(number: usize, exits: &[MediumExit], planes: &mut [u8], filled: usize) {
+    scatter::<4, 1, _>(exits, (planes, filled), |exit| {
+        [exit.numbers()[number].to_bits().into()]
+    });
 }
 
 fn bits(value: i32) -> u64 {

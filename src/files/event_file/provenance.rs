@@ -1,6 +1,7 @@
 //! Where a sample comes from: what the attributes of an event file say about the run.
 
-use crate::config::History;
+use super::layout::ColumnSet;
+use crate::config::{History, RecordSettings};
 
 /// Everything about a run that is known before its first event.
 #[derive(Clone, Debug, PartialEq)]
@@ -37,12 +38,38 @@ pub struct Provenance {
     pub compression: u8,
     /// Mantissa bits kept in momenta, `None` for all.
     pub momentum_bits: Option<u8>,
+    /// Whether rows carry the exits of final partons from the medium.
+    pub medium_exit: bool,
     /// Names of the effects, in config order: the channels from 2 on.
     pub effects: Vec<String>,
     /// The temperature fields that `/events/field` counts.
     pub fields: Vec<FieldEntry>,
     /// Names of the run's counters, which become attributes when the file is complete.
     pub counters: Vec<String>,
+}
+
+impl Provenance {
+    /// What the file keeps of each event.
+    pub fn record(&self) -> RecordSettings {
+        RecordSettings {
+            history: self.history,
+            compression: self.compression,
+            momentum_bits: self.momentum_bits,
+            medium_exit: self.medium_exit,
+        }
+    }
+
+    /// Which columns the file has.
+    pub fn columns(&self) -> ColumnSet {
+        columns_of(&self.record())
+    }
+}
+
+/// Which columns a file with such a record has.
+pub(super) fn columns_of(record: &RecordSettings) -> ColumnSet {
+    ColumnSet {
+        medium_exit: record.medium_exit,
+    }
 }
 
 /// What the momenta of the rows are.

@@ -5,7 +5,9 @@ use std::path::Path;
 use hdf5::{File, H5Type};
 
 use super::error::EventFileError;
-use super::layout::{FORMAT_NAME, FORMAT_VERSION, FULL_MANTISSA_BITS};
+use super::layout::{
+    EXIT_COLUMNS, FORMAT_NAME, FORMAT_VERSION, FULL_MANTISSA_BITS, MOST_FIELDS, Table,
+};
 use super::provenance::{
     CrossSection, FieldEntry, Kinematics, Provenance, WeightSums, history_from_name,
 };
@@ -13,8 +15,6 @@ use crate::files::attributes::{get_number, get_text, get_texts, read_texts};
 
 /// The largest deflate level.
 const LARGEST_COMPRESSION: i32 = 9;
-/// The longest list of temperature fields that is read.
-const LONGEST_FIELD_LIST: usize = 4096;
 /// Channels before those of the effects.
 const FIXED_CHANNELS: usize = 2;
 
@@ -67,6 +67,7 @@ pub(super) fn read_provenance(
         history: reader.choice("history", history_from_name)?,
         compression: reader.within("compression", 0, LARGEST_COMPRESSION)? as u8,
         momentum_bits: (kept_bits < FULL_MANTISSA_BITS).then_some(kept_bits),
+        medium_exit: reader.has_exits()?,
         effects,
         fields,
         counters: state
@@ -166,13 +167,23 @@ impl AttributeReader<'_> {
         Ok(names.split_off(FIXED_CHANNELS))
     }
 
+    /// Whether the table of partons has columns of exits: any of them promises all.
+    fn has_exits(&self) -> Result<bool, EventFileError> {
+        let name = Table::Partons.group();
+        let group = self.file.group(name);
+        let group = group.map_err(|error| self.damaged(name, error.to_string()))?;
+        Ok(EXIT_COLUMNS
+            .iter()
+            .any(|column| group.link_exists(column.name)))
+    }
+
     fn fields(&self) -> Result<Vec<FieldEntry>, EventFileError> {
         let list = |name: &str| {
             let place = format!("/fields/{name}");
             let column = self.file.dataset(&place);
             let column = column.map_err(|error| self.damaged(&place, error.to_string()))?;
-            if column.size() > LONGEST_FIELD_LIST {
-                let reason = format!("{} fields, at most {LONGEST_FIELD_LIST}", column.size());
+            if column.size() > MOST_FIELDS {
+                let reason = format!("{} fields, at most {MOST_FIELDS}", column.size());
                 return Err(self.damaged(&place, reason));
             }
             Ok((place, column))

@@ -5,8 +5,8 @@ use std::path::{Path, PathBuf};
 use hdf5::{Dataset, File, H5Type};
 
 use super::error::EventFileError;
-use super::layout::{Column, Element, PLACE_COMPONENTS, Table};
-use crate::event::{EventSummary, Parton, Status};
+use super::layout::{Column, ColumnSet, EXIT_COLUMNS, Element, PLACE_COMPONENTS, Table};
+use crate::event::{EventBlock, EventSummary, MediumExit, Parton, Status};
 use crate::files::attributes::element_type;
 use crate::files::hdf5_calls::read_rows;
 use hdf5::types::{FloatSize, IntSize, TypeDescriptor};
@@ -26,6 +26,7 @@ pub(super) struct EventRows {
 pub(super) struct TableReader {
     path: PathBuf,
     table: Table,
+    set: ColumnSet,
     columns: Vec<Dataset>,
 }
 
@@ -35,10 +36,11 @@ impl TableReader {
         path: &Path,
         file: &File,
         table: Table,
+        set: ColumnSet,
         rows: usize,
     ) -> Result<TableReader, EventFileError> {
         let mut columns = Vec::new();
-        for column in table.columns() {
+        for column in set.columns(table) {
             let place = place_of(table, column.name);
             let damaged = |reason: String| EventFileError::Damaged {
                 path: path.to_owned(),
@@ -54,13 +56,15 @@ impl TableReader {
         Ok(TableReader {
             path: path.to_owned(),
             table,
+            set,
             columns,
         })
     }
 
     /// Stored rows of each column.
     pub(super) fn extents(&self) -> Vec<(&'static str, usize)> {
-        let names = self.table.columns().iter().map(|column| column.name);
+        let columns = self.set.columns(self.table).iter();
+        let names = columns.map(|column| column.name);
         let rows = self.columns.iter().map(|dataset| dataset.shape()[0]);
         names.zip(rows).collect()
     }
@@ -94,14 +98,41 @@ impl TableReader {
         Ok(())
     }
 
-    /// Appends `count` parton rows from row `first` on to `partons`.
-    pub(super) fn read_partons(
+    /// Appends `count` parton rows from row `first` on, with their exits where the file has them, to a block.
+    pub(super) fn read_rows(
         &self,
         first: usize,
         count: usize,
+        block: &mut EventBlock,
+    ) -> Result<(), EventFileError> {
+        self.read_partons((first, count), &mut block.partons)?;
+        if self.set.medium_exit {
+            self.read_exits((first, count), &mut block.exits)?;
+        }
+        Ok(())
+    }
+
+    fn read_exits(
+        &self,
+        range: (usize, usize),
+        exits: &mut Vec<MediumExit>,
+    ) -> Result<(), EventFileError> {
+        let mut columns = [const { Vec::new() }; MediumExit::NUMBERS];
+        for (values, column) in columns.iter_mut().zip(&EXIT_COLUMNS) {
+            *values = self.column::<f32>(column.name, range)?;
+        }
+        exits.extend((0..range.1).map(|row| {
+            MediumExit::from_numbers(std::array::from_fn(|number| columns[number][row]))
+        }));
+        Ok(())
+    }
+
+    fn read_partons(
+        &self,
+        range: (usize, usize),
         partons: &mut Vec<Parton>,
     ) -> Result<(), EventFileError> {
-        let range = (first, count);
+        let (first, count) = range;
         let statuses: Vec<i8> = self.column("status", range)?;
         let momenta = self.four_columns::<f64>(["px", "py", "pz", "energy"], range)?;
         let births =
@@ -153,11 +184,8 @@ impl TableReader {
         name: &str,
         (first, count): (usize, usize),
     ) -> Result<Vec<T>, EventFileError> {
-        let place = self
-            .table
-            .columns()
-            .iter()
-            .position(|column| column.name == name);
+        let mut columns = self.set.columns(self.table).iter();
+        let place = columns.position(|column| column.name == name);
         let dataset = &self.columns[place.expect("a column of this table")];
         let mut values = Vec::new();
         read_rows(dataset, first, count, &mut values).map_err(|error| {

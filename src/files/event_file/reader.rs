@@ -43,8 +43,9 @@ impl EventFile {
         expect_regular(path).map_err(unusable)?;
         let file = open_to_read(path).map_err(unusable)?;
         let (provenance, state) = read_provenance(path, &file)?;
-        let events = TableReader::open(path, &file, Table::Events, state.events_committed)?;
-        let partons = TableReader::open(path, &file, Table::Partons, state.partons_committed)?;
+        let open = |table, rows| TableReader::open(path, &file, table, provenance.columns(), rows);
+        let events = open(Table::Events, state.events_committed)?;
+        let partons = open(Table::Partons, state.partons_committed)?;
         Ok(EventFile {
             path: path.to_owned(),
             provenance,
@@ -139,8 +140,7 @@ impl EventFile {
                 let rows = self.checked_rows(id, start, i64::from(event.partons_count))?;
                 let mut block = EventBlock::default();
                 block.events.push(event);
-                self.partons
-                    .read_partons(rows.start, rows.len(), &mut block.partons)?;
+                self.partons.read_rows(rows.start, rows.len(), &mut block)?;
                 return Ok(Some(block));
             }
             first += count;
@@ -212,7 +212,7 @@ impl Blocks<'_> {
         }
         self.file
             .partons
-            .read_partons(first_row, self.next_row - first_row, &mut block.partons)?;
+            .read_rows(first_row, self.next_row - first_row, &mut block)?;
         Ok(Some(block))
     }
 

@@ -13,7 +13,7 @@ use super::error::EventFileError;
 use super::layout::Table;
 use super::lock::OutputLock;
 use super::pack::PackedGroup;
-use super::provenance::{Provenance, WeightSums};
+use super::provenance::{Provenance, WeightSums, columns_of};
 use crate::config::RecordSettings;
 use crate::files::hdf5_calls::{reason, write_chunk};
 
@@ -97,11 +97,7 @@ impl EventFileWriter {
             }),
             identity: identity(path),
             failed: false,
-            record: RecordSettings {
-                history: provenance.history,
-                compression: provenance.compression,
-                momentum_bits: provenance.momentum_bits,
-            },
+            record: provenance.record(),
             events: Progress::default(),
             partons: Progress::default(),
             parton_row_ends: VecDeque::new(),
@@ -173,8 +169,8 @@ impl EventFileWriter {
     fn append(&self, table: Table, start: usize, group: &PackedGroup) -> hdf5::Result<()> {
         let datasets = self.datasets(table);
         let end = start + group.rows;
-        for ((column, dataset), chunk) in table
-            .columns()
+        for ((column, dataset), chunk) in columns_of(&self.record)
+            .columns(table)
             .iter()
             .zip(&datasets.columns)
             .zip(group.chunks())

@@ -20,19 +20,61 @@ pub(super) fn read(
     axes: &[&str],
     lengths: &[usize],
 ) -> Result<Option<[Vec<f32>; 3]>, FieldProblem> {
+    let Some(names) = names(file)? else {
+        return Ok(None);
+    };
+    let mut flow = read_components(file, names, axes, lengths)?;
+    if names == THREE_VELOCITY {
+        to_four_velocity(&mut flow, axes, lengths)?;
+    }
+    Ok(Some(flow))
+}
+
+/// Checks names, shapes and units, without reading values.
+pub(super) fn check(file: &File, axes: &[&str], lengths: &[usize]) -> Result<(), FieldProblem> {
+    if let Some(names) = names(file)? {
+        for name in names {
+            find_component(file, names, name, axes, lengths)?;
+        }
+    }
+    Ok(())
+}
+
+/// The names of the components that the file has, `None` where it has no flow.
+fn names(file: &File) -> Result<Option<[&'static str; 3]>, FieldProblem> {
     let has = |names: &[&str]| names.iter().any(|name| file.link_exists(name));
     match (has(&FOUR_VELOCITY), has(&THREE_VELOCITY)) {
         (false, false) => Ok(None),
         (true, true) => Err(FieldProblem::Contradiction(
             "holds both a four-velocity (ux, uy, ueta) and a three-velocity (vx, vy, veta); keep one of them".into(),
         )),
-        (true, false) => read_components(file, FOUR_VELOCITY, axes, lengths).map(Some),
-        (false, true) => {
-            let mut flow = read_components(file, THREE_VELOCITY, axes, lengths)?;
-            to_four_velocity(&mut flow, axes, lengths)?;
-            Ok(Some(flow))
-        }
+        (true, false) => Ok(Some(FOUR_VELOCITY)),
+        (false, true) => Ok(Some(THREE_VELOCITY)),
     }
+}
+
+/// One component; `None` where it may be absent and is.
+fn find_component(
+    file: &File,
+    names: [&'static str; 3],
+    name: &'static str,
+    axes: &[&str],
+    lengths: &[usize],
+) -> Result<Option<Variable>, FieldProblem> {
+    let Some(variable) = Variable::find(file, name, &NUMBER)? else {
+        let longitudinal = name == names[2];
+        // Without an eta axis the field is boost-invariant, and so is its flow.
+        if longitudinal && !axes.contains(&"eta") {
+            return Ok(None);
+        }
+        return Err(FieldProblem::Missing {
+            name,
+            found: names_in(file),
+            remedy: format!("flow needs all of {}", names.join(", ")),
+        });
+    };
+    variable.expect_axes(axes, lengths)?;
+    Ok(Some(variable))
 }
 
 fn read_components(
@@ -44,19 +86,9 @@ fn read_components(
     let points = lengths.iter().product();
     let mut flow = [vec![0f32; points], vec![0f32; points], vec![0f32; points]];
     for (name, component) in names.into_iter().zip(&mut flow) {
-        let Some(variable) = Variable::find(file, name, &NUMBER)? else {
-            let longitudinal = name == names[2];
-            // Without an eta axis the field is boost-invariant, and so is its flow.
-            if longitudinal && !axes.contains(&"eta") {
-                continue;
-            }
-            return Err(FieldProblem::Missing {
-                name,
-                found: names_in(file),
-                remedy: format!("flow needs all of {}", names.join(", ")),
-            });
+        let Some(variable) = find_component(file, names, name, axes, lengths)? else {
+            continue;
         };
-        variable.expect_axes(axes, lengths)?;
         variable.read(axes, |place, value| {
             component[place] = value as f32;
             if component[place].abs() <= LARGEST_FLOW {

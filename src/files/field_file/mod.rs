@@ -2,8 +2,8 @@
 
 mod error;
 mod flow;
-mod units;
-mod variable;
+pub(super) mod units;
+pub(super) mod variable;
 
 use std::io::Read;
 use std::path::Path;
@@ -27,9 +27,9 @@ const LARGEST_TEMPERATURE_GEV: f64 = 5.0;
 const UNUSUAL_TEMPERATURE_GEV: f64 = 1.0;
 
 /// First bytes of an HDF5 file (without a user block).
-const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
+pub(super) const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
 /// First bytes of the classic netCDF formats.
-const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
+pub(super) const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
 
 /// Axes without space-time rapidity, in the order of [`FieldData`].
 const PLANE_AXES: [&str; 3] = ["tau", "x", "y"];
@@ -52,32 +52,79 @@ pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
     })
 }
 
+/// Checks everything about a temperature field but the values of temperature and flow, which are not read and stay empty
+/// in what is returned.
+///
+/// # Errors
+/// As [`read_field`].
+pub fn read_outline(path: &Path) -> Result<FieldData, FieldFileError> {
+    let outline = open(path).and_then(|opened| {
+        flow::check(&opened.file, opened.axes, &opened.lengths)?;
+        outline(&opened)
+    });
+    outline.map_err(|problem| FieldFileError {
+        path: path.to_owned(),
+        problem: Box::new(problem),
+    })
+}
+
 fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
+    let opened = open(path)?;
+    let mut data = outline(&opened)?;
+    let Opened {
+        file,
+        temperature,
+        axes,
+        lengths,
+    } = opened;
+    data.temperature_gev = read_temperature(&temperature, axes, &lengths)?;
+    data.flow = flow::read(&file, axes, &lengths)?;
+    warn_about_temperature(&mut data);
+    Ok(data)
+}
+
+/// A file whose temperature has the right shape.
+struct Opened {
+    file: File,
+    temperature: Variable,
+    axes: &'static [&'static str],
+    lengths: Vec<usize>,
+}
+
+fn open(path: &Path) -> Result<Opened, FieldProblem> {
     expect_regular(path).map_err(FieldProblem::Unreadable)?;
     check_signature(path)?;
     let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
     let temperature = require(&file, "temperature", &TEMPERATURE)?;
-    let axes: &[&str] = if temperature.axes.iter().any(|axis| axis == "eta") {
+    let axes: &'static [&'static str] = if temperature.axes.iter().any(|axis| axis == "eta") {
         &FULL_AXES
     } else {
         &PLANE_AXES
     };
     let lengths = axis_lengths(&temperature, axes)?;
     check_memory(&lengths)?;
+    Ok(Opened {
+        file,
+        temperature,
+        axes,
+        lengths,
+    })
+}
+
+/// Axes and collision density.
+fn outline(opened: &Opened) -> Result<FieldData, FieldProblem> {
+    let Opened { file, lengths, .. } = opened;
     let mut data = FieldData {
-        tau_fm: read_axis(&file, "tau", lengths[0], &LENGTH)?,
-        x_fm: read_axis(&file, "x", lengths[1], &LENGTH)?,
-        y_fm: read_axis(&file, "y", lengths[2], &LENGTH)?,
+        tau_fm: read_axis(file, "tau", lengths[0], &LENGTH)?,
+        x_fm: read_axis(file, "x", lengths[1], &LENGTH)?,
+        y_fm: read_axis(file, "y", lengths[2], &LENGTH)?,
         ..FieldData::default()
     };
     if let Some(length) = lengths.get(3) {
-        data.eta = Some(read_axis(&file, "eta", *length, &NUMBER)?);
+        data.eta = Some(read_axis(file, "eta", *length, &NUMBER)?);
     }
     check_start(data.tau_fm[0])?;
-    data.temperature_gev = read_temperature(&temperature, axes, &lengths)?;
-    data.flow = flow::read(&file, axes, &lengths)?;
-    data.collision_density_per_fm2 = read_collision_density(&file, &lengths)?;
-    warn_about_temperature(&mut data);
+    data.collision_density_per_fm2 = read_collision_density(file, lengths)?;
     Ok(data)
 }
 
@@ -106,7 +153,7 @@ fn require(file: &File, name: &'static str, quantity: &Quantity) -> Result<Varia
     })
 }
 
-fn names_in(file: &File) -> String {
+pub(super) fn names_in(file: &File) -> String {
     match file.member_names() {
         Ok(names) if names.is_empty() => "nothing".into(),
         Ok(names) => names.join(", "),

@@ -7,7 +7,7 @@ use crate::qcd::HBAR_C_GEV_FM;
 const MEV_GEV: f64 = 1e-3;
 
 /// A kind of quantity with the units understood for it.
-pub(super) struct Quantity {
+pub(in crate::files) struct Quantity {
     /// Spellings with the factor to this program's unit.
     spellings: &'static [(&'static str, f64)],
     /// Whether `units` may be absent.
@@ -15,7 +15,7 @@ pub(super) struct Quantity {
 }
 
 /// Temperature, to GeV.
-pub(super) const TEMPERATURE: Quantity = Quantity {
+pub(in crate::files) const TEMPERATURE: Quantity = Quantity {
     spellings: &[
         ("GeV", 1.0),
         ("MeV", MEV_GEV),
@@ -28,13 +28,13 @@ pub(super) const TEMPERATURE: Quantity = Quantity {
 };
 
 /// Lengths and times, to fm.
-pub(super) const LENGTH: Quantity = Quantity {
+pub(in crate::files) const LENGTH: Quantity = Quantity {
     spellings: &[("fm", 1.0), ("fm/c", 1.0)],
     optional: false,
 };
 
 /// Rapidity, flow components: no dimension.
-pub(super) const NUMBER: Quantity = Quantity {
+pub(in crate::files) const NUMBER: Quantity = Quantity {
     spellings: &[
         ("1", 1.0),
         ("", 1.0),
@@ -46,7 +46,7 @@ pub(super) const NUMBER: Quantity = Quantity {
 };
 
 /// Density of collision points in the transverse plane, to fm^-2.
-pub(super) const AREA_DENSITY: Quantity = Quantity {
+pub(in crate::files) const AREA_DENSITY: Quantity = Quantity {
     spellings: &[
         ("1/fm^2", 1.0),
         ("fm^-2", 1.0),
@@ -58,9 +58,31 @@ pub(super) const AREA_DENSITY: Quantity = Quantity {
     optional: false,
 };
 
+/// Energy, to GeV.
+pub(in crate::files) const ENERGY: Quantity = Quantity {
+    spellings: &[("GeV", 1.0), ("MeV", MEV_GEV)],
+    optional: false,
+};
+
+/// Transport coefficient, to GeV^2/fm.
+pub(in crate::files) const TRANSPORT: Quantity = Quantity {
+    spellings: &[
+        ("GeV^2/fm", 1.0),
+        ("GeV2/fm", 1.0),
+        ("GeV**2/fm", 1.0),
+        ("GeV^2 fm^-1", 1.0),
+        ("GeV2 fm-1", 1.0),
+    ],
+    optional: false,
+};
+
 impl Quantity {
     /// The factor from the units found to this program's.
-    pub(super) fn factor(&self, name: &str, found: Option<&str>) -> Result<f64, FieldProblem> {
+    pub(in crate::files) fn factor(
+        &self,
+        name: &str,
+        found: Option<&str>,
+    ) -> Result<f64, FieldProblem> {
         let Some(found) = found else {
             return if self.optional {
                 Ok(1.0)

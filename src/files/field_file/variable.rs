@@ -16,11 +16,11 @@ const LARGEST_CHUNK_BYTES: u128 = 1 << 30;
 const SLAB_BYTES: usize = 64 << 20;
 
 /// A variable that was found and checked, but not read.
-pub(super) struct Variable {
-    pub(super) name: String,
+pub(in crate::files) struct Variable {
+    pub(in crate::files) name: String,
     dataset: Dataset,
     /// Name of each axis, in the file's order.
-    pub(super) axes: Vec<String>,
+    pub(in crate::files) axes: Vec<String>,
     shape: Vec<usize>,
     /// Factor and offset from stored numbers to this program's unit.
     scale: f64,
@@ -30,7 +30,7 @@ pub(super) struct Variable {
 
 impl Variable {
     /// Finds a variable with its named axes; `None` where the file has none of that name.
-    pub(super) fn find(
+    pub(in crate::files) fn find(
         file: &File,
         name: &str,
         quantity: &Quantity,
@@ -68,13 +68,17 @@ impl Variable {
     }
 
     /// Number of points along the axis of that name.
-    pub(super) fn length(&self, axis: &str) -> Option<usize> {
+    pub(in crate::files) fn length(&self, axis: &str) -> Option<usize> {
         let place = self.axes.iter().position(|name| name == axis)?;
         Some(self.shape[place])
     }
 
     /// Checks that the axes are exactly these, in any order, and as long as `lengths` says.
-    pub(super) fn expect_axes(&self, axes: &[&str], lengths: &[usize]) -> Result<(), FieldProblem> {
+    pub(in crate::files) fn expect_axes(
+        &self,
+        axes: &[&str],
+        lengths: &[usize],
+    ) -> Result<(), FieldProblem> {
         let fits = self.axes.len() == axes.len()
             && axes
                 .iter()
@@ -104,7 +108,7 @@ impl Variable {
 
     /// Reads all values in C order over `axes` (a permutation of the variable's own) and hands each, unpacked and
     /// converted, to `take` with its place in that order.
-    pub(super) fn read(
+    pub(in crate::files) fn read(
         &self,
         axes: &[&str],
         mut take: impl FnMut(usize, f64) -> Result<(), FieldProblem>,
@@ -217,14 +221,12 @@ fn check_storage(dataset: &Dataset) -> Result<(), String> {
 
 /// The name of each axis: that of the dimension scale attached to it; a coordinate names its own.
 fn axis_names(dataset: &Dataset, name: &str) -> Result<Vec<String>, String> {
-    if dataset.ndim() == 1 {
-        return Ok(vec![name.to_owned()]);
-    }
     (0..dataset.ndim())
         .map(|axis| {
             let scales = attached_scales(dataset, axis as u32).map_err(|error| error.to_string())?;
             match scales.first() {
                 Some(scale) => Ok(scale.name().rsplit('/').next().unwrap_or_default().to_owned()),
+                None if dataset.ndim() == 1 => Ok(name.to_owned()),
                 None => Err(format!(
                     "dimension {axis} has no name (no HDF5 dimension scale is attached); write the file with xarray: dataset.to_netcdf(path, engine=\"h5netcdf\")"
                 )),

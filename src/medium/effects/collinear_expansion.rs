@@ -22,11 +22,96 @@
 
 use rand::RngExt;
 
-use super::{Passage, PowerLaw, RateBound, RateEffect};
-use crate::medium::PhaseSettings;
+use super::rate_effect::{Passage, RateEffect, Splitting};
+use super::{Effect, EffectSettings, Model, Physics, PowerLaw, RateBound};
 use crate::medium::path::Path;
+use crate::parameters::{Choice, Form, Key, Range, Setting, Values, When};
 use crate::qcd::HBAR_C_GEV_FM;
 use crate::random::Stream;
+
+/// The registry's entry.
+pub static MODEL: Model = Model {
+    kind: "collinear-expansion",
+    about: "induced emission in the collinear (higher-twist) expansion",
+    keys: &[
+        Key::default(
+            "phase",
+            Form::Choice(&[
+                Choice::built("interference", "2 - 2 cos(phi)"),
+                Choice::built(
+                    "rescattering",
+                    "2 - 2 cos(phi) - 2 phi sin(phi) + 2 phi^2 cos(phi), up to the window",
+                ),
+                Choice::built(
+                    "soft-gradient",
+                    "2 - 2 cos(phi) - 2 phi sin(phi), negative at small phi",
+                ),
+            ]),
+            "\"interference\"",
+            "Phase factor, with phi the path over the formation time.",
+        ),
+        Key::default(
+            "window",
+            Form::Number(Range::above(0.0, LARGEST_WINDOW)),
+            "1.0",
+            "Largest phase phi, in units of the formation time; the factor turns negative beyond 1.2417.",
+        )
+        .when(&[When {
+            key: "phase",
+            is: &["rescattering"],
+        }]),
+        Key::default(
+            "pair_production",
+            Form::Flag,
+            "false",
+            "Whether the medium also induces g -> q qbar.",
+        ),
+    ],
+    describes: &[Physics::InducedEmission],
+    regime: "one scattering that gives a splitting its phase: within a formation time the medium gives less transverse \
+             momentum squared than the splitting has",
+    build,
+};
+
+fn build(name: String, values: &Values) -> Effect {
+    let phase = match values.word("phase") {
+        "interference" => PhaseSettings::Interference,
+        "soft-gradient" => PhaseSettings::SoftGradient,
+        _ => PhaseSettings::Rescattering {
+            window: values.number("window"),
+        },
+    };
+    let pairs = values.flag("pair_production");
+    Effect::Rate(Box::new(CollinearExpansion::new(name, phase, pairs)))
+}
+
+/// Phase factors of the collinear expansion.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum PhaseSettings {
+    /// K_a = 2 - 2 cos phi.
+    Interference,
+    /// K_b = K_a - 2 phi sin phi + 2 phi^2 cos phi, cut at phi = `window`.
+    Rescattering {
+        /// In units of the formation time, at most 1.2417.
+        window: f64,
+    },
+    /// K_c = K_a - 2 phi sin phi.
+    SoftGradient,
+}
+
+impl From<PhaseSettings> for EffectSettings {
+    fn from(phase: PhaseSettings) -> EffectSettings {
+        let word = |word| ("phase", Setting::Word(word));
+        match phase {
+            PhaseSettings::Interference => EffectSettings::new(&MODEL, &[word("interference")]),
+            PhaseSettings::SoftGradient => EffectSettings::new(&MODEL, &[word("soft-gradient")]),
+            PhaseSettings::Rescattering { window } => {
+                let window = ("window", Setting::Number(window));
+                EffectSettings::new(&MODEL, &[word("rescattering"), window])
+            }
+        }
+    }
+}
 
 /// The largest window, in formation times, inside which K_b is not negative.
 pub const LARGEST_WINDOW: f64 = 1.2417;
@@ -35,6 +120,8 @@ pub const LARGEST_WINDOW: f64 = 1.2417;
 const SMALL_PHASE: f64 = 0.05;
 /// Terms of the series of K_b; the first one left out is below 10^-12 of phi^2 inside the largest window.
 const SERIES_TERMS: usize = 10;
+/// Below this phase K = phi^2 to the last bit but one.
+const TINY_PHASE: f64 = 1e-7;
 /// Draws of a vertex before the last one is taken as it is: more than any accepted rate can need.
 const MOST_DRAWS: u32 = 1 << 20;
 /// Steps of the search for the maximum of K_b over its window.
@@ -45,6 +132,7 @@ const MAXIMUM_SEARCH_STEPS: usize = 2000;
 pub struct CollinearExpansion {
     name: String,
     phase: Phase,
+    pair_production: bool,
 }
 
 #[derive(Clone, Debug)]
@@ -59,8 +147,8 @@ enum Phase {
 }
 
 impl CollinearExpansion {
-    /// The effect under a name that is unique in the run, with its phase factor.
-    pub fn new(name: String, phase: PhaseSettings) -> CollinearExpansion {
+    /// The effect under a name that is unique in the run.
+    pub fn new(name: String, phase: PhaseSettings, pair_production: bool) -> CollinearExpansion {
         let phase = match phase {
             PhaseSettings::Interference => Phase::Interference,
             PhaseSettings::SoftGradient => Phase::SoftGradient,
@@ -70,11 +158,15 @@ impl CollinearExpansion {
                 series: std::array::from_fn(|place| rescattering_coefficient(place + 1)),
             },
         };
-        CollinearExpansion { name, phase }
+        CollinearExpansion {
+            name,
+            phase,
+            pair_production,
+        }
     }
 
-    /// int dl qhat(l) K(k l), GeV^2, k = 1/tau_f per fm.
-    fn strength_gev2(&self, path: &Path, k_per_fm: f64) -> f64 {
+    /// int dl qhat(l) K(k l) over a path, GeV^2, k = 1/tau_f per fm: R z(1-z) t.
+    pub fn strength_gev2(&self, path: &Path, k_per_fm: f64) -> f64 {
         let (i0, i2) = (path.qhat_integral_gev2(), path.second_moment_gev2_fm2());
         let (k2, i4) = (k_per_fm * k_per_fm, path.fourth_moment_gev2_fm4());
         let small = k_per_fm * path.end_fm() < SMALL_PHASE;
@@ -116,7 +208,7 @@ impl CollinearExpansion {
 }
 
 /// 1/tau_f = t/(2 E hbar c), per fm.
-fn wave_number_per_fm(t_gev2: f64, energy_gev: f64) -> f64 {
+pub fn wave_number_per_fm(t_gev2: f64, energy_gev: f64) -> f64 {
     t_gev2 / (2.0 * energy_gev * HBAR_C_GEV_FM)
 }
 
@@ -147,13 +239,61 @@ fn largest_rescattering(window: f64) -> f64 {
     on_grid + 2.0 * window * (1.0 + window) * step
 }
 
+impl CollinearExpansion {
+    fn soft_gradient(&self) -> bool {
+        matches!(self.phase, Phase::SoftGradient)
+    }
+
+    /// Whether the bound at t is the one that falls with the square of the phase.
+    fn is_short(&self, passage: &Passage, k_per_fm: f64) -> bool {
+        let path = &passage.trace.path;
+        let largest = match self.phase {
+            Phase::Rescattering { largest, .. } => largest,
+            _ => 4.0,
+        };
+        k_per_fm * k_per_fm * path.second_moment_gev2_fm2() < largest * path.qhat_integral_gev2()
+    }
+
+    /// K(phi)/phi^2.
+    fn phase_factor_over_square(&self, phi: f64) -> f64 {
+        if phi < TINY_PHASE {
+            1.0
+        } else {
+            self.phase_factor(phi) / (phi * phi)
+        }
+    }
+
+    /// Density qhat(l) max(K(l/tau_f), 0).
+    fn draw_by_integrand(&self, passage: &Passage, t_gev2: f64, stream: &mut Stream) -> f64 {
+        let path = &passage.trace.path;
+        let k_per_fm = wave_number_per_fm(t_gev2, passage.energy_gev);
+        let last_phase = k_per_fm * path.end_fm();
+        let short = last_phase < 2.0;
+        let largest = self.largest_over_envelope(last_phase);
+        let mut l = path.end_fm();
+        for _ in 0..MOST_DRAWS {
+            l = if short {
+                path.draw_by_qhat_l2(stream)
+            } else {
+                path.draw_by_qhat(stream)
+            };
+            let phi = k_per_fm * l;
+            let envelope = if short { 0.25 * phi * phi } else { 1.0 };
+            if stream.random::<f64>() * largest * envelope < self.phase_factor(phi) {
+                break;
+            }
+        }
+        l
+    }
+}
+
 impl RateEffect for CollinearExpansion {
     fn name(&self) -> &str {
         &self.name
     }
 
     fn bound(&self, passage: &Passage) -> RateBound {
-        let path = passage.path;
+        let path = &passage.trace.path;
         let k_at_one = wave_number_per_fm(1.0, passage.energy_gev);
         let quadratic = k_at_one * k_at_one * path.second_moment_gev2_fm2();
         let flat = path.qhat_integral_gev2();
@@ -170,39 +310,80 @@ impl RateEffect for CollinearExpansion {
         }
     }
 
-    fn relative_change(&self, passage: &Passage, t_gev2: f64, z: f64) -> f64 {
+    fn needs_whole_path(&self) -> bool {
+        self.soft_gradient()
+    }
+
+    fn propose_place_fm(&self, passage: &Passage, t_gev2: f64, stream: &mut Stream) -> f64 {
+        let path = &passage.trace.path;
+        if self.soft_gradient() {
+            0.0
+        } else if self.is_short(passage, wave_number_per_fm(t_gev2, passage.energy_gev)) {
+            path.draw_by_qhat_l2(stream)
+        } else {
+            path.draw_by_qhat(stream)
+        }
+    }
+
+    /// The integrand at the place over the density that the place was drawn with.
+    fn relative_change(&self, passage: &Passage, splitting: &Splitting) -> f64 {
+        let Splitting {
+            t_gev2,
+            z,
+            place_fm,
+            ..
+        } = *splitting;
         let k_per_fm = wave_number_per_fm(t_gev2, passage.energy_gev);
-        self.strength_gev2(passage.path, k_per_fm) / (z * (1.0 - z) * t_gev2)
+        let path = &passage.trace.path;
+        let strength = if self.soft_gradient() {
+            self.strength_gev2(path, k_per_fm)
+        } else {
+            let phi = k_per_fm * place_fm;
+            if self.is_short(passage, k_per_fm) {
+                let phase = self.phase_factor_over_square(phi);
+                k_per_fm * k_per_fm * path.second_moment_gev2_fm2() * phase
+            } else {
+                path.qhat_integral_gev2() * self.phase_factor(phi)
+            }
+        };
+        strength / (z * (1.0 - z) * t_gev2)
     }
 
     fn thins_the_vacuum(&self) -> bool {
-        matches!(self.phase, Phase::SoftGradient)
+        self.soft_gradient()
     }
 
-    /// Density qhat(l) max(K(l/tau_f), 0).
-    fn vertex_fm(&self, passage: &Passage, t_gev2: f64, stream: &mut Stream) -> f64 {
-        let path = passage.path;
-        let k_per_fm = wave_number_per_fm(t_gev2, passage.energy_gev);
-        let end_fm = match self.phase {
-            Phase::Rescattering { window, .. } => path.end_fm().min(window / k_per_fm),
-            _ => path.end_fm(),
-        };
-        let last_phase = k_per_fm * end_fm;
-        let short = last_phase < 2.0;
-        let largest = self.largest_over_envelope(last_phase);
-        let mut l = end_fm;
-        for _ in 0..MOST_DRAWS {
-            l = if short {
-                path.draw_by_qhat_l2(end_fm, stream)
-            } else {
-                path.draw_by_qhat(end_fm, stream)
-            };
-            let phi = k_per_fm * l;
-            let envelope = if short { 0.25 * phi * phi } else { 1.0 };
-            if stream.random::<f64>() * largest * envelope < self.phase_factor(phi) {
-                break;
-            }
-        }
-        l
+    fn negative_change(&self, passage: &Passage, splitting: &Splitting) -> f64 {
+        self.relative_change(passage, splitting).min(0.0)
+    }
+
+    fn vertex_fm(
+        &self,
+        passage: &Passage,
+        splitting: &Splitting,
+        stream: &mut Stream,
+    ) -> Option<f64> {
+        Some(if self.soft_gradient() {
+            self.draw_by_integrand(passage, splitting.t_gev2, stream)
+        } else {
+            splitting.place_fm
+        })
+    }
+
+    fn makes_quark_pairs(&self) -> bool {
+        self.pair_production
+    }
+
+    /// More transverse momentum than its own comes from the medium within a formation time.
+    fn is_outside_regime(&self, passage: &Passage, splitting: &Splitting) -> bool {
+        let Splitting {
+            t_gev2,
+            z,
+            place_fm,
+            ..
+        } = *splitting;
+        let formation_fm = 1.0 / wave_number_per_fm(t_gev2, passage.energy_gev);
+        let qhat = passage.trace.path.qhat_gev2_per_fm(place_fm) * passage.share_of_bound(place_fm);
+        qhat * formation_fm > z * (1.0 - z) * t_gev2
     }
 }

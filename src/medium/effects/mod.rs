@@ -1,61 +1,59 @@
-//! Effects of the medium on branching rates: one file a published model.
+//! Effects of the medium: one file a published model, its formula, source, regime, bound and parameters first.
 //!
-//! An effect states the relative change R = D/f_vac of the vacuum density at (t, z) for the splittings q -> q g and
-//! g -> g g. The positive part of D is a channel of its own; the negative part thins the vacuum channel.
+//! A rate effect changes the branching rates along a parton's path; a path effect changes the momentum of a settled
+//! parton. [`MODELS`] is the registry: a new effect adds a file and a line there.
 
+pub mod bound;
+pub mod broadening;
 pub mod collinear_expansion;
+pub mod drag;
+pub mod emission_plane;
+pub mod model;
 pub mod multiple_soft;
-pub mod scaled_plane;
+pub mod path_effect;
+pub mod rate_effect;
+pub mod resolved_only;
+pub mod scaled_emission;
 pub mod scaled_table;
 pub mod single_hard;
+pub mod singular_enhancement;
+pub mod virtuality_diffusion;
 
-use crate::medium::path::Path;
-use crate::qcd::Species;
-use crate::random::Stream;
+pub use bound::{Emission, EmissionLimits, PowerLaw, RateBound};
+pub use model::{Effect, EffectSettings, Model, Physics};
+pub use path_effect::{Flight, Journey, PathEffect};
+pub use rate_effect::{Passage, RateEffect, Splitting};
 
-/// What an effect sees of a parton on its way: all path integrals are done.
-#[derive(Clone, Copy, Debug)]
-pub struct Passage<'a> {
-    /// The parton.
-    pub species: Species,
-    /// Its lab energy in GeV.
-    pub energy_gev: f64,
-    /// The transport coefficient of a gluon along its path.
-    pub path: &'a Path,
+/// Every effect that a config may name.
+pub static MODELS: &[&Model] = &[
+    &collinear_expansion::MODEL,
+    &multiple_soft::MODEL,
+    &single_hard::MODEL,
+    &singular_enhancement::MODEL,
+    &resolved_only::MODEL,
+    &broadening::MODEL,
+    &drag::MODEL,
+    &virtuality_diffusion::MODEL,
+];
+
+/// The model of a name.
+pub fn model(kind: &str) -> Option<&'static Model> {
+    MODELS.iter().find(|model| model.kind == kind).copied()
 }
 
-/// coefficient * t^power, t in GeV^2.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct PowerLaw {
-    /// Value at t = 1 GeV^2.
-    pub coefficient: f64,
-    /// Exponent, -1 to 1.
-    pub power: i32,
-}
-
-/// A bound on max(R, 0) z(1-z) as a function of t: the least or the greatest of two power laws.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub enum RateBound {
-    /// The smaller of the two; the first has the smaller exponent.
-    LeastOf(PowerLaw, PowerLaw),
-    /// The larger of the two; the first has the smaller exponent.
-    GreatestOf(PowerLaw, PowerLaw),
-}
-
-/// A change of the branching rates by the medium.
-pub trait RateEffect: Send + Sync {
-    /// Its name, unique in a run: the key of its random streams and its channel's name in the event file.
-    fn name(&self) -> &str;
-
-    /// A bound on its positive part for all t and z of a parton on this passage.
-    fn bound(&self, passage: &Passage) -> RateBound;
-
-    /// R(t, z) = D/f_vac: change of the density of a splitting at t (GeV^2) and z over the vacuum's.
-    fn relative_change(&self, passage: &Passage, t_gev2: f64, z: f64) -> f64;
-
-    /// Whether R can be negative, so that vacuum trials must be thinned.
-    fn thins_the_vacuum(&self) -> bool;
-
-    /// Where along the path (fm from birth) an induced branching at t happens, drawn from the path integrand.
-    fn vertex_fm(&self, passage: &Passage, t_gev2: f64, stream: &mut Stream) -> f64;
+/// Names of the effects' channels: the kind, with a number from the second of the same kind on.
+pub fn effect_names(effects: &[EffectSettings]) -> Vec<String> {
+    let name = |place: usize| {
+        let kind = effects[place].model.kind;
+        let earlier = effects[..place]
+            .iter()
+            .filter(|other| other.model.kind == kind)
+            .count();
+        if earlier == 0 {
+            kind.to_string()
+        } else {
+            format!("{kind}-{}", earlier + 1)
+        }
+    };
+    (0..effects.len()).map(name).collect()
 }

@@ -1,7 +1,7 @@
 //! A brick: uniform temperature everywhere from lab time 0 to its length, at rest (common practice for tests of
 //! energy-loss models).
 
-use super::{Local, Ray, Stretch, TemperatureField};
+use super::{Ceiling, Fluid, Local, Ray, Stretch, TemperatureField};
 
 /// A uniform medium at rest that ends at a lab time.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -36,5 +36,26 @@ impl TemperatureField for Brick {
             temperature_gev: self.temperature_gev,
             flow_factor: 1.0,
         }
+    }
+
+    fn fluid(&self, [t, ..]: [f64; 4]) -> Fluid {
+        let inside = (0.0..=self.length_fm).contains(&t);
+        Fluid {
+            temperature_gev: if inside { self.temperature_gev } else { 0.0 },
+            ..Fluid::EMPTY
+        }
+    }
+
+    fn first_tau_fm(&self) -> f64 {
+        0.0
+    }
+
+    fn ceilings(&self, _ray: &Ray, _stretch: &Stretch, ceilings: &mut Vec<Ceiling>) -> bool {
+        ceilings.clear();
+        ceilings.push(Ceiling {
+            temperature_gev: self.temperature_gev,
+            flow_factor: 1.0,
+        });
+        true
     }
 }

@@ -8,6 +8,8 @@
 //!
 //! and its integral over [m, 1-m], m the smallest fraction at t, is bounded by C_F (2 + e^-3)/m and 2 C_A/m: for the
 //! quark, m ln((1-m)/m) - 2m/(1-m) <= m ln(1/m) - 2m <= e^-3 (at m = e^-3); for the gluon, m - 2m/(1-m) <= 0.
+//! Where the effect also makes quark pairs, g -> q qbar adds n_f T_R (z^2 + (1-z)^2)/(z(1-z)) <= n_f T_R [1/z + 1/(1-z)]
+//! with the integral 2 n_f T_R ln((1-m)/m) <= 2 n_f T_R e^-1/m.
 //!
 //! m is the larger of the range's own end (1/m <= 4 t/t0, or 1/epsilon) and of the small-angle limit's:
 //! z(1-z) t <= min(z, 1-z)^2 E^2 is min(z, 1-z) >= t/(E^2 + t). So 1/m <= min(4 t/t0, (E^2 + t_start)/t), and the rate
@@ -20,7 +22,7 @@ use super::Trial;
 use crate::medium::effects::{PowerLaw, RateBound};
 use crate::numerics::elementary::{exp, ln};
 use crate::qcd::kernels::Splitting;
-use crate::qcd::{C_A, C_F};
+use crate::qcd::{C_A, C_F, T_R};
 use crate::random::Stream;
 use crate::shower::ZRange;
 use crate::shower::proposal::FractionRange;
@@ -38,6 +40,8 @@ const LARGEST_SMALLEST: f64 = 0.5;
 pub struct Emitter {
     /// Gluon or quark.
     pub is_gluon: bool,
+    /// How many flavours an induced g -> q qbar can make; 0 where the effect makes none.
+    pub pair_flavours: u8,
     /// Where its evolution starts, GeV^2.
     pub start_t_gev2: f64,
     /// Its lab energy squared, GeV^2, where emissions are limited to small angles.
@@ -76,15 +80,11 @@ impl InducedEnvelope {
         bound: RateBound,
         envelope_factor: f64,
     ) -> Option<InducedEnvelope> {
-        let kappa2 = rate.range.smallest_kappa2_gev2();
-        let largest_alpha_s = rate
-            .coupling
-            .alpha_s(rate.coupling.scale_gev2(kappa2, rate.range.end_t_gev2));
-        let factor = largest_alpha_s / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
+        let factor = rate.largest_alpha_s() / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
         let strength = Broken::strength(bound)?;
         let width = Broken::inverse_smallest(&rate.range, &emitter);
         let over_z = if emitter.is_gluon {
-            2.0 * C_A
+            2.0 * C_A + 2.0 * emitter.pair_strength() * exp(-1.0)
         } else {
             C_F * (2.0 + exp(-3.0))
         };
@@ -108,14 +108,19 @@ impl InducedEnvelope {
                 continue;
             }
             let shape = Shape::new(self.emitter.is_gluon, smallest);
-            let z = shape.draw(stream);
+            let pairs = self.emitter.pair_strength();
+            let pair_integral = 2.0 * pairs * shape.logarithm();
+            let integral = shape.integral() + pair_integral;
+            let makes_pair = pairs > 0.0 && stream.random::<f64>() * integral < pair_integral;
             // The density is the rate in ln t times the normalised shape in z, without 1/(2 pi) like all densities.
-            let inverse_envelope = shape.integral() / (TAU * rate * shape.value(z));
-            let splitting = if self.emitter.is_gluon {
-                Splitting::GluonToGluons
+            let (splitting, z, value) = if makes_pair {
+                let z = shape.draw_pair(stream);
+                (Splitting::GluonToQuarks, z, pairs / (z * (1.0 - z)))
             } else {
-                Splitting::QuarkToQuarkGluon
+                let z = shape.draw(stream);
+                (self.emitter.emission(), z, shape.value(z))
             };
+            let inverse_envelope = integral / (TAU * rate * value);
             return Some(Trial {
                 t,
                 z,
@@ -155,6 +160,21 @@ impl InducedEnvelope {
 }
 
 impl Emitter {
+    /// n_f T_R.
+    #[inline]
+    fn pair_strength(&self) -> f64 {
+        f64::from(self.pair_flavours) * T_R
+    }
+
+    #[inline]
+    fn emission(&self) -> Splitting {
+        if self.is_gluon {
+            Splitting::GluonToGluons
+        } else {
+            Splitting::QuarkToQuarkGluon
+        }
+    }
+
     /// The smallest fraction inside the small-angle limit.
     #[inline]
     fn smallest(&self, t_gev2: f64) -> f64 {
@@ -169,6 +189,7 @@ impl Broken {
         let (first, second, least) = match bound {
             RateBound::LeastOf(first, second) => (first, second, true),
             RateBound::GreatestOf(first, second) => (first, second, false),
+            RateBound::Nothing | RateBound::TimesVacuum(_) | RateBound::Emissions => return None,
         };
         let positive = [first.coefficient > 0.0, second.coefficient > 0.0];
         if !(positive[0] && positive[1] || !least && (positive[0] || positive[1])) {
@@ -353,6 +374,18 @@ impl Shape {
         }
     }
 
+    /// int dz/z = int dz/(1-z) over the range.
+    #[inline]
+    fn logarithm(&self) -> f64 {
+        ln((1.0 - self.smallest) / self.smallest)
+    }
+
+    /// z with the density 1/z + 1/(1-z) = 1/(z(1-z)): uniform in ln(z/(1-z)).
+    fn draw_pair(&self, stream: &mut Stream) -> f64 {
+        let odds = exp((2.0 * stream.random::<f64>() - 1.0) * self.logarithm());
+        odds / (1.0 + odds)
+    }
+
     fn draw(&self, stream: &mut Stream) -> f64 {
         let place = stream.random::<f64>() * (self.other + 2.0 * self.square);
         if place < self.other {
@@ -443,6 +476,7 @@ mod tests {
             for energy in [3.0, 20.0, 300.0] {
                 let emitter = Emitter {
                     is_gluon,
+                    pair_flavours: 0,
                     start_t_gev2: 5e3,
                     angle_limit_energy2_gev2: Some(energy * energy),
                 };
@@ -479,6 +513,7 @@ mod tests {
             let bound = RateBound::LeastOf(law(strength.0, -1), law(strength.1, 1));
             let emitter = Emitter {
                 is_gluon: true,
+                pair_flavours: 0,
                 start_t_gev2: 90.0,
                 angle_limit_energy2_gev2: angle,
             };

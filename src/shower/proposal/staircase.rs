@@ -54,6 +54,11 @@ impl FlavourRule {
         }
     }
 
+    /// How many flavours can be open at all.
+    pub fn most(&self) -> u8 {
+        self.flavours
+    }
+
     /// How many flavours are open at `t`.
     #[inline]
     pub fn open(&self, t_gev2: f64) -> u8 {
@@ -83,6 +88,14 @@ pub struct VacuumRate {
 }
 
 impl VacuumRate {
+    /// alpha_s at the smallest scale that a branching can have, its largest value.
+    #[inline]
+    pub fn largest_alpha_s(&self) -> f64 {
+        let kappa2 = self.range.smallest_kappa2_gev2();
+        let scale = self.coupling.scale_gev2(kappa2, self.range.end_t_gev2);
+        self.coupling.alpha_s(scale)
+    }
+
     /// The vacuum density of a trial over 2 pi: alpha_s times the kernel.
     #[inline]
     pub fn density(&self, trial: &Trial) -> f64 {
@@ -195,10 +208,22 @@ impl Staircase {
         stream: &mut Stream,
         trials: &mut u64,
     ) -> Option<Trial> {
+        self.propose_times(1.0, height, stream, trials)
+    }
+
+    /// The same for `times` the envelope; the trial still carries one over the envelope itself.
+    #[inline]
+    pub fn propose_times(
+        &self,
+        times: f64,
+        height: &mut Height,
+        stream: &mut Stream,
+        trials: &mut u64,
+    ) -> Option<Trial> {
         loop {
             *trials += 1;
             let uniform: f64 = stream.sample(OpenClosed01);
-            let integral = height.integral + ln(uniform);
+            let integral = height.integral + ln(uniform) / times;
             height.integral = integral;
             if integral <= 0.0 {
                 return None;

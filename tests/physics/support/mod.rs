@@ -1,5 +1,7 @@
 //! What the subjects share: set-ups, samples, statistics, reference tables.
 
+pub mod first_branching;
 pub mod reference;
 pub mod setup;
 pub mod statistics;
+pub mod ways;

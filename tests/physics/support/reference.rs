@@ -4,7 +4,9 @@ use std::path::Path;
 
 use serde_json::Value;
 
-use spindrift::medium::PhaseSettings;
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::effects::{EffectSettings, model};
+use spindrift::parameters::{Form, Setting};
 use spindrift::qcd::{CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::shower::{FlavourOpening, ZRange};
 
@@ -76,12 +78,17 @@ pub fn setup(case: &Value) -> Setup {
     }
     let length = number(medium, "length_fm");
     let qhat = number(medium, "gluon_qhat_GeV2_per_fm");
-    let mut brick = setup::brick(length, qhat, phase(&medium["effect"]));
+    let effects = match medium["effects"].as_array() {
+        None => vec![phase(&medium["effect"]).into()],
+        Some(list) => list.iter().map(|words| effect(words, length)).collect(),
+    };
+    let mut brick = setup::brick_with(length, qhat, effects);
     brick.limit_to_small_angles = medium["limit_to_small_angles"] == true;
     setup.with_medium(brick)
 }
 
-fn phase(effect: &Value) -> PhaseSettings {
+/// The phase factor of an effect.
+pub fn phase(effect: &Value) -> PhaseSettings {
     match effect["phase"].as_str() {
         Some("interference") => PhaseSettings::Interference,
         Some("soft-gradient") => PhaseSettings::SoftGradient,
@@ -89,6 +96,62 @@ fn phase(effect: &Value) -> PhaseSettings {
             window: number(effect, "window"),
         },
         other => panic!("unknown phase {other:?}"),
+    }
+}
+
+/// The kinds of a case's effects.
+pub fn effect_kinds(case: &Value) -> Vec<&str> {
+    let list = case["medium"]["effects"].as_array();
+    let kind = |effect| string(effect, "kind");
+    list.expect("a list of effects").iter().map(kind).collect()
+}
+
+fn string<'a>(value: &'a Value, key: &str) -> &'a str {
+    value[key]
+        .as_str()
+        .unwrap_or_else(|| panic!("no word {key} in {value}"))
+}
+
+/// An effect of the registry from the words of a table.
+pub fn effect(words: &Value, length_fm: f64) -> EffectSettings {
+    let kind = string(words, "kind");
+    let keys = model(kind).unwrap_or_else(|| panic!("no {kind}")).keys;
+    let mut given = Vec::new();
+    for (name, value) in words.as_object().expect("an object") {
+        if name == "kind" {
+            continue;
+        }
+        let name = parameter(kind, name);
+        let key = keys.iter().find(|key| key.name == name);
+        let key = key.unwrap_or_else(|| panic!("{kind} has no {name}"));
+        let setting = match (value, key.form) {
+            (Value::Bool(flag), _) => Setting::Flag(*flag),
+            (Value::String(word), Form::Choice(choices)) => {
+                let choice = choices.iter().find(|choice| choice.name == word);
+                Setting::Word(choice.expect("a word of the key").name)
+            }
+            // The table states the opacity of the whole brick.
+            _ if name == "opacity_per_fm" => {
+                Setting::Number(value.as_f64().expect("a number") / length_fm)
+            }
+            _ => Setting::Number(value.as_f64().expect("a number")),
+        };
+        given.push((key.name, setting));
+        // The table states the number alone, a config also the law that it belongs to.
+        for condition in key.when {
+            given.push((condition.key, Setting::Word(condition.is[0])));
+        }
+    }
+    setup::effect(kind, &given)
+}
+
+/// The name of a config for a number of a table.
+fn parameter<'a>(kind: &str, name: &'a str) -> &'a str {
+    match (kind, name) {
+        ("singular-enhancement", "enhancement") => "factor",
+        ("single-hard", "gluon_opacity") => "opacity_per_fm",
+        ("single-hard", "mu_GeV") => "debye_mass_GeV",
+        _ => name,
     }
 }
 
@@ -127,6 +190,11 @@ pub fn name(case: &Value) -> String {
         &case["medium"]["length_fm"],
     ] {
         if !value.is_null() {
+            words += &format!(" {value}");
+        }
+    }
+    for effect in case["medium"]["effects"].as_array().into_iter().flatten() {
+        for value in effect.as_object().expect("an object").values() {
             words += &format!(" {value}");
         }
     }

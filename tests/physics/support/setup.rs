@@ -1,18 +1,26 @@
 //! From a few choices to a generator, and samples of first branchings and of whole events.
 
+use std::sync::Arc;
+
 use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
-use spindrift::medium::field::{Brick, Longitudinal, TemperatureField};
+use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::medium::effects::{EffectSettings, model};
+use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
+use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
-    ColourCharge, EffectSettings, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings,
-    PhaseSettings, TransportKind, TransportSettings,
+    ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
+    TransportSettings,
 };
-use spindrift::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
+use spindrift::parameters::Setting;
+use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
 use spindrift::run::generator::Generator;
-use spindrift::shower::leg::Branching;
+use spindrift::shower::leg::{Branching, Evolution};
+use spindrift::shower::proposal::FractionRange;
+use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::{
     FlavourOpening, Kernels, Lifetime, Ordering, Shower, ShowerSettings, ZRange,
 };
@@ -75,14 +83,29 @@ pub fn running(argument: ScaleArgument, loops: Loops) -> CouplingSettings {
 
 /// A brick with a constant qhat of the gluon and one phase factor.
 pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> MediumSettings {
+    brick_with(length_fm, qhat_gev2_per_fm, vec![phase.into()])
+}
+
+/// An effect of the registry, with some of its parameters and the defaults for the others.
+pub fn effect(kind: &str, given: &[(&'static str, Setting)]) -> EffectSettings {
+    let model = model(kind).unwrap_or_else(|| panic!("the registry has no {kind}"));
+    EffectSettings::new(model, given)
+}
+
+/// A brick with a constant qhat of the gluon and any effects.
+pub fn brick_with(
+    length_fm: f64,
+    qhat_gev2_per_fm: f64,
+    effects: Vec<EffectSettings>,
+) -> MediumSettings {
     MediumSettings {
-        field: FieldSettings {
-            kind: FieldKind::Brick {
+        field: FieldSettings::new(
+            FieldKind::Brick {
                 temperature_gev: 0.3,
                 length_fm,
             },
-            end_temperature_gev: 0.15,
-        },
+            0.15,
+        ),
         origin: OriginSettings::Fixed {
             x_fm: 0.0,
             y_fm: 0.0,
@@ -92,7 +115,7 @@ pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> Med
             stated_for: ColourCharge::Gluon,
             flow: true,
         },
-        effects: vec![EffectSettings::CollinearExpansion { phase }],
+        effects,
         limit_to_small_angles: true,
         min_energy_gev: 2.0,
     }
@@ -146,10 +169,7 @@ impl Setup {
 
     pub fn generator(&self) -> Generator {
         let source = build(&self.source);
-        let medium = self
-            .medium
-            .as_ref()
-            .map(|settings| Medium::new(settings, analytic_field(&settings.field.kind)));
+        let medium = self.medium();
         let largest = source.largest_virtuality_gev();
         let shower = Shower::new(&self.shower, &self.coupling, medium, largest)
             .expect("the coupling of a test stays below 1");
@@ -157,15 +177,55 @@ impl Setup {
             seed: self.seed,
             source,
             shower,
-            origin: self.medium.as_ref().map(|medium| medium.origin),
+            origin: self.medium.as_ref().map(|medium| birth(&medium.origin)),
+            fields: None,
             full_history: self.full_history,
+            exits: None,
         }
+    }
+
+    /// What the legs of this set-up share, for tests that drive them by hand.
+    pub fn evolution(&self) -> Evolution {
+        let coupling = &self.coupling;
+        let rate = VacuumRate {
+            coupling: Coupling::new(coupling).expect("the coupling of a test stays below 1"),
+            range: FractionRange {
+                end_t_gev2: self.shower.virtuality_cutoff_gev.powi(2),
+                kind: self.shower.z_range,
+            },
+            flavours: FlavourRule::new(&self.shower, coupling.quark_masses_gev),
+        };
+        let largest_t = build(&self.source).largest_virtuality_gev().powi(2);
+        let stairs =
+            [false, true].map(|gluon| Staircase::new(&rate, &self.shower, gluon, largest_t));
+        let medium = self.medium();
+        let purposes = |medium: &Medium| {
+            let rates = medium.rates().iter();
+            rates
+                .map(|rate| Purpose::named(rate.effect.name()))
+                .collect()
+        };
+        Evolution {
+            rate,
+            stairs,
+            emits: [self.shower.kernels.q_qg, self.shower.kernels.g_gg],
+            makes_pairs: self.shower.kernels.g_qq,
+            effect_purposes: medium.as_ref().map_or(Vec::new(), purposes),
+            path_purposes: Vec::new(),
+            medium,
+            envelope_factor: self.shower.envelope_factor,
+        }
+    }
+
+    fn medium(&self) -> Option<Medium> {
+        let settings = self.medium.as_ref()?;
+        Some(Medium::new(settings, analytic_field(&settings.field.kind)))
     }
 
     /// Calls `visit` with the first branching of the first hard parton and the weight, for `events` events.
     pub fn first_branchings(&self, events: u64, mut visit: impl FnMut(Option<Branching>, f64)) {
         let generator = self.generator();
-        let mut walker = generator.worker();
+        let mut walker = generator.worker().walker;
         for id in 0..events {
             let key = Key::event(self.seed, id);
             let hard = generator.source.draw(&mut key.stream(Purpose::SOURCE));
@@ -178,26 +238,41 @@ impl Setup {
     /// Calls `visit` with each event and its rows.
     pub fn events(&self, ids: Range<i64>, mut visit: impl FnMut(&EventSummary, &[Parton])) {
         let generator = self.generator();
-        let mut walker = generator.worker();
+        let mut worker = generator.worker();
         let mut block = EventBlock::default();
         for id in ids {
             block.clear();
-            generator.generate(&mut walker, id, &mut block).unwrap();
+            generator.generate(&mut worker, id, &mut block).unwrap();
             visit(&block.events[0], &block.partons);
         }
     }
 }
 
-fn analytic_field(kind: &FieldKind) -> Box<dyn TemperatureField> {
+fn analytic_field(kind: &FieldKind) -> Arc<dyn TemperatureField> {
     match *kind {
         FieldKind::Brick {
             temperature_gev,
             length_fm,
-        } => Box::new(Brick::new(temperature_gev, length_fm)),
+        } => Arc::new(Brick::new(temperature_gev, length_fm)),
         FieldKind::Longitudinal {
             temperature_gev,
             start_fm,
-        } => Box::new(Longitudinal::new(temperature_gev, start_fm)),
+        } => Arc::new(Longitudinal::new(temperature_gev, start_fm)),
+        FieldKind::Radial {
+            amplitude,
+            q_per_fm,
+            start_fm,
+        } => Arc::new(Radial::new(amplitude, q_per_fm, start_fm)),
         FieldKind::Grid { .. } => panic!("tests build grids from numbers, not from files"),
+    }
+}
+
+fn birth(settings: &OriginSettings) -> Arc<dyn Origin> {
+    match settings {
+        OriginSettings::Fixed { x_fm, y_fm } => Arc::new(Fixed {
+            x_fm: *x_fm,
+            y_fm: *y_fm,
+        }),
+        other => panic!("{other:?}: these set-ups know fixed origins alone"),
     }
 }

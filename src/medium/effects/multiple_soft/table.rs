@@ -203,10 +203,16 @@ impl MultipleSoftTable {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::medium::effects::scaled_table::tests::assert_that_bounds_hold;
     use crate::random::{Key, Purpose};
     use rand::RngExt;
 
     const POINTS: usize = 40_000;
+
+    #[test]
+    fn its_bounds_hold() {
+        assert_that_bounds_hold(&MultipleSoftTable::new(), LN_X_LOW);
+    }
 
     /// Largest error of the table where |h| < 0.3, the same times x for x > 1, and largest relative error above, over
     /// random points in and beyond the table.

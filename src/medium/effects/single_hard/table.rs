@@ -196,10 +196,16 @@ fn tail_bound(ln_x: [f64; 2], ln_y: [f64; 2]) -> f64 {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::medium::effects::scaled_table::tests::assert_that_bounds_hold;
     use crate::random::{Key, Purpose};
     use rand::RngExt;
 
     const POINTS: usize = 40_000;
+
+    #[test]
+    fn its_bounds_hold() {
+        assert_that_bounds_hold(&SingleHardTable::new(), f64::NEG_INFINITY);
+    }
 
     /// Largest error of the table where |h| < 0.3, the same times x for x > 1, and largest relative error above, over
     /// random points in and beyond the table.

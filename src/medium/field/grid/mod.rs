@@ -1,18 +1,30 @@
 //! A field on a grid: multilinear interpolation in (tau, x, y) or (tau, x, y, eta).
 //!
 //! Temperature and the flow components u^x, u^y, tau u^eta are interpolated linearly along each axis; u^tau follows
-//! from the normalisation of the four-velocity. Each grid point keeps its four numbers side by side in one vector, and
-//! a place is found in constant time on uneven axes too. The error falls with the square of the spacing. Outside the
-//! grid there is no medium.
+//! from the normalisation of the four-velocity. A grid without flow is at rest in Milne coordinates, u^tau = 1: it
+//! expands along the beam like the longitudinal solution. A place is found in constant time on uneven axes too. The
+//! error falls with the square of the spacing. Outside the grid there is no medium. Only the hot part is kept, in 4
+//! bytes a point, or 16 with flow, which stand side by side.
 
 mod axis;
+mod builder;
+mod ceilings;
 mod hot_region;
+mod values;
+
+pub use builder::{Frame, GridBuilder};
+pub use hot_region::HotScan;
 
 use wide::f32x4;
 
-use super::{FieldData, Local, Ray, Stretch, TemperatureField};
+use super::{
+    Ceiling, Fluid, Local, Ray, Stretch, TemperatureField, is_before, milne_flow_factor,
+    on_light_cone, proper_time_fm,
+};
 use axis::Axis;
+use ceilings::CeilingTable;
 use hot_region::HotRegion;
+use values::{Place, Point, Values};
 
 /// Points of a ray that are worked on together: long enough to overlap slow operations, short enough for the first
 /// cache.
@@ -22,10 +34,14 @@ const BATCH: usize = 16;
 const CELLS_PER_SPACING: f64 = 0.5;
 /// More cells than this are not worth their time, whatever the grid.
 const MOST_CELLS: f64 = 200.0;
+/// A point beyond the grid by no more than this part of it lies at its edge: paths end there, but for rounding.
+const EDGE: f64 = 1e-9;
 
 /// A temperature field on a grid, of which only the hot part is kept.
 #[derive(Clone, Debug)]
 pub struct Grid {
+    first_tau_fm: f64,
+    hold: bool,
     hot: Option<Hot>,
 }
 
@@ -36,21 +52,9 @@ struct Hot {
     x: Axis,
     y: Axis,
     eta: Option<Axis>,
-    /// Temperature, u^x, u^y, tau u^eta of each point.
-    values: Vec<f32x4>,
-    has_flow: bool,
+    values: Values,
+    ceilings: CeilingTable,
     spacing_fm: f64,
-}
-
-impl Grid {
-    /// The field of some data, which must obey what [`FieldData`] promises of its axes and lengths; what is colder than
-    /// the end temperature (GeV) is dropped.
-    pub fn new(data: FieldData, end_temperature_gev: f64) -> Grid {
-        let region = HotRegion::new(&data, end_temperature_gev);
-        Grid {
-            hot: region.map(|region| Hot::new(data, region)),
-        }
-    }
 }
 
 impl TemperatureField for Grid {
@@ -66,9 +70,15 @@ impl TemperatureField for Grid {
     }
 
     fn local(&self, ray: &Ray, l_fm: f64) -> Local {
-        let mut local = [Local::EMPTY];
-        self.sample_into(ray, l_fm, 0.0, &mut local);
-        local[0]
+        let Some(hot) = &self.hot else {
+            return Local::EMPTY;
+        };
+        let point = ray.at(l_fm);
+        let tau = proper_time_fm(point);
+        match &hot.values {
+            Values::Resting(values) => resting(hot.value(values, ray, point, tau), ray, point, tau),
+            Values::Moving(values) => moving(hot.value(values, ray, point, tau), ray, point, tau),
+        }
     }
 
     fn sample(
@@ -80,7 +90,43 @@ impl TemperatureField for Grid {
         samples: &mut Vec<Local>,
     ) {
         samples.resize(count, Local::EMPTY);
-        self.sample_into(ray, first_fm, step_fm, samples);
+        let Some(hot) = &self.hot else {
+            samples.fill(Local::EMPTY);
+            return;
+        };
+        for (place, batch) in samples.chunks_mut(BATCH).enumerate() {
+            let start_fm = first_fm + (place * BATCH) as f64 * step_fm;
+            match &hot.values {
+                Values::Resting(values) => {
+                    hot.sample_batch(values, 0.0, ray, [start_fm, step_fm], batch, resting);
+                }
+                Values::Moving(values) => {
+                    let zero = f32x4::ZERO;
+                    hot.sample_batch(values, zero, ray, [start_fm, step_fm], batch, moving);
+                }
+            }
+        }
+    }
+
+    fn fluid(&self, point_fm: [f64; 4]) -> Fluid {
+        match &self.hot {
+            Some(hot) => hot.fluid(point_fm, self.hold),
+            None => Fluid::EMPTY,
+        }
+    }
+
+    fn first_tau_fm(&self) -> f64 {
+        self.first_tau_fm
+    }
+
+    fn ceilings(&self, ray: &Ray, stretch: &Stretch, ceilings: &mut Vec<Ceiling>) -> bool {
+        ceilings.clear();
+        match &self.hot {
+            Some(hot) if !on_light_cone(ray.at(stretch.first_fm)) => {
+                hot.ceilings.ceilings(ray, stretch, ceilings)
+            }
+            _ => false,
+        }
     }
 
     fn has_artificial_edge(&self) -> bool {
@@ -89,136 +135,138 @@ impl TemperatureField for Grid {
 }
 
 impl Grid {
-    fn sample_into(&self, ray: &Ray, first_fm: f64, step_fm: f64, samples: &mut [Local]) {
-        match &self.hot {
-            None => samples.fill(Local::EMPTY),
-            Some(hot) => {
-                for (place, batch) in samples.chunks_mut(BATCH).enumerate() {
-                    hot.sample_batch(
-                        ray,
-                        first_fm + (place * BATCH) as f64 * step_fm,
-                        step_fm,
-                        batch,
-                    );
-                }
-            }
-        }
+    /// Memory that the numbers of the field take, bytes.
+    pub fn bytes(&self) -> usize {
+        self.hot.as_ref().map_or(0, |hot| match &hot.values {
+            Values::Resting(values) => size_of_val(&values[..]),
+            Values::Moving(values) => size_of_val(&values[..]),
+        })
     }
 }
 
 impl Hot {
-    fn new(data: FieldData, region: HotRegion) -> Hot {
-        let depth = data.shape()[3];
-        let [tau, x, y] = region.planes.map(|[first, last]| first..last + 1);
-        let mut values = Vec::with_capacity(tau.len() * x.len() * y.len() * depth);
-        for i in tau.clone() {
-            for j in x.clone() {
-                for k in y.clone() {
-                    values.extend((0..depth).map(|m| point(&data, data.index(i, j, k, m))));
-                }
-            }
-        }
-        let axis = |points: &[f64], kept: std::ops::Range<usize>| Axis::new(points[kept].to_vec());
-        let (tau, x, y) = (
-            axis(&data.tau_fm, tau),
-            axis(&data.x_fm, x),
-            axis(&data.y_fm, y),
-        );
-        let spacing_fm = x
-            .mean_spacing()
-            .min(y.mean_spacing())
-            .min(tau.mean_spacing());
-        let has_flow = data.flow.is_some();
-        Hot {
-            region,
-            tau,
-            x,
-            y,
-            eta: data.eta.map(Axis::new),
-            values,
-            has_flow,
-            spacing_fm,
-        }
-    }
-
-    /// Temperature and flow at points `step_fm` apart, at most [`BATCH`] of them. Each loop does one kind of slow
-    /// operation for all, so that the processor overlaps them.
-    fn sample_batch(&self, ray: &Ray, first_fm: f64, step_fm: f64, samples: &mut [Local]) {
+    /// Interpolated values at points `step_fm` apart, at most [`BATCH`] of them, turned into samples by `local`. Each
+    /// loop does one kind of slow operation for all, so that the processor overlaps them.
+    #[inline]
+    fn sample_batch<V: Point>(
+        &self,
+        values: &[V],
+        zero: V,
+        ray: &Ray,
+        [first_fm, step_fm]: [f64; 2],
+        samples: &mut [Local],
+        local: impl Fn(Option<V>, &Ray, [f64; 4], f64) -> Local,
+    ) {
         let mut points = [[0.0; 4]; BATCH];
         let mut taus = [0.0; BATCH];
         for (place, (point, tau)) in points.iter_mut().zip(&mut taus).enumerate() {
             *point = ray.at(first_fm + place as f64 * step_fm);
-            let [t, _, _, z] = *point;
-            *tau = (t * t - z * z).max(0.0).sqrt();
+            *tau = proper_time_fm(*point);
         }
-        let mut values = [f32x4::ZERO; BATCH];
-        for ((value, [t, x, y, z]), tau) in values[..samples.len()].iter_mut().zip(points).zip(taus)
-        {
-            *value = self.values_at(tau, x, y, || {
-                libm::atanh(if t > 0.0 { z / t } else { ray.direction[2] })
-            });
+        let mut found = [Some(zero); BATCH];
+        for ((value, point), tau) in found[..samples.len()].iter_mut().zip(points).zip(taus) {
+            *value = self.value(values, ray, point, tau);
         }
-        for (((sample, value), [t, _, _, z]), tau) in
-            samples.iter_mut().zip(values).zip(points).zip(taus)
-        {
-            *sample = if self.has_flow {
-                moving(value, ray, [t, z], tau)
-            } else {
-                resting(value)
-            };
+        for (((sample, value), point), tau) in samples.iter_mut().zip(found).zip(points).zip(taus) {
+            *sample = local(value, ray, point, tau);
         }
     }
 
-    /// Interpolated values at Milne coordinates; nothing outside the rapidity axis.
+    /// Interpolated values at a point of a ray; `None` outside the rapidity axis.
     #[inline(always)]
-    fn values_at(&self, tau: f64, x: f64, y: f64, eta: impl Fn() -> f64) -> f32x4 {
+    fn value<V: Point>(
+        &self,
+        values: &[V],
+        ray: &Ray,
+        [t, x, y, z]: [f64; 4],
+        tau: f64,
+    ) -> Option<V> {
+        // The limit of tanh eta along a ray from the hard vertex.
+        let eta = || libm::atanh(if t > 0.0 { z / t } else { ray.direction[2] });
+        let place = self.place(tau, [x, y], eta)?;
+        // SAFETY: an axis locates a coordinate in a cell, whose next point is on the axis; `values` has all points.
+        Some(unsafe { place.value(values) })
+    }
+
+    #[inline(always)]
+    fn place(&self, tau: f64, [x, y]: [f64; 2], eta: impl Fn() -> f64) -> Option<Place> {
         let ((i, u), (j, v), (k, w)) = (self.tau.locate(tau), self.x.locate(x), self.y.locate(y));
         let corner = (i * self.x.len() + j) * self.y.len() + k;
-        let strides = [self.x.len() * self.y.len(), self.y.len(), 1];
-        let Some(eta_axis) = &self.eta else {
-            return trilinear(&self.values, corner, strides, [u, v, w]);
+        let place = Place {
+            corner,
+            strides: [self.x.len() * self.y.len(), self.y.len(), 1],
+            shares: [u, v, w],
+            eta_share: None,
+        };
+        let Some(axis) = &self.eta else {
+            return Some(place);
         };
         let eta = eta();
-        if !(eta_axis.first()..=eta_axis.last()).contains(&eta) {
-            return f32x4::ZERO;
+        if !(axis.first()..=axis.last()).contains(&eta) {
+            return None;
         }
-        let (m, s) = eta_axis.locate(eta);
-        let depth = eta_axis.len();
-        let strides = strides.map(|stride| stride * depth);
-        let low = trilinear(&self.values, corner * depth + m, strides, [u, v, w]);
-        let high = trilinear(&self.values, corner * depth + m + 1, strides, [u, v, w]);
-        low + (high - low) * s
+        let (m, share) = axis.locate(eta);
+        Some(Place {
+            corner: corner * axis.len() + m,
+            strides: place.strides.map(|stride| stride * axis.len()),
+            eta_share: Some(share),
+            ..place
+        })
+    }
+
+    fn fluid(&self, point_fm: [f64; 4], hold: bool) -> Fluid {
+        let [t, x, y, z] = point_fm;
+        let tau = proper_time_fm(point_fm);
+        let early = is_before(tau, self.tau.first()) && !(hold && self.region.tau_fm()[0] == 0.0);
+        let inside = |axis: &Axis, coordinate: f64| {
+            let slack = EDGE * (axis.last() - axis.first());
+            coordinate >= axis.first() - slack && coordinate <= axis.last() + slack
+        };
+        let late = tau > self.tau.last() + EDGE * (self.tau.last() - self.tau.first());
+        if early || late || !inside(&self.x, x) || !inside(&self.y, y) {
+            return Fluid::EMPTY;
+        }
+        let eta = || libm::atanh(if t > 0.0 { z / t } else { 0.0 });
+        let Some(place) = self.place(tau, [x, y], eta) else {
+            return Fluid::EMPTY;
+        };
+        let [temperature, ux, uy, ueta] = match &self.values {
+            // SAFETY: as in `value`.
+            Values::Resting(values) => [unsafe { place.value(values) }, 0.0, 0.0, 0.0],
+            // SAFETY: as in `value`.
+            Values::Moving(values) => unsafe { place.value(values) }.to_array(),
+        }
+        .map(f64::from);
+        Fluid::from_milne(temperature, [ux, uy, ueta], point_fm)
     }
 }
 
-fn point(data: &FieldData, place: usize) -> f32x4 {
-    let flow = match &data.flow {
-        Some(flow) => [flow[0][place], flow[1][place], flow[2][place]],
-        None => [0.0; 3],
-    };
-    f32x4::new([data.temperature_gev[place], flow[0], flow[1], flow[2]])
-}
-
-fn resting(values: f32x4) -> Local {
+/// Temperature and flow factor of a fluid at rest in Milne coordinates.
+#[inline(always)]
+fn resting(value: Option<f32>, ray: &Ray, point: [f64; 4], tau: f64) -> Local {
     Local {
-        temperature_gev: f64::from(values.to_array()[0]),
-        flow_factor: 1.0,
+        temperature_gev: f64::from(value.unwrap_or(0.0)),
+        flow_factor: milne_flow_factor(point, ray.direction[2], tau),
     }
 }
 
 /// Temperature and flow factor of a moving fluid from interpolated values at a point.
 #[inline(always)]
-fn moving(values: f32x4, ray: &Ray, [t, z]: [f64; 2], tau: f64) -> Local {
-    let [temperature, ux, uy, ueta] = values.to_array();
-    let [nx, ny, nz] = ray.direction;
+fn moving(value: Option<f32x4>, ray: &Ray, point: [f64; 4], tau: f64) -> Local {
+    let Some(value) = value else {
+        return Local::EMPTY;
+    };
+    let [temperature, ux, uy, ueta] = value.to_array();
+    let ([t, _, _, z], [nx, ny, nz]) = (point, ray.direction);
     let utau = f64::from((1.0 + ux * ux + uy * uy + ueta * ueta).sqrt());
     // Milne to lab: u^t = u^tau cosh eta + (tau u^eta) sinh eta and u^z likewise, with cosh eta = t/tau.
-    let longitudinal = if tau > 0.0 {
-        (utau * (t - nz * z) + f64::from(ueta) * (z - nz * t)) / tau
+    let across = if tau > 0.0 {
+        (z - nz * t) / tau
     } else {
-        // The limit along a ray from the hard vertex, where t = z = 0.
-        utau * (1.0 - nz * nz).sqrt()
+        // Along a ray from the hard vertex, where t = z = 0.
+        0.0
     };
+    let longitudinal = utau * milne_flow_factor(point, nz, tau) + f64::from(ueta) * across;
     let flow_factor = longitudinal - nx * f64::from(ux) - ny * f64::from(uy);
     Local {
         temperature_gev: f64::from(temperature),
@@ -226,24 +274,10 @@ fn moving(values: f32x4, ray: &Ray, [t, z]: [f64; 2], tau: f64) -> Local {
     }
 }
 
-/// The eight corners of a cell from `corner` on, `strides` apart, mixed by the place in the cell.
-#[inline(always)]
-fn trilinear(values: &[f32x4], corner: usize, strides: [usize; 3], [u, v, w]: [f32; 3]) -> f32x4 {
-    let edge = |point: usize| {
-        let (low, high) = (values[point], values[point + strides[2]]);
-        low + (high - low) * w
-    };
-    let face = |point: usize| {
-        let (low, high) = (edge(point), edge(point + strides[1]));
-        low + (high - low) * v
-    };
-    let (low, high) = (face(corner), face(corner + strides[0]));
-    low + (high - low) * u
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::medium::field::FieldData;
 
     /// A uniform moving field from tau = 0 on: at the hard vertex itself the flow factor is the limit along the ray,
     /// u^tau sqrt(1 - nz^2) - n.u, as a hair later.

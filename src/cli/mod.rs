@@ -2,6 +2,7 @@
 
 pub mod audit;
 pub mod field;
+mod field_make;
 pub mod generate;
 mod output;
 mod progress;
@@ -66,7 +67,7 @@ pub enum Verb {
     Show(show::ShowArgs),
     /// Reads whole event files back and checks everything in them
     Audit(audit::AuditArgs),
-    /// Looks at a temperature field
+    /// Looks at a temperature field, or makes one
     Field(field::FieldArgs),
     /// Prints the JSON Schema of a config, for editors
     Schema,

@@ -5,10 +5,8 @@ use std::sync::Arc;
 
 use super::assemble::AssembleError;
 use super::origins::{FieldView, births};
-use crate::files::field_file::read_field;
-use crate::medium::field::{
-    Brick, FieldData, Grid, Longitudinal, Radial, TemperatureField, placed,
-};
+use crate::files::field_file::{FieldFileError, LoadedGrid, read_grid};
+use crate::medium::field::{FieldData, Grid, TemperatureField, analytic, placed};
 use crate::medium::origin::{Origin, Placement, TemperatureSlice};
 use crate::medium::{FieldKind, FieldSettings, MediumSettings, OriginSettings};
 
@@ -47,7 +45,10 @@ pub fn surroundings(
     settings: &MediumSettings,
     file: Option<&Path>,
 ) -> Result<Surroundings, AssembleError> {
-    let data = file.map(read_field).transpose()?;
+    let loaded = file.map(|file| read(settings, file)).transpose()?;
+    let (grid, data) = loaded
+        .map(|loaded| (loaded.grid, loaded.first_slice))
+        .unzip();
     let tabulated = compared_with_births(settings).then(|| first_slice(&settings.field));
     let view = view(settings, data.as_ref(), tabulated.as_ref());
     let mut warnings = Vec::new();
@@ -62,7 +63,7 @@ pub fn surroundings(
     warnings.extend(data.iter().flat_map(|data| data.warnings.iter().cloned()));
     Ok(Surroundings {
         warnings: named(file, warnings),
-        field: temperature_field(&settings.field, data),
+        field: temperature_field(&settings.field, grid),
         origin: Some(Arc::from(origin)),
     })
 }
@@ -75,12 +76,17 @@ pub fn one_more(settings: &MediumSettings, file: &Path) -> Result<Surroundings, 
     if births_follow_the_field(&settings.origin) {
         return surroundings(settings, Some(file));
     }
-    let data = read_field(file)?;
+    let LoadedGrid { grid, first_slice } = read(settings, file)?;
     Ok(Surroundings {
-        warnings: named(Some(file), data.warnings.clone()),
-        field: temperature_field(&settings.field, Some(data)),
+        warnings: named(Some(file), first_slice.warnings),
+        field: temperature_field(&settings.field, Some(grid)),
         origin: None,
     })
+}
+
+fn read(settings: &MediumSettings, file: &Path) -> Result<LoadedGrid, FieldFileError> {
+    let field = &settings.field;
+    read_grid(file, field.end_temperature_gev, field.hold_before_start)
 }
 
 /// Where jets are born, as far as no field is needed for it.
@@ -149,29 +155,9 @@ fn first_slice(settings: &FieldSettings) -> TemperatureSlice {
     TemperatureSlice::tabulated(rim_fm, SLICE_POINTS, at)
 }
 
-fn temperature_field(
-    settings: &FieldSettings,
-    data: Option<FieldData>,
-) -> Arc<dyn TemperatureField> {
-    let hold = settings.hold_before_start;
-    let field: Arc<dyn TemperatureField> = match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Arc::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
-        FieldKind::Radial {
-            amplitude,
-            q_per_fm,
-            start_fm,
-        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
-        FieldKind::Grid { .. } => {
-            let data = data.expect("a grid's file was read before");
-            Arc::new(Grid::held(data, settings.end_temperature_gev, hold))
-        }
-    };
-    placed(field, settings.rotation_rad, settings.shift_fm)
+fn temperature_field(settings: &FieldSettings, grid: Option<Grid>) -> Arc<dyn TemperatureField> {
+    match grid {
+        Some(grid) => placed(Arc::new(grid), settings.rotation_rad, settings.shift_fm),
+        None => analytic(settings).expect("a grid's file was read before"),
+    }
 }

@@ -262,9 +262,11 @@ impl Leg {
                 times: times * evolution.envelope_factor,
             }),
             RateBound::LeastOf(..) | RateBound::GreatestOf(..) => {
+                let is_gluon = self.species.is_gluon();
+                let makes_pairs = is_gluon && effect.makes_quark_pairs() && evolution.makes_pairs;
                 let emitter = Emitter {
-                    is_gluon: self.species.is_gluon(),
-                    pair_flavours: if effect.makes_quark_pairs() && evolution.makes_pairs {
+                    is_gluon,
+                    pair_flavours: if makes_pairs {
                         evolution.rate.flavours.most()
                     } else {
                         0

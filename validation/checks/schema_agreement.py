@@ -51,6 +51,8 @@ def bases(files):
         {"kind": "broadening"},
         {"kind": "drag"},
         {"kind": "virtuality-diffusion"},
+        {"kind": "multiple-soft"},
+        {"kind": "single-hard"},
     ]
 
     def run(**sections):

@@ -101,7 +101,7 @@ pub static FIELD: Section = Section {
             INVERSE_SIZE,
             "q in the same formula, the inverse transverse size.",
         )
-        .unit("fm^-1")
+        .unit("1/fm")
         .when(RADIAL),
         Key::required("start_fm", TIME, "Proper time at which the medium starts.")
             .unit("fm")

@@ -82,7 +82,7 @@ mod tests {
             let endings = [
                 ("_GeV2_per_fm", "GeV^2/fm"),
                 ("_per_GeV2", "GeV^-2"),
-                ("_per_fm", "fm^-1"),
+                ("_per_fm", "1/fm"),
                 ("_GeV", "GeV"),
                 ("_fm", "fm"),
                 ("_rad", "rad"),

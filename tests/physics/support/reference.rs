@@ -112,8 +112,8 @@ fn string<'a>(value: &'a Value, key: &str) -> &'a str {
         .unwrap_or_else(|| panic!("no word {key} in {value}"))
 }
 
-/// An effect of the registry from the words of a table.
-pub fn effect(words: &Value, length_fm: f64) -> EffectSettings {
+/// An effect of the registry from the words of a table, in a brick of a length.
+fn effect(words: &Value, length_fm: f64) -> EffectSettings {
     let kind = string(words, "kind");
     let keys = model(kind).unwrap_or_else(|| panic!("no {kind}")).keys;
     let mut given = Vec::new();
@@ -130,11 +130,12 @@ pub fn effect(words: &Value, length_fm: f64) -> EffectSettings {
                 let choice = choices.iter().find(|choice| choice.name == word);
                 Setting::Word(choice.expect("a word of the key").name)
             }
-            // The table states the opacity of the whole brick.
-            _ if name == "opacity_per_fm" => {
-                Setting::Number(value.as_f64().expect("a number") / length_fm)
-            }
             _ => Setting::Number(value.as_f64().expect("a number")),
+        };
+        let setting = match (setting, name) {
+            // The table states the opacity of the whole brick.
+            (Setting::Number(opacity), "opacity_per_fm") => Setting::Number(opacity / length_fm),
+            (setting, _) => setting,
         };
         given.push((key.name, setting));
         // The table states the number alone, a config also the law that it belongs to.

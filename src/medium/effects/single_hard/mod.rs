@@ -84,7 +84,7 @@ pub static MODEL: Model = Model {
             Form::Number(Range::from(0.0, LARGEST_DENSITY_PER_FM)),
             "Scatterings of a gluon per length of its path.",
         )
-        .unit("fm^-1")
+        .unit("1/fm")
         .when(GIVEN),
         Key::required(
             "debye_mass_GeV",

@@ -13,13 +13,13 @@ import numpy as np
 from checks.event_file import jagged
 from checks.program import changed
 
-EVENTS = 10_000
+EVENTS = 20_000
 # One-sided normal quantile of 5e-7.
 LARGEST_PULL = 4.8916
 FINAL, BRANCHED, TAKEN = 1, 2, 4
 
 LADDERS = {
-    "longer path": ("medium__field__length_fm", (0.5, 1.0, 2.0, 4.0)),
+    "longer path": ("medium__field__length_fm", (1.0, 2.0, 4.0, 8.0)),
     "hotter field": ("medium__field__temperature_GeV", (0.2, 0.27, 0.36, 0.48)),
     "stronger transport": ("medium__transport__coefficient", (1.0, 2.0, 4.0, 8.0)),
 }
@@ -32,8 +32,9 @@ EFFECTS = {
     "drag": [{"kind": "drag"}],
     "broadening": [{"kind": "broadening"}],
 }
-# Stronger transport for an effect whose steps would be too small to see with so many events.
-COEFFICIENT_FACTORS = {"virtuality-diffusion": 6.0, "collinear-expansion": 4.0}
+# Stronger transport where steps would be too small to see with so many events; the spectra of scattering in a brick are
+# negative above half of omega_c, so that only a strong medium (omega_c of the order of E) makes more branchings at all.
+COEFFICIENT_FACTORS = {"virtuality-diffusion": 6.0, "collinear-expansion": 4.0, "single-hard": 6.0, "multiple-soft": 6.0}
 BASE = {
     "events": EVENTS,
     "seed": 21,
@@ -61,8 +62,8 @@ def observables(path, effect):
         return values | ({"transverse momentum squared": ak.sum(transverse, axis=1)} if effect == "broadening" else {})
     return {
         "branchings": ak.sum(partons.status == BRANCHED, axis=1),
-        # 1 - sum x^2: 0 for one parton, larger for softer spectra.
-        "softness": 1.0 - ak.sum(x * x, axis=1),
+        # sum x ln(1/x): 0 for one parton, larger for softer spectra.
+        "softness": ak.sum(-x * np.log(x), axis=1),
     }
 
 

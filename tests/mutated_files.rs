@@ -11,7 +11,7 @@ use common::field_maker::FieldMaker;
 use common::{FakeGenerator, provenance};
 use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64;
-use spindrift::files::event_file::{EventFileWriter, WriteOptions, audit};
+use spindrift::files::event_file::{EventFileWriter, Provenance, WriteOptions, audit};
 use spindrift::files::field_file::{read_field, read_grid};
 use spindrift::run::{Sink, run};
 
@@ -46,10 +46,17 @@ fn mutate(path: &Path, seed: u64, mut try_file: impl FnMut(&Path)) {
 fn event_files() {
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("events.h5");
-    let writer = EventFileWriter::create(&path, &provenance(60), WriteOptions::default()).unwrap();
+    let provenance = Provenance {
+        medium_exit: true,
+        ..provenance(60)
+    };
+    let writer = EventFileWriter::create(&path, &provenance, WriteOptions::default()).unwrap();
     let never = AtomicBool::new(false);
     run(
-        &FakeGenerator::default(),
+        &FakeGenerator {
+            exits: true,
+            ..FakeGenerator::default()
+        },
         0..60,
         1,
         Sink::File(Box::new(writer)),

@@ -74,7 +74,7 @@ def check_exits(tally, program):
         if not config.get("medium"):
             continue
         label = f"{path.stem}-exits"
-        plain = program.generate(f"{path.stem}-plain", config, SAMPLE_EVENTS)
+        plain = program.generate(f"{path.stem}-plain", changed(config, record__medium_exit=False), SAMPLE_EVENTS)
         out = program.generate(label, changed(config, record__medium_exit=True), SAMPLE_EVENTS)
         check_one_file(tally, label, out, program.work)
         tally.run(f"{label}: audit agrees", program.run, "audit", out)

@@ -179,7 +179,8 @@ impl Medium {
             end_temperature_gev: settings.field.end_temperature_gev,
             transport: Transport::new(&settings.transport),
             needs_whole_path: !paths.is_empty() || rates.is_empty() || rates.iter().any(whole),
-            needs_loss: paths.iter().any(|path| path.effect.needs_loss()),
+            needs_loss: paths.iter().any(|path| path.effect.needs_loss())
+                || rates.iter().any(|rate| rate.effect.needs_loss()),
             names,
             rates,
             paths,

@@ -114,7 +114,7 @@ impl Path {
     #[inline]
     pub fn qhat_gev2_per_fm(&self, l_fm: f64) -> f64 {
         let place = (l_fm - self.start_fm) / self.step_fm;
-        if !(place >= 0.0) {
+        if place < 0.0 {
             return 0.0;
         }
         let cell = place as usize;

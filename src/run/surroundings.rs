@@ -23,6 +23,8 @@ pub struct Surroundings {
     pub field: Arc<dyn TemperatureField>,
     /// Where jets are born, `None` where that does not depend on the field.
     pub origin: Option<Arc<dyn Origin>>,
+    /// What the user should hear.
+    pub warnings: Vec<String>,
 }
 
 /// Whether each field has places of birth of its own.
@@ -35,32 +37,32 @@ pub fn births_follow_the_field(origin: &OriginSettings) -> bool {
     }
 }
 
-/// Builds the field (that of `file` where it is a grid) with the places of birth, and adds what the user should hear.
+/// Builds the field (that of `file` where it is a grid) with the places of birth.
 ///
 /// # Errors
 /// [`AssembleError`] where a file cannot be used or the field has no places of birth.
 pub fn surroundings(
     settings: &MediumSettings,
     file: Option<&Path>,
-    warnings: &mut Vec<String>,
 ) -> Result<Surroundings, AssembleError> {
-    let (loaded, tabulated) = read(settings, file)?;
+    let loaded = file.map(|file| read(settings, file)).transpose()?;
     let (grid, data) = loaded
         .map(|loaded| (loaded.grid, loaded.first_slice))
         .unzip();
+    let tabulated = compared_with_births(settings).then(|| first_slice(&settings.field));
     let view = view(settings, data.as_ref(), tabulated.as_ref());
-    let origin = births(&settings.origin, &view, warnings).map_err(|problem| match file {
-        None => AssembleError::Births(problem),
-        Some(path) => AssembleError::BirthsIn {
+    let mut warnings = Vec::new();
+    let origin = births(&settings.origin, &view, &mut warnings);
+    let origin = origin.map_err(|problem| match file {
+        Some(path) if births_follow_the_field(&settings.origin) => AssembleError::BirthsIn {
             path: path.to_owned(),
             problem,
         },
+        _ => AssembleError::Births(problem),
     })?;
-    if let (Some(data), Some(path)) = (&data, file) {
-        let named = |words: &String| format!("{}: {words}", path.display());
-        warnings.extend(data.warnings.iter().map(named));
-    }
+    warnings.extend(data.iter().flat_map(|data| data.warnings.iter().cloned()));
     Ok(Surroundings {
+        warnings: named(file, warnings),
         field: temperature_field(&settings.field, grid),
         origin: Some(Arc::from(origin)),
     })
@@ -72,28 +74,50 @@ pub fn surroundings(
 /// As [`surroundings`].
 pub fn one_more(settings: &MediumSettings, file: &Path) -> Result<Surroundings, AssembleError> {
     if births_follow_the_field(&settings.origin) {
-        return surroundings(settings, Some(file), &mut Vec::new());
+        return surroundings(settings, Some(file));
     }
-    let (loaded, _) = read(settings, Some(file))?;
-    let grid = loaded.map(|loaded| loaded.grid);
+    let LoadedGrid { grid, first_slice } = read(settings, file)?;
     Ok(Surroundings {
-        field: temperature_field(&settings.field, grid),
+        warnings: named(Some(file), first_slice.warnings),
+        field: temperature_field(&settings.field, Some(grid)),
         origin: None,
     })
 }
 
-fn read(
-    settings: &MediumSettings,
-    file: Option<&Path>,
-) -> Result<(Option<LoadedGrid>, Option<TemperatureSlice>), FieldFileError> {
-    let (end, hold) = (
-        settings.field.end_temperature_gev,
-        settings.field.hold_before_start,
-    );
-    let loaded = file.map(|file| read_grid(file, end, hold)).transpose()?;
+fn read(settings: &MediumSettings, file: &Path) -> Result<LoadedGrid, FieldFileError> {
+    let field = &settings.field;
+    read_grid(file, field.end_temperature_gev, field.hold_before_start)
+}
+
+/// Where jets are born, as far as no field is needed for it.
+///
+/// # Errors
+/// [`AssembleError::Births`] where the settings or the list give no distribution.
+pub fn births_alone(settings: &MediumSettings) -> Result<Arc<dyn Origin>, AssembleError> {
+    let view = view(settings, None, None);
+    let origin = births(&settings.origin, &view, &mut Vec::new())?;
+    Ok(Arc::from(origin))
+}
+
+/// Warnings about a file, with its name.
+fn named(file: Option<&Path>, warnings: Vec<String>) -> Vec<String> {
+    match file {
+        None => warnings,
+        Some(path) => {
+            let named = |words: String| format!("{}: {words}", path.display());
+            warnings.into_iter().map(named).collect()
+        }
+    }
+}
+
+/// Whether an analytic field is looked at across the beam: it weights births, or its plane is compared with theirs.
+fn compared_with_births(settings: &MediumSettings) -> bool {
     let is_radial = matches!(settings.field.kind, FieldKind::Radial { .. });
-    let tabulated = is_radial.then(|| first_slice(&settings.field));
-    Ok((loaded, tabulated))
+    let is_looked_at = matches!(
+        settings.origin,
+        OriginSettings::FieldWeighted { .. } | OriginSettings::Overlap { .. }
+    );
+    is_radial && is_looked_at
 }
 
 fn view<'a>(

@@ -262,9 +262,11 @@ impl Leg {
                 times: times * evolution.envelope_factor,
             }),
             RateBound::LeastOf(..) | RateBound::GreatestOf(..) => {
+                let is_gluon = self.species.is_gluon();
+                let makes_pairs = is_gluon && effect.makes_quark_pairs() && evolution.makes_pairs;
                 let emitter = Emitter {
-                    is_gluon: self.species.is_gluon(),
-                    pair_flavours: if effect.makes_quark_pairs() && evolution.makes_pairs {
+                    is_gluon,
+                    pair_flavours: if makes_pairs {
                         evolution.rate.flavours.most()
                     } else {
                         0
@@ -493,19 +495,18 @@ impl Leg {
         let passage = self.passage(tools, medium);
         let splitting = splitting_of(trial, 0.0);
         let mut left = self.ordered_share(medium, &passage, trial);
-        let emits = trial.splitting != Kind::GluonToQuarks
-            && medium.allows_angle(trial.t, trial.z, self.energy_gev);
-        for rate in medium.rates() {
-            let effect = &rate.effect;
-            if effect.thins_the_vacuum() {
-                left *= effect.vacuum_factor(&passage, &splitting);
-            }
+        let makes_pair = trial.splitting == Kind::GluonToQuarks;
+        let at_small_angle = medium.allows_angle(trial.t, trial.z, self.energy_gev);
+        let thinning = || {
+            let rates = medium.rates().iter().map(|rate| &rate.effect);
+            rates.filter(|effect| effect.thins_the_vacuum())
+        };
+        for effect in thinning() {
+            left *= effect.vacuum_factor(&passage, &splitting);
         }
-        if emits {
-            for rate in medium.rates() {
-                if rate.effect.thins_the_vacuum() {
-                    left += rate.effect.negative_change(&passage, &splitting);
-                }
+        for effect in thinning() {
+            if at_small_angle && (!makes_pair || effect.makes_quark_pairs()) {
+                left += effect.negative_change(&passage, &splitting);
             }
         }
         left

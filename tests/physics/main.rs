@@ -4,6 +4,7 @@
 //! how many checks it makes. All thresholds come from one significance a check, `support::statistics::SIGNIFICANCE`
 //! = 10^-6; with fewer than 1000 checks the false-alarm rate of all of them together stays below 10^-3. Seeds are fixed.
 
+mod angular;
 mod collinear;
 mod conservation;
 mod exits;
@@ -16,6 +17,7 @@ mod medium_sign;
 mod no_branching;
 mod origins;
 mod parton_numbers;
+mod path_effects;
 mod paths;
 mod rate_effects;
 mod support;

@@ -13,25 +13,21 @@
 //! (5.5). Checks: 26 for primaries, 3 for whole events, 2 for pairs.
 //! Smallest visible bias: 0.01 to 0.5 % of <w> of a primary, 0.3 % of <w> of an event, 2 % of <w> of a pair.
 
-use std::sync::Arc;
-
+use spindrift::medium::MediumSettings;
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
-use spindrift::medium::field::{Brick, Ray};
-use spindrift::medium::{Medium, MediumSettings};
-use spindrift::qcd::{Coupling, Species};
-use spindrift::random::{Key, Purpose};
+use spindrift::medium::field::Ray;
+use spindrift::qcd::Species;
+use spindrift::random::Key;
 use spindrift::shower::ShowerSettings;
 use spindrift::shower::counters::ShowerCounters;
 use spindrift::shower::kinematics::relative_transverse_gev2;
 use spindrift::shower::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
-use spindrift::shower::proposal::FractionRange;
-use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::tree::Tools;
 
 use super::support::first_branching::weighted_pulls;
 use super::support::reference::{self, number};
-use super::support::setup::{ALPHA_S, Setup, brick, fixed, shower_settings, up};
+use super::support::setup::{ALPHA_S, Setup, brick, fixed, up};
 use super::support::statistics::{LARGEST_PULL, Mean, pull_between};
 
 const EVENTS: u64 = 600_000;
@@ -132,33 +128,14 @@ struct Pair {
 }
 
 fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> Pair {
-    let mut settings = shower_settings();
-    settings.envelope_factor = envelope_factor;
-    let coupling = fixed(alpha_s);
-    let rate = VacuumRate {
-        coupling: Coupling::new(&coupling).expect("a fixed coupling"),
-        range: FractionRange {
-            end_t_gev2: settings.virtuality_cutoff_gev,
-            kind: settings.z_range,
-        },
-        flavours: FlavourRule::new(&settings, coupling.quark_masses_gev),
-    };
     // Energetic enough for the density to be negative up to the virtualities that the constraint discards.
-    let (t, z, energy_gev) = (200.0, 0.4, 500.0);
-    let stairs = [false, true].map(|gluon| Staircase::new(&rate, &settings, gluon, t));
-    let medium = medium.map(|medium| Medium::new(&medium, Arc::new(Brick::new(0.3, 2.0))));
+    let (t, z, energy_gev) = (200.0_f64, 0.4, 500.0);
+    let mut setup = Setup::single(up(), energy_gev, t.sqrt()).with_coupling(fixed(alpha_s));
+    setup.shower.envelope_factor = envelope_factor;
+    setup.medium = medium;
     Pair {
-        evolution: Evolution {
-            rate,
-            stairs,
-            medium,
-            emits: [true, true],
-            makes_pairs: true,
-            path_purposes: Vec::new(),
-            effect_purposes: vec![Purpose::named("collinear-expansion")],
-            envelope_factor,
-        },
-        settings,
+        evolution: setup.evolution(),
+        settings: setup.shower,
         t,
         z,
         energies_gev: [z * energy_gev, (1.0 - z) * energy_gev],

@@ -9,13 +9,11 @@
 //! equation; walking the tree with the engine's legs alone must give it. 2 checks; smallest visible bias 0.5 %.
 
 use spindrift::event::Status;
-use spindrift::qcd::{Coupling, CouplingSettings, Loops, ScaleArgument, Species};
+use spindrift::qcd::{CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::Key;
 use spindrift::shower::FlavourOpening;
 use spindrift::shower::counters::ShowerCounters;
-use spindrift::shower::leg::{AngularOrder, Evolution, Leg, Tally};
-use spindrift::shower::proposal::FractionRange;
-use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
+use spindrift::shower::leg::{AngularOrder, Leg, Tally};
 use spindrift::shower::tree::Tools;
 
 use super::support::setup::{ALPHA_S, Setup, fixed, running, up};
@@ -58,26 +56,8 @@ fn with_the_joint_constraint() {
 
 fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64) -> Mean {
     let setup = setup(parton, fixed(ALPHA_S));
-    let rate = VacuumRate {
-        coupling: Coupling::new(&setup.coupling).expect("a fixed coupling"),
-        range: FractionRange {
-            end_t_gev2: 1.0,
-            kind: setup.shower.z_range,
-        },
-        flavours: FlavourRule::new(&setup.shower, setup.coupling.quark_masses_gev),
-    };
+    let evolution = setup.evolution();
     let largest = 1e4;
-    let stairs = [false, true].map(|gluon| Staircase::new(&rate, &setup.shower, gluon, largest));
-    let evolution = Evolution {
-        rate,
-        stairs,
-        medium: None,
-        emits: [true, true],
-        makes_pairs: true,
-        effect_purposes: Vec::new(),
-        path_purposes: Vec::new(),
-        envelope_factor: 1.0,
-    };
     let tools = Tools {
         field: None,
         evolution: &evolution,

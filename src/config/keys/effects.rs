@@ -5,15 +5,6 @@ use std::sync::LazyLock;
 use super::{Choice, Form, Key, Section, When};
 use crate::medium::effects::{MODELS, Model};
 
-/// Effects that a later version will know.
-const PLANNED_EFFECTS: &[Choice] = &[
-    Choice::planned("multiple-soft", "induced emission by many soft scatterings"),
-    Choice::planned(
-        "single-hard",
-        "induced emission by a single hard scattering",
-    ),
-];
-
 /// The section of an effect: made once, and kept.
 pub fn effect() -> &'static Section {
     static EFFECT: LazyLock<Section> = LazyLock::new(|| Section {
@@ -24,13 +15,9 @@ pub fn effect() -> &'static Section {
 }
 
 fn effect_keys(models: &[&'static Model]) -> Vec<Key> {
-    let planned = PLANNED_EFFECTS
-        .iter()
-        .filter(|planned| models.iter().all(|model| model.kind != planned.name));
     let choices = models
         .iter()
-        .map(|model| Choice::built(model.kind, model.about))
-        .chain(planned.copied());
+        .map(|model| Choice::built(model.kind, model.about));
     let choices: Vec<Choice> = choices.collect();
     let kind = Form::Choice(choices.leak());
     let mut keys = vec![Key::required("kind", kind, "Which model.")];

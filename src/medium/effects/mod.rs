@@ -7,10 +7,15 @@ pub mod bound;
 pub mod broadening;
 pub mod collinear_expansion;
 pub mod drag;
+pub mod emission_plane;
 pub mod model;
+pub mod multiple_soft;
 pub mod path_effect;
 pub mod rate_effect;
 pub mod resolved_only;
+pub mod scaled_emission;
+pub mod scaled_table;
+pub mod single_hard;
 pub mod singular_enhancement;
 pub mod virtuality_diffusion;
 
@@ -22,6 +27,8 @@ pub use rate_effect::{Passage, RateEffect, Splitting};
 /// Every effect that a config may name.
 pub static MODELS: &[&Model] = &[
     &collinear_expansion::MODEL,
+    &multiple_soft::MODEL,
+    &single_hard::MODEL,
     &singular_enhancement::MODEL,
     &resolved_only::MODEL,
     &broadening::MODEL,

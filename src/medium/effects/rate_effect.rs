@@ -72,6 +72,11 @@ pub trait RateEffect: Send + Sync {
         true
     }
 
+    /// Whether it needs the energy loss along the path.
+    fn needs_loss(&self) -> bool {
+        false
+    }
+
     /// A place along the path for a trial at t, fm from birth.
     fn propose_place_fm(&self, _passage: &Passage, _t_gev2: f64, _stream: &mut Stream) -> f64 {
         0.0

@@ -59,7 +59,13 @@ impl Sample {
 
     /// Each statistic over its limit, all below 1 if the sample follows the case: no branching, share of each kind from
     /// the medium's channels (where the table has one), t, z of each kind.
-    pub fn over_limits(mut self, case: &Value) -> Vec<f64> {
+    pub fn over_limits(self, case: &Value) -> Vec<f64> {
+        self.over_limits_with_surplus(case, 0.0)
+    }
+
+    /// The same where the medium's channels may make more than the table's share, and thin the vacuum's as much: up to
+    /// `surplus` of it.
+    pub fn over_limits_with_surplus(mut self, case: &Value, surplus: f64) -> Vec<f64> {
         let events = self.events;
         let tail = |count, p| binomial_p_value(count, events, p).ln() / SIGNIFICANCE.ln();
         let unbranched = number(case, "no_branching_probability");
@@ -67,7 +73,9 @@ impl Sample {
         for (kind, count) in kinds(case).iter().zip(self.induced) {
             let expected = number(&case["z"][*kind], "induced");
             if expected > 0.0 {
-                found.push(tail(count, expected));
+                let share = count as f64 / events as f64;
+                let nearest = share.clamp(expected, expected * (1.0 + surplus));
+                found.push(tail(count, nearest));
             } else {
                 assert_eq!(count, 0, "nothing induced is expected");
             }

@@ -4,3 +4,4 @@ pub mod first_branching;
 pub mod reference;
 pub mod setup;
 pub mod statistics;
+pub mod ways;

@@ -80,7 +80,7 @@ pub fn setup(case: &Value) -> Setup {
     let qhat = number(medium, "gluon_qhat_GeV2_per_fm");
     let effects = match medium["effects"].as_array() {
         None => vec![phase(&medium["effect"]).into()],
-        Some(list) => list.iter().map(effect).collect(),
+        Some(list) => list.iter().map(|words| effect(words, length)).collect(),
     };
     let mut brick = setup::brick_with(length, qhat, effects);
     brick.limit_to_small_angles = medium["limit_to_small_angles"] == true;
@@ -112,8 +112,8 @@ fn string<'a>(value: &'a Value, key: &str) -> &'a str {
         .unwrap_or_else(|| panic!("no word {key} in {value}"))
 }
 
-/// An effect of the registry from the words of a table.
-pub fn effect(words: &Value) -> EffectSettings {
+/// An effect of the registry from the words of a table, in a brick of a length.
+fn effect(words: &Value, length_fm: f64) -> EffectSettings {
     let kind = string(words, "kind");
     let keys = model(kind).unwrap_or_else(|| panic!("no {kind}")).keys;
     let mut given = Vec::new();
@@ -132,6 +132,11 @@ pub fn effect(words: &Value) -> EffectSettings {
             }
             _ => Setting::Number(value.as_f64().expect("a number")),
         };
+        let setting = match (setting, name) {
+            // The table states the opacity of the whole brick.
+            (Setting::Number(opacity), "opacity_per_fm") => Setting::Number(opacity / length_fm),
+            (setting, _) => setting,
+        };
         given.push((key.name, setting));
         // The table states the number alone, a config also the law that it belongs to.
         for condition in key.when {
@@ -145,6 +150,8 @@ pub fn effect(words: &Value) -> EffectSettings {
 fn parameter<'a>(kind: &str, name: &'a str) -> &'a str {
     match (kind, name) {
         ("singular-enhancement", "enhancement") => "factor",
+        ("single-hard", "gluon_opacity") => "opacity_per_fm",
+        ("single-hard", "mu_GeV") => "debye_mass_GeV",
         _ => name,
     }
 }

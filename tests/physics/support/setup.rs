@@ -14,11 +14,13 @@ use spindrift::medium::{
     TransportSettings,
 };
 use spindrift::parameters::Setting;
-use spindrift::qcd::{CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
+use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
 use spindrift::run::generator::Generator;
-use spindrift::shower::leg::Branching;
+use spindrift::shower::leg::{Branching, Evolution};
+use spindrift::shower::proposal::FractionRange;
+use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::{
     FlavourOpening, Kernels, Lifetime, Ordering, Shower, ShowerSettings, ZRange,
 };
@@ -167,10 +169,7 @@ impl Setup {
 
     pub fn generator(&self) -> Generator {
         let source = build(&self.source);
-        let medium = self
-            .medium
-            .as_ref()
-            .map(|settings| Medium::new(settings, analytic_field(&settings.field.kind)));
+        let medium = self.medium();
         let largest = source.largest_virtuality_gev();
         let shower = Shower::new(&self.shower, &self.coupling, medium, largest)
             .expect("the coupling of a test stays below 1");
@@ -183,6 +182,44 @@ impl Setup {
             full_history: self.full_history,
             exits: None,
         }
+    }
+
+    /// What the legs of this set-up share, for tests that drive them by hand.
+    pub fn evolution(&self) -> Evolution {
+        let coupling = &self.coupling;
+        let rate = VacuumRate {
+            coupling: Coupling::new(coupling).expect("the coupling of a test stays below 1"),
+            range: FractionRange {
+                end_t_gev2: self.shower.virtuality_cutoff_gev.powi(2),
+                kind: self.shower.z_range,
+            },
+            flavours: FlavourRule::new(&self.shower, coupling.quark_masses_gev),
+        };
+        let largest_t = build(&self.source).largest_virtuality_gev().powi(2);
+        let stairs =
+            [false, true].map(|gluon| Staircase::new(&rate, &self.shower, gluon, largest_t));
+        let medium = self.medium();
+        let purposes = |medium: &Medium| {
+            let rates = medium.rates().iter();
+            rates
+                .map(|rate| Purpose::named(rate.effect.name()))
+                .collect()
+        };
+        Evolution {
+            rate,
+            stairs,
+            emits: [self.shower.kernels.q_qg, self.shower.kernels.g_gg],
+            makes_pairs: self.shower.kernels.g_qq,
+            effect_purposes: medium.as_ref().map_or(Vec::new(), purposes),
+            path_purposes: Vec::new(),
+            medium,
+            envelope_factor: self.shower.envelope_factor,
+        }
+    }
+
+    fn medium(&self) -> Option<Medium> {
+        let settings = self.medium.as_ref()?;
+        Some(Medium::new(settings, analytic_field(&settings.field.kind)))
     }
 
     /// Calls `visit` with the first branching of the first hard parton and the weight, for `events` events.

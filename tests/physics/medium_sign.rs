@@ -135,14 +135,13 @@ fn pair(alpha_s: f64, envelope_factor: f64, medium: Option<MediumSettings>) -> P
     let mut settings = shower_settings();
     settings.envelope_factor = envelope_factor;
     let coupling = fixed(alpha_s);
-    let rate = VacuumRate {
-        coupling: Coupling::new(&coupling).expect("a fixed coupling"),
-        range: FractionRange {
-            end_t_gev2: settings.virtuality_cutoff_gev,
-            kind: settings.z_range,
-        },
-        flavours: FlavourRule::new(&settings, coupling.quark_masses_gev),
+    let range = FractionRange {
+        end_t_gev2: settings.virtuality_cutoff_gev,
+        kind: settings.z_range,
     };
+    let flavours = FlavourRule::new(&settings, coupling.quark_masses_gev);
+    let coupling = Coupling::new(&coupling).expect("a fixed coupling");
+    let rate = VacuumRate::new(coupling, range, flavours);
     // Energetic enough for the density to be negative up to the virtualities that the constraint discards.
     let (t, z, energy_gev) = (200.0, 0.4, 500.0);
     let stairs = [false, true].map(|gluon| Staircase::new(&rate, &settings, gluon, t));
@@ -200,7 +199,7 @@ impl Pair {
                 key,
                 largest_t_gev2: largest_t,
                 energy_gev: self.energies_gev[place],
-                ray: &ray,
+                ray,
             };
             leg.enter_medium(self.tools(), &entrance, tally);
         }

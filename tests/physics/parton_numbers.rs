@@ -58,14 +58,13 @@ fn with_the_joint_constraint() {
 
 fn unconstrained(parton: Species, start_shares: fn(f64) -> [f64; 2], events: u64) -> Mean {
     let setup = setup(parton, fixed(ALPHA_S));
-    let rate = VacuumRate {
-        coupling: Coupling::new(&setup.coupling).expect("a fixed coupling"),
-        range: FractionRange {
-            end_t_gev2: 1.0,
-            kind: setup.shower.z_range,
-        },
-        flavours: FlavourRule::new(&setup.shower, setup.coupling.quark_masses_gev),
+    let coupling = Coupling::new(&setup.coupling).expect("a fixed coupling");
+    let range = FractionRange {
+        end_t_gev2: 1.0,
+        kind: setup.shower.z_range,
     };
+    let flavours = FlavourRule::new(&setup.shower, setup.coupling.quark_masses_gev);
+    let rate = VacuumRate::new(coupling, range, flavours);
     let largest = 1e4;
     let stairs = [false, true].map(|gluon| Staircase::new(&rate, &setup.shower, gluon, largest));
     let evolution = Evolution {

@@ -214,7 +214,7 @@ impl RunSummary {
             .filter(|channel| channel.overshoots > 0)
         {
             warnings.push(format!(
-                "channel {}: {} of {} trials had a density below zero or above its envelope; the event weights carry it and stay exact in the mean (below zero is what soft-gradient does; above the envelope deserves a report)",
+                "channel {}: {} of {} trials had a density below zero or above its envelope; the event weights carry it and stay exact in the mean (below zero is what effects do that thin the vacuum by more than there is; above the envelope deserves a report)",
                 channel.name, channel.overshoots, channel.trials
             ));
         }

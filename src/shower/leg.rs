@@ -789,6 +789,7 @@ impl Leg {
             species: self.species,
             path: &self.trace.path,
             loss: &self.trace.loss,
+            spread: &self.trace.spread,
             length_fm,
             is_final,
             min_energy_gev: medium.min_energy_gev(),

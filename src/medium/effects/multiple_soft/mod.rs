@@ -38,7 +38,11 @@ pub static MODEL: Model = Model {
     kind: "multiple-soft",
     about: "induced emission by many soft scatterings",
     keys: &[],
-    describes: &[Physics::InducedEmission, Physics::Broadening],
+    describes: &[
+        Physics::InducedEmission,
+        Physics::UnresolvedEmission,
+        Physics::Broadening,
+    ],
     regime: "soft gluons (below .3 of the energy) below omega_c = qhat L^2/2",
     build,
 };

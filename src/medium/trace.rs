@@ -121,7 +121,7 @@ impl Medium {
             stretch.first_fm,
             (stretch.last_fm - stretch.first_fm) / segments,
         );
-        for ceiling in &trace.ceilings {
+        trace.path.extend(trace.ceilings.iter().map(|ceiling| {
             let mean = if ceiling.temperature_gev < self.end_temperature_gev {
                 0.0
             } else {
@@ -135,8 +135,8 @@ impl Medium {
                     at_rest
                 }
             };
-            trace.path.push(Cell { mean, slope: 0.0 });
-        }
+            Cell { mean, slope: 0.0 }
+        }));
         trace.path.finish();
     }
 

@@ -11,7 +11,7 @@ use std::f64::consts::TAU;
 use super::accept::judge;
 use super::counters::{CUT_UNIT, ShowerCounters};
 use super::proposal::Trial;
-use super::proposal::induced::{Emitter, InducedEnvelope};
+use super::proposal::induced::{Emitter, InducedEnvelope, Proposed, draw_budget};
 use super::proposal::staircase::{Height, Staircase, VacuumRate};
 use super::tree::Tools;
 use crate::medium::Medium;
@@ -104,14 +104,34 @@ struct Channel {
     rate: usize,
     stream: Stream,
     envelope: Envelope,
-    pending: Option<InducedTrial>,
-    /// The pending trial became a branching at this t: the next one is due should the evolution resume.
-    due_below_gev2: Option<f64>,
+    pending: Option<Pending>,
+    /// The pending trial became a branching: the next one is due should the evolution resume.
+    due: bool,
+}
+
+/// What a channel offers next.
+#[derive(Clone, Copy)]
+enum Pending {
+    /// A trial at this t, whose rest is not drawn before its turn.
+    At(f64),
+    Drawn(InducedTrial),
+}
+
+impl Pending {
+    #[inline]
+    fn t_gev2(&self) -> f64 {
+        match self {
+            Pending::At(t_gev2) => *t_gev2,
+            Pending::Drawn(drawn) => drawn.trial.t,
+        }
+    }
 }
 
 #[derive(Clone, Copy)]
 struct InducedTrial {
     trial: Trial,
+    /// The vacuum density over the envelope's.
+    density_ratio: f64,
     place_fm: f64,
     emits_first: bool,
 }
@@ -136,7 +156,7 @@ impl AngularOrder {
 
 /// How a parton meets the medium.
 #[derive(Clone, Copy, Debug)]
-pub struct Entrance<'a> {
+pub struct Entrance {
     /// Its key.
     pub key: Key,
     /// Where its evolution starts, GeV^2.
@@ -144,7 +164,7 @@ pub struct Entrance<'a> {
     /// Its lab energy, GeV.
     pub energy_gev: f64,
     /// Its path.
-    pub ray: &'a Ray,
+    pub ray: Ray,
 }
 
 impl Leg {
@@ -197,12 +217,8 @@ impl Leg {
             tally.counters.legs_below_min_energy += 1;
             return;
         }
-        let outcome = medium.trace(
-            tools.field(medium),
-            entrance.ray,
-            entrance.energy_gev,
-            &mut self.trace,
-        );
+        let (field, ray) = (tools.field(medium), &entrance.ray);
+        let outcome = medium.trace(field, ray, entrance.energy_gev, &mut self.trace);
         let Outcome::Medium { left_hot } = outcome else {
             return;
         };
@@ -211,8 +227,12 @@ impl Leg {
         self.in_medium = true;
         self.energy_gev = entrance.energy_gev;
         if self.height.is_some() {
-            self.open_channels(tools, medium, entrance);
+            self.open_channels(tools, medium, entrance, tally);
             self.vacuum_due = true;
+            // Whom the medium neither offers a trial nor sees again goes on in vacuum.
+            self.in_medium = medium.thins_the_vacuum()
+                || !medium.paths().is_empty()
+                || self.induced.iter().any(|channel| channel.pending.is_some());
         } else {
             self.induced.clear();
             self.pending = None;
@@ -220,7 +240,14 @@ impl Leg {
         }
     }
 
-    fn open_channels(&mut self, tools: Tools, medium: &Medium, entrance: &Entrance) {
+    /// Opens the channels of the effects on rates, each with its first trial.
+    fn open_channels(
+        &mut self,
+        tools: Tools,
+        medium: &Medium,
+        entrance: &Entrance,
+        tally: &mut Tally,
+    ) {
         self.induced.clear();
         if !tools.evolution.emits[self.species.is_gluon() as usize] {
             return;
@@ -236,12 +263,14 @@ impl Leg {
                     stream,
                     envelope,
                     pending: None,
-                    due_below_gev2: Some(entrance.largest_t_gev2),
+                    due: false,
                 });
+                self.propose(tools, medium, self.induced.len() - 1, tally);
             }
         }
     }
 
+    #[inline(always)]
     fn envelope(
         &self,
         tools: Tools,
@@ -293,7 +322,7 @@ impl Leg {
     ) {
         let evolution = tools.evolution;
         let range = &evolution.rate.range;
-        let largest_alpha_s = evolution.rate.largest_alpha_s();
+        let largest_alpha_s = evolution.rate.largest_alpha_s;
         let smallest = range.smallest(entrance.largest_t_gev2);
         let limits = EmissionLimits {
             fractions: [smallest, 1.0 - smallest],
@@ -346,6 +375,7 @@ impl Leg {
                 };
                 list.push(InducedTrial {
                     trial,
+                    density_ratio: evolution.rate.density(&trial) * trial.inverse_envelope,
                     place_fm: 0.0,
                     emits_first,
                 });
@@ -356,43 +386,84 @@ impl Leg {
         self.emissions = emissions;
     }
 
-    /// The next trial of an induced channel below `t_gev2`.
-    fn propose(
+    /// The next trial of an induced channel below its last one.
+    fn propose(&mut self, tools: Tools, medium: &Medium, place: usize, tally: &mut Tally) {
+        let evolution = tools.evolution;
+        let channel = &mut self.induced[place];
+        let number = medium.rates()[channel.rate].place + 1;
+        let trials = &mut tally.counters.channels[number].trials;
+        let stairs = &evolution.stairs[self.species.is_gluon() as usize];
+        let (trial, times) = match &mut channel.envelope {
+            Envelope::List { next } => {
+                let listed = self.lists[channel.rate].get(*next).copied();
+                *next += 1;
+                *trials += 1;
+                channel.pending = listed.map(Pending::Drawn);
+                return;
+            }
+            Envelope::Induced(envelope) => {
+                *trials += 1;
+                let t_gev2 = envelope.descend(draw_budget(&mut channel.stream));
+                channel.pending = (t_gev2 > 0.0).then_some(Pending::At(t_gev2));
+                return;
+            }
+            Envelope::Vacuum { height, times } => {
+                let trial = stairs.propose_times(*times, height, &mut channel.stream, trials);
+                (trial, *times)
+            }
+        };
+        let proposed = trial.map(|trial| Proposed {
+            trial,
+            density_ratio: evolution.rate.density(&trial) * trial.inverse_envelope / times,
+        });
+        self.place(tools, medium, place, proposed);
+    }
+
+    /// Draws the rest of a pending trial, or of the next one that may be accepted, as long as it lies above
+    /// `floor_t_gev2`.
+    fn draw(
         &mut self,
         tools: Tools,
         medium: &Medium,
         place: usize,
-        t_gev2: f64,
+        floor_t_gev2: f64,
         tally: &mut Tally,
     ) {
-        let number = medium.rates()[self.induced[place].rate].place + 1;
-        let trials = &mut tally.counters.channels[number].trials;
         let channel = &mut self.induced[place];
-        let stairs = &tools.evolution.stairs[self.species.is_gluon() as usize];
-        let trial = match &mut channel.envelope {
-            Envelope::List { next } => {
-                let pending = self.lists[channel.rate].get(*next).copied();
-                *next += 1;
-                *trials += 1;
-                channel.pending = pending;
-                return;
-            }
-            Envelope::Induced(envelope) => envelope.propose(t_gev2, &mut channel.stream, trials),
-            Envelope::Vacuum { height, times } => {
-                stairs.propose_times(*times, height, &mut channel.stream, trials)
-            }
+        let number = medium.rates()[channel.rate].place + 1;
+        let trials = &mut tally.counters.channels[number].trials;
+        let Envelope::Induced(envelope) = &mut channel.envelope else {
+            return;
         };
-        self.induced[place].pending = trial.map(|trial| {
+        let (rate, stream, before) = (&tools.evolution.rate, &mut channel.stream, *trials);
+        let proposed = envelope.propose(rate, floor_t_gev2, stream, trials);
+        let t_gev2 = envelope.t_gev2();
+        tally.trials_left = tally.trials_left.saturating_sub((*trials - before) as u32);
+        if proposed.is_some() {
+            self.place(tools, medium, place, proposed);
+        } else {
+            channel.pending = (t_gev2 > 0.0).then_some(Pending::At(t_gev2));
+        }
+    }
+
+    /// Draws the place of a trial, which is then pending.
+    fn place(&mut self, tools: Tools, medium: &Medium, place: usize, proposed: Option<Proposed>) {
+        self.induced[place].pending = proposed.map(|proposed| {
+            let Proposed {
+                trial,
+                density_ratio,
+            } = proposed;
             let mut stream = self.induced[place].stream.clone();
             let effect = &medium.rates()[self.induced[place].rate].effect;
             let place_fm =
                 effect.propose_place_fm(&self.passage(tools, medium), trial.t, &mut stream);
             self.induced[place].stream = stream;
-            InducedTrial {
+            Pending::Drawn(InducedTrial {
                 trial,
+                density_ratio,
                 place_fm,
                 emits_first: false,
-            }
+            })
         });
     }
 
@@ -432,11 +503,19 @@ impl Leg {
             if t <= 0.0 || tally.trials_left == 0 {
                 return None;
             }
-            tally.trials_left -= 1;
             let branching = match leader {
                 None => self.judge_vacuum(tools, medium, tally),
-                Some(place) => self.judge_induced(tools, medium, place, tally),
+                Some(place) => match self.induced[place].pending.take() {
+                    Some(Pending::Drawn(drawn)) => {
+                        self.judge_induced(tools, medium, place, drawn, tally)
+                    }
+                    _ => {
+                        self.draw(tools, medium, place, vacuum_t, tally);
+                        continue;
+                    }
+                },
             };
+            tally.trials_left -= 1;
             if branching.is_some() {
                 return branching;
             }
@@ -449,8 +528,8 @@ impl Leg {
             self.pending = self.next_vacuum(tools.evolution, tally);
         }
         for place in 0..self.induced.len() {
-            if let Some(t_gev2) = self.induced[place].due_below_gev2.take() {
-                self.propose(tools, medium, place, t_gev2, tally);
+            if std::mem::take(&mut self.induced[place].due) {
+                self.propose(tools, medium, place, tally);
             }
         }
     }
@@ -459,10 +538,9 @@ impl Leg {
     fn leader(&self, vacuum_t: f64) -> (Option<usize>, f64) {
         let mut best = (None, vacuum_t);
         for (place, channel) in self.induced.iter().enumerate() {
-            if let Some(InducedTrial { trial, .. }) =
-                channel.pending.filter(|pending| pending.trial.t > best.1)
-            {
-                best = (Some(place), trial.t);
+            let t_gev2 = channel.pending.map_or(0.0, |pending| pending.t_gev2());
+            if t_gev2 > best.1 {
+                best = (Some(place), t_gev2);
             }
         }
         best
@@ -482,7 +560,9 @@ impl Leg {
         let branching =
             verdict(ratio, &trial, VACUUM, tally).then(|| self.vacuum_branching(evolution, &trial));
         if branching.is_some() {
-            self.count_regime(tools, medium, None, &splitting_of(&trial, 0.0), tally);
+            if medium.thins_the_vacuum() {
+                self.count_regime(tools, medium, None, &splitting_of(&trial, 0.0), tally);
+            }
             self.vacuum_due = true;
         } else {
             self.pending = self.next_vacuum(evolution, tally);
@@ -492,6 +572,9 @@ impl Leg {
 
     /// What the medium and the order in angle leave of the vacuum density: factors times, and negative changes added.
     fn left_of_vacuum(&self, tools: Tools, medium: &Medium, trial: &Trial) -> f64 {
+        if !medium.thins_the_vacuum() {
+            return f64::from(trial.t < self.order.most_gev2 * trial.z * (1.0 - trial.z));
+        }
         let passage = self.passage(tools, medium);
         let splitting = splitting_of(trial, 0.0);
         let mut left = self.ordered_share(medium, &passage, trial);
@@ -530,16 +613,15 @@ impl Leg {
         tools: Tools,
         medium: &Medium,
         place: usize,
+        drawn: InducedTrial,
         tally: &mut Tally,
     ) -> Option<Branching> {
         let InducedTrial {
             trial,
+            density_ratio,
             place_fm,
             emits_first,
-        } = self.induced[place]
-            .pending
-            .take()
-            .expect("the leader has a pending trial");
+        } = drawn;
         let rate = &medium.rates()[self.induced[place].rate];
         let number = rate.place + 1;
         let splitting = Splitting {
@@ -555,7 +637,7 @@ impl Leg {
             0.0
         };
         let evolution = tools.evolution;
-        let mut ratio = self.density_over_envelope(evolution, place, &trial) * change;
+        let mut ratio = density_ratio * change;
         if !medium.allows_angle(trial.t, trial.z, self.energy_gev) {
             // What would have been accepted without the limit; other envelopes keep to small angles by themselves.
             if let Envelope::Vacuum { .. } = self.induced[place].envelope {
@@ -580,19 +662,11 @@ impl Leg {
             place_fm,
         });
         if accepted {
-            self.induced[place].due_below_gev2 = Some(trial.t);
+            self.induced[place].due = true;
         } else {
-            self.propose(tools, medium, place, trial.t, tally);
+            self.propose(tools, medium, place, tally);
         }
         branching
-    }
-
-    fn density_over_envelope(&self, evolution: &Evolution, place: usize, trial: &Trial) -> f64 {
-        let ratio = evolution.rate.density(trial) * trial.inverse_envelope;
-        match self.induced[place].envelope {
-            Envelope::Induced(_) | Envelope::List { .. } => ratio,
-            Envelope::Vacuum { times, .. } => ratio / times,
-        }
     }
 
     fn induced_daughters(

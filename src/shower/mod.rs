@@ -118,14 +118,12 @@ impl Shower {
         largest_virtuality_gev: f64,
     ) -> Result<Shower, CouplingError> {
         let end_t_gev2 = settings.virtuality_cutoff_gev * settings.virtuality_cutoff_gev;
-        let rate = VacuumRate {
-            coupling: Coupling::new(coupling)?,
-            range: FractionRange {
-                end_t_gev2,
-                kind: settings.z_range,
-            },
-            flavours: FlavourRule::new(settings, coupling.quark_masses_gev),
+        let range = FractionRange {
+            end_t_gev2,
+            kind: settings.z_range,
         };
+        let flavours = FlavourRule::new(settings, coupling.quark_masses_gev);
+        let rate = VacuumRate::new(Coupling::new(coupling)?, range, flavours);
         let largest_t = largest_virtuality_gev * largest_virtuality_gev;
         let stairs =
             [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));

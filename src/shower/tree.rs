@@ -224,7 +224,7 @@ impl Walker {
                 key,
                 largest_t_gev2: largest_t,
                 energy_gev: parton.energy_gev,
-                ray: &Ray {
+                ray: Ray {
                     birth_fm: origin_fm,
                     direction: parton.direction,
                 },
@@ -359,7 +359,7 @@ impl Walker {
                 key: keys[daughter],
                 largest_t_gev2: largest_t[daughter],
                 energy_gev: momentum[3],
-                ray: &ray,
+                ray,
             };
             self.legs[daughter].enter_medium(tools, &entrance, &mut self.tally);
         }

@@ -177,7 +177,7 @@ impl Pair {
                 key,
                 largest_t_gev2: largest_t,
                 energy_gev: self.energies_gev[place],
-                ray: &ray,
+                ray,
             };
             leg.enter_medium(self.tools(), &entrance, tally);
         }

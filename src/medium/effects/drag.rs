@@ -89,14 +89,16 @@ fn at_rest_gev(flight: &Flight) -> f64 {
 }
 
 /// Scales plus and transverse momentum by a common factor f such that the energy, half of f a + t/(f p+) with
-/// a = p+ + q^2/p+, becomes `energy_gev`.
+/// a = p+ + q^2/p+, becomes `energy_gev`. Of the two solutions it takes the one on the parton's side of rest: one that
+/// moves backwards (a < t/p+) slows down with a larger f.
 fn scale_to_energy(flight: &mut Flight, energy_gev: f64) {
     let a = flight.plus_gev + flight.transverse2_gev2() / flight.plus_gev;
     let rest_gev = at_rest_gev(flight);
     let root = ((energy_gev - rest_gev) * (energy_gev + rest_gev))
         .max(0.0)
         .sqrt();
-    let factor = (energy_gev + root) / a;
+    let moves_forwards = a * flight.plus_gev >= flight.t_gev2;
+    let factor = (energy_gev + if moves_forwards { root } else { -root }) / a;
     flight.plus_gev *= factor;
     flight.transverse_gev = flight.transverse_gev.map(|component| component * factor);
 }
@@ -118,6 +120,7 @@ mod tests {
             (80.0, [3.0, -4.0], 0.0),
             (12.0, [0.5, 0.2], 30.0),
             (200.0, [0.0, 0.0], 900.0),
+            (12.0, [1.0, -2.0], 300.0),
         ] {
             let before = Flight {
                 plus_gev,
@@ -130,6 +133,9 @@ mod tests {
                 scale_to_energy(&mut flight, energy_gev);
                 assert!((flight.energy_gev() / energy_gev - 1.0).abs() < 1e-12);
                 assert_eq!(flight.t_gev2, t_gev2);
+                // Nearer to the energy, nearer to where it was: on the same side of rest.
+                let change = (flight.plus_gev / before.plus_gev - 1.0).abs();
+                assert!(share != 1.0 || change < 1e-7, "{change}");
                 let turn = |flight: &Flight| flight.transverse_gev[0] / flight.plus_gev;
                 assert!((turn(&flight) - turn(&before)).abs() < 1e-12);
             }

@@ -58,6 +58,18 @@ impl HotScan {
         Some([widen([first, last], self.lengths[0]), columns, rows])
     }
 
+    /// Whether the field is hot at the last tau, or at an end of x or y: a path can then leave it hot.
+    pub(super) fn is_hot_at_an_end(&self) -> bool {
+        let [_, columns, rows, _] = self.lengths;
+        let hot = |plane: &&HotPlane| **plane != COLD;
+        let reaches = |plane: &HotPlane| {
+            let [x, y] = plane;
+            x[0] == 0 || x[1] + 1 == columns || y[0] == 0 || y[1] + 1 == rows
+        };
+        self.planes.iter().filter(hot).any(reaches)
+            || self.planes.last().is_some_and(|plane| *plane != COLD)
+    }
+
     /// First and last plane to keep of x (axis 0) or y (axis 1) from a plane of tau on.
     fn extent_from(&self, from: usize, axis: usize) -> [usize; 2] {
         let planes = &self.planes[from..];

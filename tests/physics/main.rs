@@ -5,6 +5,7 @@
 //! = 10^-6; with fewer than 1000 checks the false-alarm rate of all of them together stays below 10^-3. Seeds are fixed.
 
 mod angular;
+mod behaviour;
 mod collinear;
 mod conservation;
 mod exits;

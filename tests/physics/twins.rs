@@ -10,7 +10,7 @@
 //! - for a `single` source and a phase factor that only adds, the primary changes only by an induced branching at a
 //!   higher virtuality; a changed pair has an induced branching, or one of its members lies lower than in vacuum (the
 //!   constraint resumed it because of an induced branching that was discarded later);
-//! - a phase factor that thins unmakes branchings: then a vacuum branching may be missing instead, also one that the
+//! - an effect that thins or vetoes unmakes branchings: then a vacuum branching may be missing instead, also one that the
 //!   constraint would have discarded after it had made the sibling resume: the sibling then lies higher (relieved). The
 //!   set-ups keep 1 + R positive: no trial is accepted that the vacuum rejected.
 //!
@@ -21,11 +21,14 @@
 use std::sync::atomic::AtomicBool;
 
 use spindrift::event::{EventBlock, Parton, Status};
+use spindrift::medium::effects::EffectSettings;
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
+use spindrift::parameters::Setting;
 use spindrift::qcd::Species;
 use spindrift::run::{EventGenerator, Sink, run};
+use spindrift::shower::Ordering;
 
-use super::support::setup::{Setup, brick, up};
+use super::support::setup::{Setup, brick, brick_with, effect, up};
 
 /// What a walk through two trees found.
 #[derive(Debug, Default)]
@@ -258,6 +261,28 @@ fn setups(phase: PhaseSettings) -> [Setup; 3] {
     ]
 }
 
+/// The same jets in bricks with other effects; the last one ordered in angle.
+fn setups_with(qhat: f64, effects: &[EffectSettings]) -> [Setup; 4] {
+    let medium = |length| brick_with(length, qhat, effects.to_vec());
+    let mut angular = Setup::single(Species::GLUON, 100.0, 60.0).with_medium(medium(4.0));
+    angular.shower.ordering = Ordering::Angular;
+    [
+        Setup::single(up(), 100.0, 100.0).with_medium(medium(4.0)),
+        Setup::single(Species::GLUON, 100.0, 40.0).with_medium(medium(3.0)),
+        Setup::pair([Species::GLUON; 2], 160.0, 60.0).with_medium(medium(4.0)),
+        angular,
+    ]
+}
+
+fn given(kind: &str, numbers: &[(&'static str, f64)]) -> EffectSettings {
+    let number = |(name, value): &(&'static str, f64)| (*name, Setting::Number(*value));
+    let mut settings: Vec<_> = numbers.iter().map(number).collect();
+    if kind == "single-hard" {
+        settings.push(("centres", Setting::Word("given")));
+    }
+    effect(kind, &settings)
+}
+
 #[test]
 fn twins_differ_only_where_the_medium_added() {
     for phase in [
@@ -280,6 +305,67 @@ fn twins_differ_only_where_the_medium_acted() {
         assert!(totals.with_change > 20 && totals.same > totals.events);
         assert!(totals.unmade > 0);
         assert!(totals.relieved < totals.unmade);
+        assert_eq!((totals.unexplained, totals.overshoots), (0, 0));
+    }
+}
+
+#[test]
+fn twins_with_an_enhancement_differ_only_where_it_added() {
+    let enhanced = given("singular-enhancement", &[("factor", 0.02)]);
+    for setup in setups_with(1.0, &[enhanced]) {
+        let totals = twins(&setup, true, None);
+        assert!(totals.with_change > 20 && totals.with_change < totals.events);
+        assert!(totals.idle > 20 && totals.same > totals.events);
+        assert_eq!((totals.unexplained, totals.overshoots), (0, 0));
+    }
+}
+
+#[test]
+fn twins_with_spectra_differ_only_where_they_acted() {
+    let hard = given(
+        "single-hard",
+        &[("opacity_per_fm", 0.05), ("debye_mass_GeV", 0.5)],
+    );
+    for effects in [vec![given("multiple-soft", &[])], vec![hard]] {
+        for setup in setups_with(0.2, &effects) {
+            let totals = twins(&setup, false, None);
+            assert!(totals.with_change > 20 && totals.same > totals.events);
+            assert!(totals.made > 0 && totals.unmade > 0);
+            assert!(totals.relieved < totals.unmade);
+            assert_eq!(totals.unexplained, 0);
+            // Where the order leaves nothing of the vacuum a negative change is the whole density, and weights carry it.
+            let angular = setup.shower.ordering == Ordering::Angular;
+            assert_eq!(totals.overshoots > 0, angular);
+        }
+    }
+}
+
+/// A veto makes nothing; with angles ordered it lifts the order, and then it does.
+#[test]
+fn twins_with_a_veto_differ_only_where_it_unmade() {
+    for setup in setups_with(0.5, &[given("resolved-only", &[])]) {
+        let totals = twins(&setup, false, None);
+        assert!(totals.with_change > 20 && totals.same > totals.events);
+        assert!(totals.unmade > 0);
+        assert_eq!((totals.made, totals.overshoots), (0, 0));
+        if setup.shower.ordering != Ordering::Angular {
+            assert!(totals.relieved < totals.unmade);
+            assert_eq!(totals.unexplained, 0);
+        }
+    }
+}
+
+#[test]
+fn twins_of_a_composition_differ_only_where_it_acted() {
+    let effects = [
+        PhaseSettings::Interference.into(),
+        given("singular-enhancement", &[("factor", 0.02)]),
+        given("resolved-only", &[]),
+    ];
+    for setup in &setups_with(0.1, &effects)[..3] {
+        let totals = twins(setup, false, None);
+        assert!(totals.with_change > 20 && totals.same > totals.events);
+        assert!(totals.made > 0 && totals.unmade > 0);
         assert_eq!((totals.unexplained, totals.overshoots), (0, 0));
     }
 }

@@ -71,10 +71,9 @@ impl PathEffect for Drag {
             loss_gev += journey.loss_variance_gev2().sqrt() * normal(stream);
         }
         let energy_gev = flight.energy_gev();
-        let wanted_gev = energy_gev - loss_gev;
-        // A parton below the floor loses nothing, and a gain is not rounded up to the floor.
-        let least_gev = least_energy_gev(flight, journey.min_energy_gev).min(energy_gev);
-        let left_gev = wanted_gev.max(least_gev);
+        // A parton below the least energy loses nothing; a gain is what it is.
+        let floor_gev = least_energy_gev(flight, journey.min_energy_gev).min(energy_gev);
+        let left_gev = (energy_gev - loss_gev).max(floor_gev);
         if left_gev != energy_gev {
             scale_to_energy(flight, left_gev);
         }

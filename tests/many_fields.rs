@@ -277,7 +277,12 @@ fn a_bad_value_found_late_leaves_the_events_before_it() {
         );
         let file = EventFile::open(&folder.path().join(&out)).unwrap();
         assert!(!file.is_complete() && file.event_count() <= 8000);
-        assert!(file.event_count() > 4000, "{}", file.event_count());
+        // On several threads a block may be late; on one all whole chunks before the bad field are there.
+        assert!(
+            threads != "1" || file.event_count() > 4000,
+            "{}",
+            file.event_count()
+        );
         assert!(audit(file.path()).unwrap().is_clean());
     }
 }

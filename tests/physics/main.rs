@@ -8,6 +8,7 @@ mod angular;
 mod behaviour;
 mod collinear;
 mod conservation;
+mod effect_limits;
 mod exits;
 mod fields;
 mod first_branching;

@@ -23,12 +23,12 @@ use std::sync::atomic::AtomicBool;
 use spindrift::event::{EventBlock, Parton, Status};
 use spindrift::medium::effects::EffectSettings;
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
-use spindrift::parameters::Setting;
 use spindrift::qcd::Species;
 use spindrift::run::{EventGenerator, Sink, run};
 use spindrift::shower::Ordering;
 
-use super::support::setup::{Setup, brick, brick_with, effect, up};
+use super::support::effects::{centres, enhancement, plain};
+use super::support::setup::{Setup, brick, brick_with, up};
 
 /// What a walk through two trees found.
 #[derive(Debug, Default)]
@@ -274,15 +274,6 @@ fn setups_with(qhat: f64, effects: &[EffectSettings]) -> [Setup; 4] {
     ]
 }
 
-fn given(kind: &str, numbers: &[(&'static str, f64)]) -> EffectSettings {
-    let number = |(name, value): &(&'static str, f64)| (*name, Setting::Number(*value));
-    let mut settings: Vec<_> = numbers.iter().map(number).collect();
-    if kind == "single-hard" {
-        settings.push(("centres", Setting::Word("given")));
-    }
-    effect(kind, &settings)
-}
-
 #[test]
 fn twins_differ_only_where_the_medium_added() {
     for phase in [
@@ -311,7 +302,7 @@ fn twins_differ_only_where_the_medium_acted() {
 
 #[test]
 fn twins_with_an_enhancement_differ_only_where_it_added() {
-    let enhanced = given("singular-enhancement", &[("factor", 0.02)]);
+    let enhanced = enhancement(0.02);
     for setup in setups_with(1.0, &[enhanced]) {
         let totals = twins(&setup, true, None);
         assert!(totals.with_change > 20 && totals.with_change < totals.events);
@@ -322,11 +313,8 @@ fn twins_with_an_enhancement_differ_only_where_it_added() {
 
 #[test]
 fn twins_with_spectra_differ_only_where_they_acted() {
-    let hard = given(
-        "single-hard",
-        &[("opacity_per_fm", 0.05), ("debye_mass_GeV", 0.5)],
-    );
-    for effects in [vec![given("multiple-soft", &[])], vec![hard]] {
+    let hard = centres(0.05, 0.5);
+    for effects in [vec![plain("multiple-soft")], vec![hard]] {
         for setup in setups_with(0.2, &effects) {
             let totals = twins(&setup, false, None);
             assert!(totals.with_change > 20 && totals.same > totals.events);
@@ -343,7 +331,7 @@ fn twins_with_spectra_differ_only_where_they_acted() {
 /// A veto makes nothing; with angles ordered it lifts the order, and then it does.
 #[test]
 fn twins_with_a_veto_differ_only_where_it_unmade() {
-    for setup in setups_with(0.5, &[given("resolved-only", &[])]) {
+    for setup in setups_with(0.5, &[plain("resolved-only")]) {
         let totals = twins(&setup, false, None);
         assert!(totals.with_change > 20 && totals.same > totals.events);
         assert!(totals.unmade > 0);
@@ -359,8 +347,8 @@ fn twins_with_a_veto_differ_only_where_it_unmade() {
 fn twins_of_a_composition_differ_only_where_it_acted() {
     let effects = [
         PhaseSettings::Interference.into(),
-        given("singular-enhancement", &[("factor", 0.02)]),
-        given("resolved-only", &[]),
+        enhancement(0.02),
+        plain("resolved-only"),
     ];
     for setup in &setups_with(0.1, &effects)[..3] {
         let totals = twins(setup, false, None);

@@ -20,7 +20,6 @@
 //! - mean numbers of final partons: `angular` below `virtuality`, 4 set-ups at 4.9 sigma.
 //!
 //! 10^-6 each. Smallest visible bias: .5 % of a cumulative distribution, 5 to 25 % of a share in a bin.
-
 //!
 //! See `order` for the rows, `rate` for legs, `shares` for daughters.
 
@@ -33,7 +32,8 @@ use spindrift::numerics::vectors::invariant_square;
 use spindrift::qcd::{HBAR_C_GEV_FM, Species};
 use spindrift::shower::Ordering;
 
-use super::support::setup::{ALPHA_S, Setup, effect, fixed};
+use super::support::effects::effect;
+use super::support::setup::{ALPHA_S, Setup, fixed};
 use super::support::ways::{Way, along_z, massless_energies, ways};
 
 /// Channel number of vacuum branchings.

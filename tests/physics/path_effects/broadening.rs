@@ -13,13 +13,13 @@ use spindrift::event::Status;
 use spindrift::numerics::vectors::invariant_square;
 use spindrift::qcd::Species;
 
+use super::super::support::effects::plain;
 use super::super::support::reference::{self, number};
 use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{
     LARGEST_DISTANCE, LARGEST_PULL, Mean, SIGNIFICANCE, binomial_p_value, distance,
 };
 use super::super::support::ways::{Way, along_z, massless_energies, plus, ways};
-use super::plain;
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 1.5;

@@ -16,12 +16,13 @@ use spindrift::parameters::Setting;
 use spindrift::qcd::Species;
 use spindrift::source::{Direction, SourceSettings};
 
+use super::super::support::effects::{effect, plain};
 use super::super::support::reference::{self, number};
-use super::super::support::setup::{Setup, effect, up};
+use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{LARGEST_DISTANCE, LARGEST_PULL, Mean, distance};
 use super::super::support::ways::{Way, along_z, massless_energies, plus, ways};
 use super::broadening::path_setup;
-use super::{TEMPERATURE_GEV, plain, rounding};
+use super::{TEMPERATURE_GEV, rounding};
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 1.0;

@@ -11,27 +11,23 @@ use spindrift::event::{CheckRules, Parton, Status, check_event};
 use spindrift::medium::effects::EffectSettings;
 use spindrift::medium::{FieldKind, TransportKind};
 use spindrift::numerics::vectors::invariant_square;
-use spindrift::parameters::Setting;
 use spindrift::qcd::Species;
 use spindrift::shower::Ordering;
 
-use super::super::support::setup::{Setup, brick_with, effect, up};
+use super::super::support::effects::{enhancement, fluctuating_drag, plain};
+use super::super::support::setup::{Setup, brick_with, up};
 use super::super::support::ways::{along_z, gain, plus, ways};
-use super::{FIRST_CHANNEL, plain};
+use super::FIRST_CHANNEL;
 
 const MOMENTUM_TOLERANCE: f64 = 1e-9;
 const EVENTS: i64 = 600;
-
-fn fluctuating_drag() -> EffectSettings {
-    effect("drag", &[("fluctuations", Setting::Flag(true))])
-}
 
 /// Every effect that composes without weights far from 1, path effects between those on rates.
 fn everything() -> Vec<EffectSettings> {
     vec![
         plain("collinear-expansion"),
         fluctuating_drag(),
-        effect("singular-enhancement", &[("factor", Setting::Number(0.5))]),
+        enhancement(0.5),
         plain("virtuality-diffusion"),
         plain("resolved-only"),
         plain("broadening"),

@@ -12,17 +12,9 @@ mod drag;
 mod exchanges;
 mod virtuality_diffusion;
 
-use spindrift::medium::effects::EffectSettings;
-
-use super::support::setup::effect;
-
 /// Channel number of the first effect.
 const FIRST_CHANNEL: u8 = 2;
 const TEMPERATURE_GEV: f64 = 0.3;
-
-fn plain(kind: &str) -> EffectSettings {
-    effect(kind, &[])
-}
 
 /// A number of f32 near `value` is off by at most this.
 fn rounding(value: f64) -> f64 {

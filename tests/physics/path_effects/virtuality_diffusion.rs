@@ -18,6 +18,7 @@ use spindrift::shower::leg::{AngularOrder, Branching, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
 use spindrift::shower::tree::Tools;
 
+use super::super::support::effects::plain;
 use super::super::support::reference::{self, number};
 use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{
@@ -25,7 +26,6 @@ use super::super::support::statistics::{
 };
 use super::super::support::ways::{Way, along_z, minus, plus, ways};
 use super::broadening::path_setup;
-use super::plain;
 
 const LENGTH_FM: f64 = 3.0;
 const QHAT: f64 = 2.0;

@@ -1,5 +1,6 @@
 //! What the subjects share: set-ups, samples, statistics, reference tables.
 
+pub mod effects;
 pub mod first_branching;
 pub mod reference;
 pub mod setup;

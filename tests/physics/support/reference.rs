@@ -10,6 +10,7 @@ use spindrift::parameters::{Form, Setting};
 use spindrift::qcd::{CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::shower::{FlavourOpening, ZRange};
 
+use super::effects;
 use super::setup::{self, Setup};
 
 /// A table by its name.
@@ -78,11 +79,11 @@ pub fn setup(case: &Value) -> Setup {
     }
     let length = number(medium, "length_fm");
     let qhat = number(medium, "gluon_qhat_GeV2_per_fm");
-    let effects = match medium["effects"].as_array() {
+    let chosen = match medium["effects"].as_array() {
         None => vec![phase(&medium["effect"]).into()],
         Some(list) => list.iter().map(|words| effect(words, length)).collect(),
     };
-    let mut brick = setup::brick_with(length, qhat, effects);
+    let mut brick = setup::brick_with(length, qhat, chosen);
     brick.limit_to_small_angles = medium["limit_to_small_angles"] == true;
     setup.with_medium(brick)
 }
@@ -143,7 +144,7 @@ fn effect(words: &Value, length_fm: f64) -> EffectSettings {
             given.push((condition.key, Setting::Word(condition.is[0])));
         }
     }
-    setup::effect(kind, &given)
+    effects::effect(kind, &given)
 }
 
 /// The name of a config for a number of a table.

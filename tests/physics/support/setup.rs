@@ -5,15 +5,14 @@ use std::sync::Arc;
 use std::ops::Range;
 
 use spindrift::event::{EventBlock, EventSummary, Parton};
+use spindrift::medium::effects::EffectSettings;
 use spindrift::medium::effects::collinear_expansion::PhaseSettings;
-use spindrift::medium::effects::{EffectSettings, model};
 use spindrift::medium::field::{Brick, Longitudinal, Radial, TemperatureField};
 use spindrift::medium::origin::{Fixed, Origin};
 use spindrift::medium::{
     ColourCharge, FieldKind, FieldSettings, Medium, MediumSettings, OriginSettings, TransportKind,
     TransportSettings,
 };
-use spindrift::parameters::Setting;
 use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
@@ -84,12 +83,6 @@ pub fn running(argument: ScaleArgument, loops: Loops) -> CouplingSettings {
 /// A brick with a constant qhat of the gluon and one phase factor.
 pub fn brick(length_fm: f64, qhat_gev2_per_fm: f64, phase: PhaseSettings) -> MediumSettings {
     brick_with(length_fm, qhat_gev2_per_fm, vec![phase.into()])
-}
-
-/// An effect of the registry, with some of its parameters and the defaults for the others.
-pub fn effect(kind: &str, given: &[(&'static str, Setting)]) -> EffectSettings {
-    let model = model(kind).unwrap_or_else(|| panic!("the registry has no {kind}"));
-    EffectSettings::new(model, given)
 }
 
 /// A brick with a constant qhat of the gluon and any effects.

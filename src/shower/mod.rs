@@ -10,6 +10,7 @@
 
 pub mod accept;
 pub mod counters;
+pub mod evolution;
 pub mod kinematics;
 pub mod leg;
 pub mod ordering;
@@ -22,10 +23,11 @@ use crate::medium::{Medium, Placed};
 use crate::qcd::{Coupling, CouplingError, CouplingSettings};
 use crate::random::{Key, Purpose};
 use crate::source::HardProcess;
-use leg::{Branching, Evolution};
+use evolution::{Evolution, Tools};
+use leg::Branching;
 use proposal::FractionRange;
 use proposal::staircase::{FlavourRule, Staircase, VacuumRate};
-use tree::{Record, TooManyBranchings, Tools, Walker};
+use tree::{Record, TooManyBranchings, Walker};
 
 /// The shower's choices.
 #[derive(Clone, Debug, PartialEq)]

@@ -3,8 +3,8 @@
 use spindrift::qcd::{C_A, C_F, Species, T_R};
 use spindrift::random::Key;
 use spindrift::shower::counters::ShowerCounters;
+use spindrift::shower::evolution::Tools;
 use spindrift::shower::leg::{AngularOrder, Leg, Tally};
-use spindrift::shower::tree::Tools;
 
 use super::super::support::setup::{ALPHA_S, Setup, fixed, up};
 use super::super::support::statistics::{

@@ -17,7 +17,8 @@ use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgume
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
 use spindrift::run::generator::Generator;
-use spindrift::shower::leg::{Branching, Evolution};
+use spindrift::shower::evolution::Evolution;
+use spindrift::shower::leg::Branching;
 use spindrift::shower::proposal::FractionRange;
 use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::{

@@ -5,52 +5,21 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 use std::time::SystemTime;
 
-use thiserror::Error;
-
+use super::assemble_error::AssembleError;
 use super::exits::MediumExits;
 use super::fields::{FieldReadError, FieldSeries, Schedule};
 use super::generator::Generator;
-use super::origins::BirthError;
 use super::provenance::event_ids;
 use super::surroundings::{
     Surroundings, births_alone, births_follow_the_field, one_more, surroundings,
 };
 use crate::config::{History, RunPlan};
-use crate::files::field_file::{FieldFileError, read_outline};
+use crate::files::field_file::read_outline;
 use crate::medium::field::{Brick, TemperatureField};
 use crate::medium::origin::{CollisionDensity, Origin, Placement};
 use crate::medium::{FieldKind, Medium, MediumSettings, OriginSettings};
-use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
-
-/// Why a plan cannot be carried out.
-#[derive(Debug, Error)]
-pub enum AssembleError {
-    /// The temperature field cannot be used.
-    #[error(transparent)]
-    Field(#[from] FieldFileError),
-    /// The coupling cannot be had.
-    #[error(transparent)]
-    Coupling(#[from] CouplingError),
-    /// There is no distribution of birth places.
-    #[error(transparent)]
-    Births(#[from] BirthError),
-    /// There is no distribution of birth places in a field of a file.
-    #[error("{}: {problem}", path.display())]
-    BirthsIn {
-        /// The file.
-        path: PathBuf,
-        /// Why.
-        problem: BirthError,
-    },
-    /// An input file is no longer what it was when the run began.
-    #[error("{} was changed after the run began; the events so far have its former content", path.display())]
-    Changed {
-        /// The file.
-        path: PathBuf,
-    },
-}
 
 /// A generator, and what the user should hear about its inputs.
 pub struct Assembled {

@@ -3,7 +3,7 @@
 use std::path::Path;
 use std::sync::Arc;
 
-use super::assemble::AssembleError;
+use super::assemble_error::AssembleError;
 use super::origins::{FieldView, births};
 use crate::files::field_file::{FieldFileError, LoadedGrid, read_grid};
 use crate::medium::field::{FieldData, Grid, TemperatureField, analytic, placed};

@@ -175,12 +175,10 @@ fn wrong_arguments_exit_2_with_nothing_on_stdout() {
 fn verbs_and_options_of_later_versions_exit_2_and_say_so() {
     let desk = Desk::new();
     let config = desk.config(&vacuum());
-    let cases: [&[&str]; 9] = [
+    let cases: [&[&str]; 7] = [
         &["join", "all.h5", "a.h5", "b.h5", "--virtual"],
         &["contrast", "a.h5", "b.h5"],
         &["export", "a.h5", "--to", "lhef"],
-        &["field", "make", "a.json", "--out", "b.h5"],
-        &["field", "check", "a.h5", "--picture", "b.svg"],
         &["generate", config, "--shard", "0/2"],
         &["generate", config, "--shard", "auto/2"],
         &["generate", config, "--ids", "0..10"],

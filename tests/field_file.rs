@@ -327,6 +327,65 @@ fn a_density_of_collisions_is_read() {
 }
 
 #[test]
+fn a_density_of_collisions_may_be_transposed() {
+    let mut transposed = Vec::new();
+    for y in 0..Y.len() {
+        transposed.extend((0..X.len()).map(|x| (10 * x + y) as f64));
+    }
+    let data = read_with(|maker| {
+        maker.variable(
+            "collision_density",
+            &["y", "x"],
+            &transposed,
+            Some("1/fm^2"),
+        );
+    })
+    .unwrap();
+    let density = data.collision_density_per_fm2.unwrap();
+    assert_eq!((density[1], density[Y.len()]), (1.0, 10.0));
+    let without_units = read_with(|maker| {
+        maker.variable("collision_density", &["y", "x"], &transposed, None);
+    });
+    assert!(refused(without_units).contains("units are missing"));
+}
+
+#[test]
+fn absurd_flow_is_refused() {
+    let with = |component: f64| {
+        read_with(move |maker| {
+            let mut flow = vec![0.1f64; POINTS];
+            flow[4] = component;
+            maker.variable("ux", &PLANE, &flow, None);
+            maker.variable("uy", &PLANE, &[0.0f64; POINTS], None);
+        })
+    };
+    assert!(with(-3.0).is_ok());
+    assert!(refused(with(101.0)).contains("between -100 and 100"));
+    assert!(refused(with(f64::NAN)).contains("fillna(0)"));
+    let wrong_units = read_with(|maker| {
+        maker.variable("ux", &PLANE, &[0.0f64; POINTS], Some("fm"));
+        maker.variable("uy", &PLANE, &[0.0f64; POINTS], None);
+    });
+    assert!(refused(wrong_units).contains("\"fm\" are not understood"));
+}
+
+#[test]
+fn bad_rapidity_axes_are_refused() {
+    let with = |eta: &[f64]| {
+        let place = place();
+        let maker = with_axes(&place.path);
+        maker.axis("eta", eta, None);
+        let warm = vec![0.3; POINTS * eta.len()];
+        maker.variable("temperature", &["tau", "x", "y", "eta"], &warm, Some("GeV"));
+        drop(maker);
+        read_field(&place.path).map_err(|error| *error.problem)
+    };
+    assert!(with(&[-1.0, 0.5]).is_ok());
+    assert!(refused(with(&[0.5, -1.0])).contains("strictly increasing"));
+    assert!(refused(with(&[0.0])).contains("dataset.isel(eta=0)"));
+}
+
+#[test]
 fn bad_axes_are_refused() {
     let with = |tau: &[f64], units: Option<&str>| {
         let place = place();
@@ -435,7 +494,7 @@ fn huge_declared_sizes_are_refused_before_memory_is_taken() {
     drop((dataset, maker));
     let message = read_field(&place.path).unwrap_err().to_string();
     assert!(
-        message.contains("at most 2147483648 are allowed"),
+        message.contains("grid points; at most 2147483648 are allowed"),
         "{message}"
     );
 }

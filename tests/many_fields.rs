@@ -277,7 +277,12 @@ fn a_bad_value_found_late_leaves_the_events_before_it() {
         );
         let file = EventFile::open(&folder.path().join(&out)).unwrap();
         assert!(!file.is_complete() && file.event_count() <= 8000);
-        assert!(file.event_count() > 4000, "{}", file.event_count());
+        // On several threads a block may be late; on one all whole chunks before the bad field are there.
+        assert!(
+            threads != "1" || file.event_count() > 4000,
+            "{}",
+            file.event_count()
+        );
         assert!(audit(file.path()).unwrap().is_clean());
     }
 }
@@ -296,4 +301,34 @@ fn the_twin_without_effects_keeps_fields_and_weights() {
         assert_eq!(one.source_weight, other.source_weight);
         assert_eq!(one.origin_fm, other.origin_fm);
     }
+}
+
+/// Where nothing depends on them, fields are looked at but not read: vacuum twins cost no reading.
+#[test]
+fn fields_that_nobody_needs_are_not_read() {
+    let folder = folder();
+    write_field(&folder.path().join(name(2)), f64::NAN, 1.0);
+    let mut config = several();
+    config["medium"]["effects"] = json!([]);
+    let path = made(folder.path(), &config, &["--out", "vacuum.h5"]);
+    for (event, _) in events(&path) {
+        assert_eq!(i64::from(event.field), event.id / EVENTS_PER_FIELD % 3);
+    }
+    config["record"] = json!({ "medium_exit": true });
+    let output = run(folder.path(), &config, &["--out", "exits.h5"]);
+    assert_ne!(output.status.code(), Some(0));
+}
+
+/// What is odd about a field that is read during the run is told when it ends.
+#[test]
+fn warnings_of_later_fields_are_told() {
+    let folder = folder();
+    write_field(&folder.path().join(name(1)), 1.5, 1.0);
+    let output = run(folder.path(), &several(), &["--discard"]);
+    let said = String::from_utf8_lossy(&output.stderr);
+    assert_eq!(output.status.code(), Some(0), "{said}");
+    assert!(
+        said.contains("field-1.h5: the largest temperature is 1.5 GeV"),
+        "{said}"
+    );
 }

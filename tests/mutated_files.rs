@@ -12,7 +12,7 @@ use common::{FakeGenerator, provenance};
 use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64;
 use spindrift::files::event_file::{EventFileWriter, Provenance, WriteOptions, audit};
-use spindrift::files::field_file::read_field;
+use spindrift::files::field_file::{read_field, read_grid};
 use spindrift::run::{Sink, run};
 
 const USUAL_MUTATIONS: usize = 200;
@@ -90,7 +90,9 @@ fn field_files() {
     drop(maker);
     let mut refused = 0;
     mutate(&path, 2, |path| {
-        refused += usize::from(read_field(path).is_err())
+        let whole = read_field(path).is_err();
+        assert_eq!(read_grid(path, 0.15, false).is_err(), whole);
+        refused += usize::from(whole);
     });
     assert!(refused > 0);
 }

@@ -8,7 +8,7 @@ import pathlib
 import sys
 import tempfile
 
-from checks import physics
+from checks import diffusion, physics
 from checks.program import Program
 from checks.tally import Tally
 
@@ -28,6 +28,7 @@ def main():
             *physics.first_branching_checks(program),
             *physics.multiplicity_checks(program),
             *physics.collinear_checks(program),
+            *diffusion.diffusion_checks(program),
             ("a biased sampler is seen", physics.check_bias_is_seen, program),
         ]
         for name, check, *arguments in checks:

@@ -14,6 +14,7 @@ use super::{EXIT_STOPPED, later, output, signals, threads};
 use crate::config::{Overrides, RunPlan, load_with};
 use crate::files::event_file::{EventFileWriter, WriteOptions};
 use crate::run::assemble::assemble;
+use crate::run::fields::FieldSeries;
 use crate::run::forecast::Forecast;
 use crate::run::generator::Generator;
 use crate::run::provenance::{describe, event_ids};
@@ -105,12 +106,15 @@ pub fn run(args: &GenerateArgs) -> anyhow::Result<ExitCode> {
     let start = Instant::now();
     let totals = run_events(&generator, event_ids(&plan), threads, sink, &teller, &stop);
     teller.finish();
+    let late = generator.fields.as_ref().map(FieldSeries::warnings);
+    let late = late.unwrap_or_default();
+    warn(&late);
     let circumstances = Circumstances {
         config: args.config.clone(),
         output,
         threads,
         wall_time: start.elapsed(),
-        input_warnings,
+        input_warnings: [input_warnings, late].concat(),
     };
     close(args, &RunSummary::new(&plan, circumstances, &totals?))
 }

@@ -2,6 +2,7 @@
 
 pub mod audit;
 pub mod field;
+mod field_make;
 pub mod generate;
 mod output;
 mod progress;
@@ -66,7 +67,7 @@ pub enum Verb {
     Show(show::ShowArgs),
     /// Reads whole event files back and checks everything in them
     Audit(audit::AuditArgs),
-    /// Looks at a temperature field
+    /// Looks at a temperature field, or makes one
     Field(field::FieldArgs),
     /// Prints the JSON Schema of a config, for editors
     Schema,
@@ -130,6 +131,8 @@ pub fn exit_code(error: &anyhow::Error) -> u8 {
 mod tests {
     use super::*;
     use crate::files::event_file::EventFileError;
+    use crate::run::EventError;
+    use crate::run::fields::{FieldReadError, LostField};
 
     #[test]
     fn the_command_line_is_well_formed() {
@@ -144,7 +147,17 @@ mod tests {
             what: "partons".into(),
             reason: "no space left".into(),
         };
-        let cases: [(anyhow::Error, u8); 5] = [
+        let lost = LostField::Unusable {
+            index: 3,
+            problem: std::sync::Arc::from(FieldReadError::from("gone")),
+        };
+        let cases: [(anyhow::Error, u8); 7] = [
+            (
+                RunError::from(EventError::from(lost.clone())).into(),
+                EXIT_MACHINE,
+            ),
+            // before the start
+            (EventError::from(lost).into(), EXIT_BAD_REQUEST),
             (RunError::Defect("a panic".into()).into(), EXIT_DEFECT),
             (RunError::Output(full).into(), EXIT_MACHINE),
             (

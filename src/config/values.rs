@@ -124,10 +124,11 @@ pub fn parton(node: &Node) -> Result<Value, Complaint> {
     Err(complaint.nearest(nearest(word, Species::names().iter().copied())))
 }
 
-/// A string that is not empty.
+/// A string, not empty where it names a file.
 pub fn text(form: &Form, node: &Node) -> Result<Value, Complaint> {
+    let may_be_empty = matches!(form, Form::SchemaAddress);
     match &node.shape {
-        Shape::Text(text) if !text.is_empty() => Ok(Value::from(text.as_str())),
+        Shape::Text(text) if may_be_empty || !text.is_empty() => Ok(Value::from(text.as_str())),
         _ => Err(wrong_type(form, node)),
     }
 }

@@ -1,12 +1,13 @@
 //! The few HDF5 calls that the safe binding lacks: finished chunks and dimension scales.
 
 use std::ffi::{CString, c_char, c_int, c_uint, c_void};
+use std::ops::Range;
 use std::path::Path;
 
 use hdf5::H5Type;
 use hdf5::sync::sync;
 use hdf5_sys::h5::{herr_t, hsize_t};
-use hdf5_sys::h5d::{H5Dread, H5Dwrite_chunk};
+use hdf5_sys::h5d::{H5Dread, H5Dwrite, H5Dwrite_chunk};
 use hdf5_sys::h5i::hid_t;
 use hdf5_sys::h5p::H5P_DEFAULT;
 use hdf5_sys::h5s::{H5S_seloper_t, H5Sselect_hyperslab};
@@ -122,25 +123,43 @@ pub(super) fn read_rows<T: H5Type + Copy>(
     count: usize,
     values: &mut Vec<T>,
 ) -> hdf5::Result<()> {
-    values.clear();
-    let mut shape = dataset.shape();
-    let mut offset = vec![0; shape.len()];
-    match (shape.first_mut(), offset.first_mut()) {
-        (Some(length), Some(first)) if start + count <= *length => {
-            *length = count;
-            *first = start as hsize_t;
-        }
-        _ => return Err("rows beyond the end of a dataset".into()),
+    let mut part: Vec<Range<usize>> = dataset.shape().iter().map(|length| 0..*length).collect();
+    match part.first_mut() {
+        Some(rows) => *rows = start..start + count,
+        None => return Err("a single number has no rows".into()),
     }
-    let elements: usize = shape.iter().product();
+    read_box(dataset, &part, values)
+}
+
+/// Reads a part (a range along each axis) into `values`, whose content is lost.
+///
+/// The caller has checked that its size is reasonable, and that the elements are numbers.
+pub(super) fn read_box<T: H5Type + Copy>(
+    dataset: &hdf5::Dataset,
+    part: &[Range<usize>],
+    values: &mut Vec<T>,
+) -> hdf5::Result<()> {
+    values.clear();
+    let shape = dataset.shape();
+    let inside = part.len() == shape.len()
+        && part
+            .iter()
+            .zip(&shape)
+            .all(|(range, length)| range.start <= range.end && range.end <= *length);
+    if !inside {
+        return Err("a part beyond the end of a dataset".into());
+    }
+    let lengths: Vec<usize> = part.iter().map(Range::len).collect();
+    let elements: usize = lengths.iter().product();
     if elements == 0 {
         return Ok(());
     }
     values.reserve_exact(elements);
     let file_space = dataset.space()?;
-    let memory_space = hdf5::Dataspace::try_new(&shape[..])?;
+    let memory_space = hdf5::Dataspace::try_new(&lengths[..])?;
     let memory_type = hdf5::Datatype::from_type::<T>()?;
-    let counts: Vec<hsize_t> = shape.iter().map(|length| *length as hsize_t).collect();
+    let offset: Vec<hsize_t> = part.iter().map(|range| range.start as hsize_t).collect();
+    let counts: Vec<hsize_t> = lengths.iter().map(|length| *length as hsize_t).collect();
     // SAFETY: all handles are open, the selection has `elements` elements as has the memory space, and that many of
     // the memory type fit into the reserved room.
     sync(|| unsafe {
@@ -164,6 +183,48 @@ pub(super) fn read_rows<T: H5Type + Copy>(
     // SAFETY: HDF5 has written every selected element.
     unsafe { values.set_len(elements) };
     Ok(())
+}
+
+/// Writes plane `index` along the first axis of a dataset; `values` are all of it.
+pub(super) fn write_plane<T: H5Type>(
+    dataset: &hdf5::Dataset,
+    index: usize,
+    values: &[T],
+) -> hdf5::Result<()> {
+    let mut lengths = dataset.shape();
+    match lengths.first_mut() {
+        Some(length) if index < *length => *length = 1,
+        _ => return Err("a plane beyond the end of a dataset".into()),
+    }
+    if lengths.iter().product::<usize>() != values.len() {
+        return Err("a plane of another size".into());
+    }
+    let mut offset: Vec<hsize_t> = vec![0; lengths.len()];
+    offset[0] = index as hsize_t;
+    let counts: Vec<hsize_t> = lengths.iter().map(|length| *length as hsize_t).collect();
+    let file_space = dataset.space()?;
+    let memory_space = hdf5::Dataspace::try_new(&lengths[..])?;
+    let memory_type = hdf5::Datatype::from_type::<T>()?;
+    // SAFETY: all handles are open, the selection lies inside the dataset and has as many elements as `values`.
+    sync(|| unsafe {
+        hdf5::h5check(H5Sselect_hyperslab(
+            file_space.id(),
+            H5S_seloper_t::H5S_SELECT_SET,
+            offset.as_ptr(),
+            std::ptr::null(),
+            counts.as_ptr(),
+            std::ptr::null(),
+        ))?;
+        hdf5::h5check(H5Dwrite(
+            dataset.id(),
+            memory_type.id(),
+            memory_space.id(),
+            file_space.id(),
+            H5P_DEFAULT,
+            values.as_ptr().cast(),
+        ))
+    })
+    .map(drop)
 }
 
 /// The part of a file in which global heaps are looked for before it is opened, in bytes. Event files have theirs

@@ -150,6 +150,7 @@ pub struct Medium {
     paths: Vec<Placed<dyn PathEffect>>,
     needs_whole_path: bool,
     needs_loss: bool,
+    thins_the_vacuum: bool,
     limit_to_small_angles: bool,
     min_energy_gev: f64,
 }
@@ -181,6 +182,7 @@ impl Medium {
             needs_whole_path: !paths.is_empty() || rates.is_empty() || rates.iter().any(whole),
             needs_loss: paths.iter().any(|path| path.effect.needs_loss())
                 || rates.iter().any(|rate| rate.effect.needs_loss()),
+            thins_the_vacuum: rates.iter().any(|rate| rate.effect.thins_the_vacuum()),
             names,
             rates,
             paths,
@@ -217,6 +219,11 @@ impl Medium {
     /// A parton below this lab energy in GeV sees no medium.
     pub fn min_energy_gev(&self) -> f64 {
         self.min_energy_gev
+    }
+
+    /// Whether an effect thins the vacuum channel.
+    pub fn thins_the_vacuum(&self) -> bool {
+        self.thins_the_vacuum
     }
 
     /// Whether induced emissions are limited to small angles.

@@ -57,21 +57,31 @@ impl Path {
         self.cells.push(cell);
     }
 
+    /// Appends cells that are known beforehand; [`Path::finish`] must follow.
+    #[inline]
+    pub fn extend(&mut self, cells: impl Iterator<Item = Cell>) {
+        self.cells.extend(cells);
+    }
+
     /// Computes the moments once all cells are there.
     pub fn finish(&mut self) {
         // int l^n qhat dl over a cell for n = 0, 1, 2, 4, by expanding l = c + s and integrating over s in [-h/2, h/2].
         let h = self.step_fm;
-        let (s2, s4) = (h * h / 12.0, h.powi(4) / 80.0);
+        let (s2, s4) = (h * h / 12.0, (h * h) * (h * h) / 80.0);
         let mut sums = [0.0; 4];
-        for (place, &Cell { mean, slope }) in self.cells.iter().enumerate() {
-            let c = self.centre(place);
-            let c2 = c * c;
-            sums[0] += mean;
-            sums[1] += mean * c + slope * s2;
-            sums[2] += mean * (c2 + s2) + slope * 2.0 * c * s2;
-            self.sums.push([sums[0], sums[2]]);
-            sums[3] += mean * (c2 * c2 + 6.0 * c2 * s2 + s4) + slope * 4.0 * c * (c2 * s2 + s4);
-        }
+        let (start_fm, cells) = (self.start_fm, &self.cells);
+        self.sums.clear();
+        self.sums
+            .extend(cells.iter().enumerate().map(|(place, cell)| {
+                let Cell { mean, slope } = *cell;
+                let c = start_fm + (place as f64 + 0.5) * h;
+                let c2 = c * c;
+                sums[0] += mean;
+                sums[1] += mean * c + slope * s2;
+                sums[2] += mean * (c2 + s2) + slope * 2.0 * c * s2;
+                sums[3] += mean * (c2 * c2 + 6.0 * c2 * s2 + s4) + slope * 4.0 * c * (c2 * s2 + s4);
+                [sums[0], sums[2]]
+            }));
         self.moments = sums.map(|sum| sum * h);
     }
 
@@ -114,7 +124,7 @@ impl Path {
     #[inline]
     pub fn qhat_gev2_per_fm(&self, l_fm: f64) -> f64 {
         let place = (l_fm - self.start_fm) / self.step_fm;
-        if !(place >= 0.0) {
+        if place < 0.0 {
             return 0.0;
         }
         let cell = place as usize;

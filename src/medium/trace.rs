@@ -16,8 +16,12 @@ const TEMPERATURES_PER_LOSS: f64 = 4.0;
 pub struct Trace {
     /// The gluon's transport coefficient along the path, or a bound of it.
     pub path: Path,
-    /// The gluon's energy loss per length along the path, GeV/fm, where an effect asks for it.
+    /// The gluon's energy loss per length along the path, GeV/fm in place of GeV^2/fm, where an effect asks for it.
     pub loss: Path,
+    /// The variance that its energy gains per length, GeV^2/fm, where an effect asks for it.
+    pub spread: Path,
+    /// int qhat/T dl of a gluon, GeV, where an effect asks for it.
+    pub qhat_over_temperature_gev: f64,
     exact: bool,
     ray: Ray,
     samples: Vec<Local>,
@@ -29,6 +33,8 @@ impl Default for Trace {
         Trace {
             path: Path::default(),
             loss: Path::default(),
+            spread: Path::default(),
+            qhat_over_temperature_gev: 0.0,
             exact: true,
             ray: Ray {
                 birth_fm: [0.0; 4],
@@ -121,7 +127,7 @@ impl Medium {
             stretch.first_fm,
             (stretch.last_fm - stretch.first_fm) / segments,
         );
-        for ceiling in &trace.ceilings {
+        trace.path.extend(trace.ceilings.iter().map(|ceiling| {
             let mean = if ceiling.temperature_gev < self.end_temperature_gev {
                 0.0
             } else {
@@ -135,8 +141,8 @@ impl Medium {
                     at_rest
                 }
             };
-            trace.path.push(Cell { mean, slope: 0.0 });
-        }
+            Cell { mean, slope: 0.0 }
+        }));
         trace.path.finish();
     }
 
@@ -168,19 +174,49 @@ impl Medium {
         trace.samples[2 * stretch.cells].temperature_gev
     }
 
+    /// Loss and spread of the energy and the mean of 1/T, for effects that ask for them.
+    ///
+    /// In the rest frame of the fluid a light-like parton shrinks along itself; the relative loss and dt/E are the same
+    /// in every frame, so the energy lost per lab length is that at rest, without the flow factor f, and the variance
+    /// per lab length, (E/E_rest)^2 dt_rest/dt times that at rest, carries 1/f.
     fn sample_loss(&self, stretch: &Stretch, step_fm: f64, energy_gev: f64, trace: &mut Trace) {
-        trace.loss.restart(stretch.first_fm, step_fm);
-        for cell in 0..stretch.cells {
-            let samples = self
-                .samples_of(&trace.samples, cell, energy_gev)
-                .map(|sample| Sample {
-                    qhat: sample.qhat
-                        / (TEMPERATURES_PER_LOSS * sample.temperature_gev.max(f64::MIN_POSITIVE)),
-                    ..sample
+        let Trace {
+            loss,
+            spread,
+            samples,
+            ..
+        } = trace;
+        let fill = |path: &mut Path, quantity: &dyn Fn(&Local, f64) -> f64| {
+            path.restart(stretch.first_fm, step_fm);
+            for cell in 0..stretch.cells {
+                let samples = [0, 1, 2].map(|place| {
+                    let local = &samples[2 * cell + place];
+                    Sample {
+                        temperature_gev: local.temperature_gev,
+                        qhat: quantity(local, self.qhat_of(local, energy_gev)),
+                    }
                 });
-            trace.loss.push(self.cell(samples, step_fm));
-        }
-        trace.loss.finish();
+                path.push(self.cell(samples, step_fm));
+            }
+            path.finish();
+        };
+        let warmth = |local: &Local| local.temperature_gev.max(f64::MIN_POSITIVE);
+        let flow = |local: &Local| {
+            if self.transport.flow {
+                local.flow_factor
+            } else {
+                1.0
+            }
+        };
+        fill(loss, &|local, qhat| qhat / warmth(local));
+        trace.qhat_over_temperature_gev = loss.qhat_integral_gev2();
+        fill(loss, &|local, qhat| {
+            qhat / (flow(local) * TEMPERATURES_PER_LOSS * warmth(local))
+        });
+        // One of the two transverse dimensions of qhat.
+        fill(spread, &|local, qhat| {
+            0.5 * qhat / (flow(local) * flow(local))
+        });
     }
 
     #[inline]
@@ -248,8 +284,8 @@ mod tests {
     use super::*;
     use crate::medium::field::Fluid;
     use crate::medium::{
-        ColourCharge, FieldKind, FieldSettings, MediumSettings, OriginSettings, TransportKind,
-        TransportSettings,
+        ColourCharge, EffectSettings, FieldKind, FieldSettings, MediumSettings, OriginSettings,
+        TransportKind, TransportSettings,
     };
     use std::sync::Arc;
 
@@ -285,33 +321,37 @@ mod tests {
         }
     }
 
+    fn settings() -> MediumSettings {
+        MediumSettings {
+            field: FieldSettings::new(
+                FieldKind::Brick {
+                    temperature_gev: 0.3,
+                    length_fm: 1.0,
+                },
+                0.15,
+            ),
+            origin: OriginSettings::Fixed {
+                x_fm: 0.0,
+                y_fm: 0.0,
+            },
+            transport: TransportSettings {
+                kind: TransportKind::Constant {
+                    qhat_gev2_per_fm: 1.0,
+                },
+                stated_for: ColourCharge::Gluon,
+                flow: true,
+            },
+            effects: Vec::new(),
+            limit_to_small_angles: true,
+            min_energy_gev: 2.0,
+        }
+    }
+
     /// A medium that ends inside a cell has no negative moment, however small the hot part.
     #[test]
     fn partly_hot_cells_keep_their_sign() {
         for hot_fm in [1e-6, 0.01, 0.06, 0.2, 0.31, 0.59, 0.61, 0.7, 1.1] {
-            let settings = MediumSettings {
-                field: FieldSettings::new(
-                    FieldKind::Brick {
-                        temperature_gev: 0.3,
-                        length_fm: 1.0,
-                    },
-                    0.15,
-                ),
-                origin: OriginSettings::Fixed {
-                    x_fm: 0.0,
-                    y_fm: 0.0,
-                },
-                transport: TransportSettings {
-                    kind: TransportKind::Constant {
-                        qhat_gev2_per_fm: 1.0,
-                    },
-                    stated_for: ColourCharge::Gluon,
-                    flow: true,
-                },
-                effects: Vec::new(),
-                limit_to_small_angles: true,
-                min_energy_gev: 2.0,
-            };
+            let settings = settings();
             let medium = Medium::new(&settings, Arc::new(Sliver { hot_fm }));
             let mut trace = Trace::default();
             let ray = Ray {
@@ -328,6 +368,60 @@ mod tests {
                 path.first_moment_gev2_fm() > 0.0 && path.second_moment_gev2_fm2() > 0.0,
                 "{hot_fm}"
             );
+        }
+    }
+
+    /// In a moving fluid the loss per lab length is that at rest and its variance falls with the flow factor; qhat
+    /// rises with it.
+    #[test]
+    fn loss_in_a_moving_fluid() {
+        struct Wind(f64);
+        impl TemperatureField for Wind {
+            fn stretch(&self, _ray: &Ray, _end_temperature_gev: f64) -> Option<Stretch> {
+                Some(Stretch {
+                    first_fm: 0.0,
+                    last_fm: 2.0,
+                    cells: 3,
+                })
+            }
+
+            fn local(&self, _ray: &Ray, _l_fm: f64) -> Local {
+                Local {
+                    temperature_gev: 0.3,
+                    flow_factor: self.0,
+                }
+            }
+
+            fn fluid(&self, _point_fm: [f64; 4]) -> Fluid {
+                Fluid::EMPTY
+            }
+
+            fn first_tau_fm(&self) -> f64 {
+                0.0
+            }
+        }
+        for flow in [0.4, 1.0, 1.7] {
+            let mut settings = settings();
+            settings.effects = vec![EffectSettings::new(
+                &crate::medium::effects::drag::MODEL,
+                &[],
+            )];
+            let medium = Medium::new(&settings, Arc::new(Wind(flow)));
+            let mut trace = Trace::default();
+            let ray = Ray {
+                birth_fm: [0.0; 4],
+                direction: [1.0, 0.0, 0.0],
+            };
+            medium.trace(medium.field(), &ray, 10.0, &mut trace);
+            // qhat = 1 GeV^2/fm at rest over 2 fm.
+            for (found, expected) in [
+                (trace.path.qhat_integral_gev2(), 2.0 * flow),
+                (trace.loss.qhat_integral_gev2(), 2.0 / (4.0 * 0.3)),
+                (trace.spread.qhat_integral_gev2(), 1.0 / flow),
+                (trace.qhat_over_temperature_gev, 2.0 * flow / 0.3),
+            ] {
+                assert!((found / expected - 1.0).abs() < 1e-12, "{found} {expected}");
+            }
         }
     }
 }

@@ -10,7 +10,7 @@ const DIGITS: i32 = 4;
 /// Power of the temperature that weights places: the energy density of an ideal gas of massless particles.
 const WEIGHT_POWER: i32 = 4;
 /// Below this temperature in GeV (the default end temperature of a medium) the interpolation is of no interest.
-const RELEVANT_TEMPERATURE_GEV: f64 = 0.15;
+pub(super) const RELEVANT_TEMPERATURE_GEV: f64 = 0.15;
 /// Linear interpolation errs with the square of the spacing, so by a quarter of what the doubled spacing shows.
 const SPACING_GAIN: f64 = 0.25;
 /// Spacings that differ by less than this share are called even.

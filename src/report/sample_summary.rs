@@ -4,10 +4,14 @@ use std::fmt;
 
 use super::numbers::significant;
 use crate::config::History;
-use crate::files::event_file::{EventFile, EventFileError, Kinematics, Provenance, WeightSums};
+use crate::files::event_file::{
+    EventFile, EventFileError, FieldEntry, Kinematics, Provenance, WeightSums,
+};
 
 /// Significant digits of means.
 const DIGITS: i32 = 5;
+/// Fields that are listed one by one.
+const MOST_FIELDS_SHOWN: usize = 12;
 /// An effective sample below this share of the events deserves a warning.
 const POOR_EFFECTIVE_SHARE: f64 = 0.1;
 
@@ -172,6 +176,26 @@ impl SampleSummary {
     }
 }
 
+/// The first few of many.
+fn write_fields(fields: &[FieldEntry], out: &mut fmt::Formatter<'_>) -> fmt::Result {
+    for (index, field) in fields.iter().enumerate().take(MOST_FIELDS_SHOWN) {
+        let sha256 = match field.sha256.as_str() {
+            "" => "none: analytic",
+            sha256 => sha256,
+        };
+        write!(out, "field {index:<7} {} (SHA-256 {sha256})", field.name)?;
+        if field.weight != 1.0 {
+            write!(out, ", weight {}", significant(field.weight, DIGITS))?;
+        }
+        writeln!(out)?;
+    }
+    if fields.len() > MOST_FIELDS_SHOWN {
+        let more = fields.len() - MOST_FIELDS_SHOWN;
+        writeln!(out, "              and {more} more fields, see /fields")?;
+    }
+    Ok(())
+}
+
 impl fmt::Display for SampleSummary {
     fn fmt(&self, out: &mut fmt::Formatter<'_>) -> fmt::Result {
         let provenance = &self.provenance;
@@ -190,18 +214,7 @@ impl fmt::Display for SampleSummary {
         self.write_events(out)?;
         self.write_weights(out)?;
         self.write_record(out)?;
-        for (index, field) in provenance.fields.iter().enumerate() {
-            writeln!(
-                out,
-                "field {index:<7} {} (SHA-256 {})",
-                field.name,
-                if field.sha256.is_empty() {
-                    "none: analytic"
-                } else {
-                    &field.sha256
-                }
-            )?;
-        }
+        write_fields(&provenance.fields, out)?;
         for (index, effect) in provenance.effects.iter().enumerate() {
             writeln!(out, "channel {:<5} {effect}", index + 2)?;
         }

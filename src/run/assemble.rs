@@ -5,50 +5,21 @@ use std::path::{Path, PathBuf};
 use std::sync::Arc;
 use std::time::SystemTime;
 
-use thiserror::Error;
-
+use super::assemble_error::AssembleError;
 use super::exits::MediumExits;
 use super::fields::{FieldReadError, FieldSeries, Schedule};
 use super::generator::Generator;
-use super::origins::BirthError;
 use super::provenance::event_ids;
-use super::surroundings::{Surroundings, births_follow_the_field, one_more, surroundings};
+use super::surroundings::{
+    Surroundings, births_alone, births_follow_the_field, one_more, surroundings,
+};
 use crate::config::{History, RunPlan};
-use crate::files::field_file::{FieldFileError, read_outline};
+use crate::files::field_file::read_outline;
 use crate::medium::field::{Brick, TemperatureField};
 use crate::medium::origin::{CollisionDensity, Origin, Placement};
 use crate::medium::{FieldKind, Medium, MediumSettings, OriginSettings};
-use crate::qcd::CouplingError;
 use crate::shower::Shower;
 use crate::source;
-
-/// Why a plan cannot be carried out.
-#[derive(Debug, Error)]
-pub enum AssembleError {
-    /// The temperature field cannot be used.
-    #[error(transparent)]
-    Field(#[from] FieldFileError),
-    /// The coupling cannot be had.
-    #[error(transparent)]
-    Coupling(#[from] CouplingError),
-    /// There is no distribution of birth places.
-    #[error(transparent)]
-    Births(#[from] BirthError),
-    /// There is no distribution of birth places in a field of a file.
-    #[error("{}: {problem}", path.display())]
-    BirthsIn {
-        /// The file.
-        path: PathBuf,
-        /// Why.
-        problem: BirthError,
-    },
-    /// An input file is no longer what it was when the run began.
-    #[error("{} was changed after the run began; the events so far have its former content", path.display())]
-    Changed {
-        /// The file.
-        path: PathBuf,
-    },
-}
 
 /// A generator, and what the user should hear about its inputs.
 pub struct Assembled {
@@ -67,7 +38,11 @@ pub fn assemble(plan: &RunPlan) -> Result<Assembled, AssembleError> {
     let source = source::build(&plan.source);
     let places = match &plan.medium {
         None => Places::default(),
-        Some(settings) => places(settings, event_ids(plan).start, &mut warnings)?,
+        Some(settings) => {
+            let fields_act = !settings.effects.is_empty() || plan.record.medium_exit;
+            let first_id = event_ids(plan).start;
+            places(settings, first_id, fields_act, &mut warnings)?
+        }
     };
     let shower = Shower::new(
         &plan.shower,
@@ -107,6 +82,7 @@ struct Places {
 fn places(
     settings: &MediumSettings,
     first_id: i64,
+    fields_act: bool,
     warnings: &mut Vec<String>,
 ) -> Result<Places, AssembleError> {
     match &settings.field.kind {
@@ -118,7 +94,11 @@ fn places(
                 count: files.len(),
                 events_per_field: *events_per_field,
             };
-            several(settings, files, schedule, first_id, warnings)
+            if fields_act || births_follow_the_field(&settings.origin) {
+                several(settings, files, schedule, first_id, warnings)
+            } else {
+                unread(settings, files, schedule)
+            }
         }
         FieldKind::Grid { files, .. } => one(settings, files.first(), warnings),
         _ => one(settings, None, warnings),
@@ -131,7 +111,12 @@ fn one(
     warnings: &mut Vec<String>,
 ) -> Result<Places, AssembleError> {
     let file = file.map(PathBuf::as_path);
-    let Surroundings { field, origin } = surroundings(settings, file, warnings)?;
+    let Surroundings {
+        field,
+        origin,
+        warnings: mut told,
+    } = surroundings(settings, file)?;
+    warnings.append(&mut told);
     Ok(Places {
         medium: Some(Medium::new(settings, Arc::clone(&field))),
         field: Some(field),
@@ -149,18 +134,11 @@ fn several(
     first_id: i64,
     warnings: &mut Vec<String>,
 ) -> Result<Places, AssembleError> {
-    let mut weights = Vec::with_capacity(files.len());
-    let mut seen = Vec::with_capacity(files.len());
-    for file in files {
-        seen.push(version(file));
-        weights.push(weight(&settings.origin, file)?);
-    }
-    let mean = weights.iter().sum::<f64>() / weights.len() as f64;
-    for weight in &mut weights {
-        *weight /= mean;
-    }
+    let seen: Vec<_> = files.iter().map(|file| version(file)).collect();
+    let weights = weights(&settings.origin, files)?;
     let file = &files[schedule.field(first_id)];
-    let mut first = surroundings(settings, Some(file), warnings)?;
+    let mut first = surroundings(settings, Some(file))?;
+    warnings.append(&mut first.warnings);
     let origin = if births_follow_the_field(&settings.origin) {
         None
     } else {
@@ -184,10 +162,34 @@ fn several(
     })
 }
 
+/// Fields of which nothing is needed, as for the vacuum twin: looked at, but not read.
+fn unread(
+    settings: &MediumSettings,
+    files: &[PathBuf],
+    schedule: Schedule,
+) -> Result<Places, AssembleError> {
+    let weights = weights(&settings.origin, files)?;
+    Ok(Places {
+        medium: None,
+        field: None,
+        end_temperature_gev: settings.field.end_temperature_gev,
+        origin: Some(births_alone(settings)?),
+        fields: Some(FieldSeries::unread(schedule, weights)),
+    })
+}
+
 /// Length and time of the last change, where the system tells them.
 fn version(file: &Path) -> Option<(u64, Option<SystemTime>)> {
     let version = |about: Metadata| (about.len(), about.modified().ok());
     file.metadata().ok().map(version)
+}
+
+/// The weight of each field in the sample, mean 1; every file is looked at.
+fn weights(origin: &OriginSettings, files: &[PathBuf]) -> Result<Vec<f64>, AssembleError> {
+    let raw: Result<Vec<_>, _> = files.iter().map(|file| weight(origin, file)).collect();
+    let raw = raw?;
+    let mean = raw.iter().sum::<f64>() / raw.len() as f64;
+    Ok(raw.into_iter().map(|weight| weight / mean).collect())
 }
 
 /// A field counts by its number of collisions where these are the places of birth.

@@ -20,6 +20,9 @@ use super::surroundings::Surroundings;
 /// Fields in memory: the present one and the next.
 const MOST_IN_MEMORY: usize = 2;
 
+/// Warnings about fields beyond this number are not kept.
+const MOST_WARNINGS: usize = 20;
+
 /// What reads a field.
 type Read = Box<dyn Fn(usize) -> Result<Surroundings, FieldReadError> + Send>;
 
@@ -52,6 +55,12 @@ pub struct FieldSeries {
     schedule: Schedule,
     /// One a field, mean 1.
     weights: Vec<f64>,
+    /// `None` where no event needs its field.
+    memory: Option<Memory>,
+}
+
+/// The fields in memory, and the thread that reads them.
+struct Memory {
     shared: Arc<Shared>,
     reader: Option<JoinHandle<()>>,
 }
@@ -103,16 +112,29 @@ impl FieldSeries {
                 claims: BTreeMap::new(),
                 latest_turn: turn,
                 lost: BTreeMap::new(),
+                warnings: Vec::new(),
                 closed: false,
             }),
             changed: Condvar::new(),
         });
         let (reads, read): (_, Read) = (Arc::clone(&shared), Box::new(read));
+        let reader = std::thread::spawn(move || reads.read_on(&read));
         FieldSeries {
             schedule,
             weights,
-            shared,
-            reader: Some(std::thread::spawn(move || reads.read_on(&read))),
+            memory: Some(Memory {
+                shared,
+                reader: Some(reader),
+            }),
+        }
+    }
+
+    /// A series whose fields no event needs, and that are never read.
+    pub fn unread(schedule: Schedule, weights: Vec<f64>) -> FieldSeries {
+        FieldSeries {
+            schedule,
+            weights,
+            memory: None,
         }
     }
 
@@ -126,16 +148,25 @@ impl FieldSeries {
         &self.weights
     }
 
-    /// Holds the field of an event; waits until it is in memory. Who waits must hold nothing of another turn.
+    /// Holds the field of an event; waits until it is in memory. Who waits must hold nothing of another turn. `None` where
+    /// no event needs its field.
     ///
     /// # Errors
     /// [`LostField`] where the field cannot be read.
-    pub fn claim(&self, id: i64) -> Result<Claim, LostField> {
-        Claim::wait(&self.shared, self.schedule.turn(id))
+    pub fn claim(&self, id: i64) -> Result<Option<Claim>, LostField> {
+        let memory = self.memory.as_ref();
+        let claim = memory.map(|memory| Claim::wait(&memory.shared, self.schedule.turn(id)));
+        claim.transpose()
+    }
+
+    /// What the user should hear of the fields that were read after the start, each thing once.
+    pub fn warnings(&self) -> Vec<String> {
+        let memory = self.memory.as_ref();
+        memory.map_or(Vec::new(), |memory| memory.shared.state().warnings.clone())
     }
 }
 
-impl Drop for FieldSeries {
+impl Drop for Memory {
     fn drop(&mut self) {
         self.shared.change(|state| state.closed = true);
         // A field that is being read is read to its end: HDF5 must not be left in the middle of a call.
@@ -216,6 +247,7 @@ struct State {
     latest_turn: u64,
     /// Fields that cannot be had.
     lost: BTreeMap<usize, LostField>,
+    warnings: Vec<String>,
     closed: bool,
 }
 
@@ -247,6 +279,15 @@ impl State {
             self.claims.remove(&turn);
         }
         self.latest_turn = self.latest_turn.max(turn);
+    }
+
+    /// A field that is read again has the same to say again.
+    fn note(&mut self, warnings: Vec<String>) {
+        for warning in warnings {
+            if self.warnings.len() < MOST_WARNINGS && !self.warnings.contains(&warning) {
+                self.warnings.push(warning);
+            }
+        }
     }
 
     /// The fields that should be in memory, the most urgent first: those of the earliest turns claimed, then the next.
@@ -319,7 +360,10 @@ impl Shared {
                 let place = state.slots.iter().position(|slot| slot.field == field);
                 let place = place.expect("the slot of a field that is being read stays");
                 match outcome {
-                    Ok(surroundings) => state.slots[place].content = Some(Arc::new(surroundings)),
+                    Ok(mut surroundings) => {
+                        state.note(std::mem::take(&mut surroundings.warnings));
+                        state.slots[place].content = Some(Arc::new(surroundings));
+                    }
                     Err(lost) => {
                         state.slots.swap_remove(place);
                         state.lost.insert(field, lost);
@@ -409,7 +453,12 @@ mod tests {
         Surroundings {
             field: Arc::new(Marked { field, living }),
             origin: None,
+            warnings: vec![format!("field {field} is warm")],
         }
+    }
+
+    fn claimed(series: &FieldSeries, id: i64) -> Claim {
+        series.claim(id).unwrap().expect("the fields are read")
     }
 
     /// A series whose fields `spoilt` cannot be read, and whose reader panics at `fatal`.
@@ -451,11 +500,17 @@ mod tests {
         for id in 0..60 {
             if !claim.as_ref().is_some_and(|claim| claim.covers(id)) {
                 drop(claim.take());
-                claim = Some(series.claim(id).unwrap());
+                claim = Some(claimed(&series, id));
             }
             assert_eq!(field_of(claim.as_ref().unwrap()), (id as usize / 5) % 3);
         }
         drop(claim);
+        // The first field's were told when it was read.
+        assert_eq!(
+            series.warnings()[..2],
+            ["field 1 is warm", "field 2 is warm"]
+        );
+        assert!(series.warnings().len() <= 3);
         drop(series);
         assert!(living.most.load(Ordering::SeqCst) <= MOST_IN_MEMORY);
         assert_eq!(living.now.load(Ordering::SeqCst), 0);
@@ -469,7 +524,7 @@ mod tests {
         let living = Arc::new(Living::default());
         let series = series(schedule(2, 1), &living, &[], None);
         for id in 0..40 {
-            assert_eq!(field_of(&series.claim(id).unwrap()), id as usize % 2);
+            assert_eq!(field_of(&claimed(&series, id)), id as usize % 2);
         }
         drop(series);
         assert_eq!(living.reads.load(Ordering::SeqCst), 1);
@@ -479,7 +534,7 @@ mod tests {
     fn the_next_field_is_read_before_anyone_asks() {
         let living = Arc::new(Living::default());
         let series = series(schedule(5, 1000), &living, &[], None);
-        let _claim = series.claim(0).unwrap();
+        let _claim = claimed(&series, 0);
         let start = Instant::now();
         while living.now.load(Ordering::SeqCst) < 2 {
             assert!(
@@ -511,7 +566,7 @@ mod tests {
                                 let id = id as i64;
                                 if !claim.as_ref().is_some_and(|claim| claim.covers(id)) {
                                     drop(claim.take());
-                                    claim = Some(series.claim(id).unwrap());
+                                    claim = Some(claimed(&series, id));
                                 }
                                 let expected = id as usize / events_per_field as usize % count;
                                 assert_eq!(field_of(claim.as_ref().unwrap()), expected);
@@ -531,24 +586,31 @@ mod tests {
     fn a_field_that_cannot_be_read_is_told_to_who_needs_it_alone() {
         let living = Arc::new(Living::default());
         let series = series(schedule(3, 10), &living, &[1], None);
-        drop(series.claim(9).unwrap());
+        drop(claimed(&series, 9));
         for id in [10, 19, 40] {
             let lost = series.claim(id).err().expect("field 1 is spoilt");
             assert!(lost.to_string().contains("field 1: told to fail"), "{lost}");
         }
-        assert_eq!(field_of(&series.claim(20).unwrap()), 2);
+        assert_eq!(field_of(&claimed(&series, 20)), 2);
     }
 
     #[test]
     fn a_panic_of_the_reader_is_told() {
         let living = Arc::new(Living::default());
         let series = series(schedule(3, 10), &living, &[], Some(2));
-        drop(series.claim(10).unwrap());
+        drop(claimed(&series, 10));
         let lost = series.claim(20).err().expect("the reader panics");
         assert!(
             matches!(&lost, LostField::Panicked { index: 2, .. }),
             "{lost}"
         );
-        assert_eq!(field_of(&series.claim(30).unwrap()), 0);
+        assert_eq!(field_of(&claimed(&series, 30)), 0);
+    }
+
+    #[test]
+    fn fields_that_nobody_needs_are_not_read() {
+        let series = FieldSeries::unread(schedule(3, 10), vec![1.0; 3]);
+        assert!(series.claim(20).unwrap().is_none());
+        assert_eq!(series.schedule().field(20), 2);
     }
 }

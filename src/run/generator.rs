@@ -55,9 +55,9 @@ impl EventWorker {
             return Ok(());
         }
         self.leave();
-        let claim = fields.claim(id)?;
-        self.walker.field = Some(Arc::clone(&claim.surroundings().field));
-        self.claim = Some(claim);
+        self.claim = fields.claim(id)?;
+        let claim = self.claim.as_ref();
+        self.walker.field = claim.map(|claim| Arc::clone(&claim.surroundings().field));
         Ok(())
     }
 }

@@ -4,6 +4,7 @@
 //! events, and everything that is added up over events is added in ascending event number.
 
 pub mod assemble;
+pub mod assemble_error;
 mod block;
 mod clock;
 pub mod exits;

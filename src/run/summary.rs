@@ -121,7 +121,8 @@ pub struct ChannelSummary {
     pub acceptance: Option<f64>,
     /// Trials above their envelope.
     pub overshoots: u64,
-    /// Share of the effect's branchings that the limit to small angles cut away; `None` for the vacuum.
+    /// Share of the effect's branchings that the limit to small angles cut away; `None` where it cut nothing, and for
+    /// effects whose spectrum ends at small angles by itself.
     pub share_cut_by_angle_limit: Option<f64>,
     /// Share of what the effect did (branchings that it made or let pass, partons that it acted on) outside the regime
     /// of its model; `None` for the vacuum and for an effect that did nothing.
@@ -213,7 +214,7 @@ impl RunSummary {
             .filter(|channel| channel.overshoots > 0)
         {
             warnings.push(format!(
-                "channel {}: {} of {} trials had a density below zero or above its envelope; the event weights carry it and stay exact in the mean (below zero is what soft-gradient does; above the envelope deserves a report)",
+                "channel {}: {} of {} trials had a density below zero or above its envelope; the event weights carry it and stay exact in the mean (below zero is what effects do that thin the vacuum by more than there is; above the envelope deserves a report)",
                 channel.name, channel.overshoots, channel.trials
             ));
         }
@@ -296,7 +297,7 @@ impl ChannelSummary {
             acceptance: ratio(counts.accepted as f64, counts.trials as f64),
             overshoots: counts.overshoots,
             share_cut_by_angle_limit: ratio(cut, cut + counts.accepted as f64)
-                .filter(|_| regime.is_some() && counts.trials > 0),
+                .filter(|_| regime.is_some() && counts.cut_units > 0),
             share_outside_regime: ratio(counts.outside_regime as f64, counts.accepted as f64)
                 .filter(|_| regime.is_some()),
             regime,

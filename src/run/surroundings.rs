@@ -3,12 +3,10 @@
 use std::path::Path;
 use std::sync::Arc;
 
-use super::assemble::AssembleError;
+use super::assemble_error::AssembleError;
 use super::origins::{FieldView, births};
-use crate::files::field_file::{FieldFileError, read_field};
-use crate::medium::field::{
-    Brick, FieldData, Grid, Longitudinal, Radial, TemperatureField, placed,
-};
+use crate::files::field_file::{FieldFileError, LoadedGrid, read_grid};
+use crate::medium::field::{FieldData, Grid, TemperatureField, analytic, placed};
 use crate::medium::origin::{Origin, Placement, TemperatureSlice};
 use crate::medium::{FieldKind, FieldSettings, MediumSettings, OriginSettings};
 
@@ -25,6 +23,8 @@ pub struct Surroundings {
     pub field: Arc<dyn TemperatureField>,
     /// Where jets are born, `None` where that does not depend on the field.
     pub origin: Option<Arc<dyn Origin>>,
+    /// What the user should hear.
+    pub warnings: Vec<String>,
 }
 
 /// Whether each field has places of birth of its own.
@@ -37,30 +37,33 @@ pub fn births_follow_the_field(origin: &OriginSettings) -> bool {
     }
 }
 
-/// Builds the field (that of `file` where it is a grid) with the places of birth, and adds what the user should hear.
+/// Builds the field (that of `file` where it is a grid) with the places of birth.
 ///
 /// # Errors
 /// [`AssembleError`] where a file cannot be used or the field has no places of birth.
 pub fn surroundings(
     settings: &MediumSettings,
     file: Option<&Path>,
-    warnings: &mut Vec<String>,
 ) -> Result<Surroundings, AssembleError> {
-    let (data, tabulated) = read(settings, file)?;
+    let loaded = file.map(|file| read(settings, file)).transpose()?;
+    let (grid, data) = loaded
+        .map(|loaded| (loaded.grid, loaded.first_slice))
+        .unzip();
+    let tabulated = compared_with_births(settings).then(|| first_slice(&settings.field));
     let view = view(settings, data.as_ref(), tabulated.as_ref());
-    let origin = births(&settings.origin, &view, warnings).map_err(|problem| match file {
-        None => AssembleError::Births(problem),
-        Some(path) => AssembleError::BirthsIn {
+    let mut warnings = Vec::new();
+    let origin = births(&settings.origin, &view, &mut warnings);
+    let origin = origin.map_err(|problem| match file {
+        Some(path) if births_follow_the_field(&settings.origin) => AssembleError::BirthsIn {
             path: path.to_owned(),
             problem,
         },
+        _ => AssembleError::Births(problem),
     })?;
-    if let (Some(data), Some(path)) = (&data, file) {
-        let named = |words: &String| format!("{}: {words}", path.display());
-        warnings.extend(data.warnings.iter().map(named));
-    }
+    warnings.extend(data.iter().flat_map(|data| data.warnings.iter().cloned()));
     Ok(Surroundings {
-        field: temperature_field(&settings.field, data),
+        warnings: named(file, warnings),
+        field: temperature_field(&settings.field, grid),
         origin: Some(Arc::from(origin)),
     })
 }
@@ -71,23 +74,50 @@ pub fn surroundings(
 /// As [`surroundings`].
 pub fn one_more(settings: &MediumSettings, file: &Path) -> Result<Surroundings, AssembleError> {
     if births_follow_the_field(&settings.origin) {
-        return surroundings(settings, Some(file), &mut Vec::new());
+        return surroundings(settings, Some(file));
     }
-    let (data, _) = read(settings, Some(file))?;
+    let LoadedGrid { grid, first_slice } = read(settings, file)?;
     Ok(Surroundings {
-        field: temperature_field(&settings.field, data),
+        warnings: named(Some(file), first_slice.warnings),
+        field: temperature_field(&settings.field, Some(grid)),
         origin: None,
     })
 }
 
-fn read(
-    settings: &MediumSettings,
-    file: Option<&Path>,
-) -> Result<(Option<FieldData>, Option<TemperatureSlice>), FieldFileError> {
-    let data = file.map(read_field).transpose()?;
+fn read(settings: &MediumSettings, file: &Path) -> Result<LoadedGrid, FieldFileError> {
+    let field = &settings.field;
+    read_grid(file, field.end_temperature_gev, field.hold_before_start)
+}
+
+/// Where jets are born, as far as no field is needed for it.
+///
+/// # Errors
+/// [`AssembleError::Births`] where the settings or the list give no distribution.
+pub fn births_alone(settings: &MediumSettings) -> Result<Arc<dyn Origin>, AssembleError> {
+    let view = view(settings, None, None);
+    let origin = births(&settings.origin, &view, &mut Vec::new())?;
+    Ok(Arc::from(origin))
+}
+
+/// Warnings about a file, with its name.
+fn named(file: Option<&Path>, warnings: Vec<String>) -> Vec<String> {
+    match file {
+        None => warnings,
+        Some(path) => {
+            let named = |words: String| format!("{}: {words}", path.display());
+            warnings.into_iter().map(named).collect()
+        }
+    }
+}
+
+/// Whether an analytic field is looked at across the beam: it weights births, or its plane is compared with theirs.
+fn compared_with_births(settings: &MediumSettings) -> bool {
     let is_radial = matches!(settings.field.kind, FieldKind::Radial { .. });
-    let tabulated = is_radial.then(|| first_slice(&settings.field));
-    Ok((data, tabulated))
+    let is_looked_at = matches!(
+        settings.origin,
+        OriginSettings::FieldWeighted { .. } | OriginSettings::Overlap { .. }
+    );
+    is_radial && is_looked_at
 }
 
 fn view<'a>(
@@ -125,29 +155,9 @@ fn first_slice(settings: &FieldSettings) -> TemperatureSlice {
     TemperatureSlice::tabulated(rim_fm, SLICE_POINTS, at)
 }
 
-fn temperature_field(
-    settings: &FieldSettings,
-    data: Option<FieldData>,
-) -> Arc<dyn TemperatureField> {
-    let hold = settings.hold_before_start;
-    let field: Arc<dyn TemperatureField> = match &settings.kind {
-        FieldKind::Brick {
-            temperature_gev,
-            length_fm,
-        } => Arc::new(Brick::new(*temperature_gev, *length_fm)),
-        FieldKind::Longitudinal {
-            temperature_gev,
-            start_fm,
-        } => Arc::new(Longitudinal::new(*temperature_gev, *start_fm).hold_before_start(hold)),
-        FieldKind::Radial {
-            amplitude,
-            q_per_fm,
-            start_fm,
-        } => Arc::new(Radial::new(*amplitude, *q_per_fm, *start_fm).hold_before_start(hold)),
-        FieldKind::Grid { .. } => {
-            let data = data.expect("a grid's file was read before");
-            Arc::new(Grid::held(data, settings.end_temperature_gev, hold))
-        }
-    };
-    placed(field, settings.rotation_rad, settings.shift_fm)
+fn temperature_field(settings: &FieldSettings, grid: Option<Grid>) -> Arc<dyn TemperatureField> {
+    match grid {
+        Some(grid) => placed(Arc::new(grid), settings.rotation_rad, settings.shift_fm),
+        None => analytic(settings).expect("a grid's file was read before"),
+    }
 }

@@ -10,6 +10,7 @@
 
 pub mod accept;
 pub mod counters;
+pub mod evolution;
 pub mod kinematics;
 pub mod leg;
 pub mod ordering;
@@ -22,10 +23,11 @@ use crate::medium::{Medium, Placed};
 use crate::qcd::{Coupling, CouplingError, CouplingSettings};
 use crate::random::{Key, Purpose};
 use crate::source::HardProcess;
-use leg::{Branching, Evolution};
+use evolution::{Evolution, Tools};
+use leg::Branching;
 use proposal::FractionRange;
 use proposal::staircase::{FlavourRule, Staircase, VacuumRate};
-use tree::{Record, TooManyBranchings, Tools, Walker};
+use tree::{Record, TooManyBranchings, Walker};
 
 /// The shower's choices.
 #[derive(Clone, Debug, PartialEq)]
@@ -118,14 +120,12 @@ impl Shower {
         largest_virtuality_gev: f64,
     ) -> Result<Shower, CouplingError> {
         let end_t_gev2 = settings.virtuality_cutoff_gev * settings.virtuality_cutoff_gev;
-        let rate = VacuumRate {
-            coupling: Coupling::new(coupling)?,
-            range: FractionRange {
-                end_t_gev2,
-                kind: settings.z_range,
-            },
-            flavours: FlavourRule::new(settings, coupling.quark_masses_gev),
+        let range = FractionRange {
+            end_t_gev2,
+            kind: settings.z_range,
         };
+        let flavours = FlavourRule::new(settings, coupling.quark_masses_gev);
+        let rate = VacuumRate::new(Coupling::new(coupling)?, range, flavours);
         let largest_t = largest_virtuality_gev * largest_virtuality_gev;
         let stairs =
             [false, true].map(|is_gluon| Staircase::new(&rate, settings, is_gluon, largest_t));

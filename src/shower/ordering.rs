@@ -4,9 +4,9 @@
 //! evolution below its present t_i, until the pair fits (a family of prescriptions published by Bengtsson & Sjostrand
 //! 1987, Nucl. Phys. B 289:810; from memory). Redrawing the pair instead would change the no-branching probability.
 
+use super::evolution::Tools;
 use super::kinematics::relative_transverse_gev2;
 use super::leg::{Branching, Leg, Tally};
-use super::tree::Tools;
 
 /// What two partons made together must obey.
 #[derive(Clone, Copy, Debug, PartialEq)]

@@ -8,10 +8,11 @@ use thiserror::Error;
 use std::f64::consts::TAU;
 use std::sync::Arc;
 
+use super::evolution::Tools;
 use super::kinematics::{Frame, Place, direction, relative_transverse_gev2};
-use super::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
+use super::leg::{AngularOrder, Branching, Entrance, Leg, Tally};
 use super::ordering::{Constraint, settle};
-use super::{Lifetime, Ordering, ShowerSettings};
+use super::{Lifetime, Ordering};
 use crate::event::{
     CHANNEL_FIRST_EFFECT, CHANNEL_HARD_PROCESS, CHANNEL_VACUUM, NO_PARENT, Parton, Status,
 };
@@ -224,7 +225,7 @@ impl Walker {
                 key,
                 largest_t_gev2: largest_t,
                 energy_gev: parton.energy_gev,
-                ray: &Ray {
+                ray: Ray {
                     birth_fm: origin_fm,
                     direction: parton.direction,
                 },
@@ -359,7 +360,7 @@ impl Walker {
                 key: keys[daughter],
                 largest_t_gev2: largest_t[daughter],
                 energy_gev: momentum[3],
-                ray: &ray,
+                ray,
             };
             self.legs[daughter].enter_medium(tools, &entrance, &mut self.tally);
         }
@@ -600,24 +601,5 @@ fn splitting(parent: Species, daughters: [Species; 2]) -> Splitting {
         (false, _) => Splitting::QuarkToQuarkGluon,
         (true, true) => Splitting::GluonToGluons,
         (true, false) => Splitting::GluonToQuarks,
-    }
-}
-
-/// What a walk reads but never changes.
-#[derive(Clone, Copy)]
-pub struct Tools<'a> {
-    /// The temperature field of the event, where it is not the medium's own.
-    pub field: Option<&'a dyn TemperatureField>,
-    /// Rates, envelopes, medium.
-    pub evolution: &'a Evolution,
-    /// The shower's choices.
-    pub settings: &'a ShowerSettings,
-}
-
-impl<'a> Tools<'a> {
-    /// The temperature field of the event.
-    #[inline]
-    pub fn field(self, medium: &'a Medium) -> &'a dyn TemperatureField {
-        self.field.unwrap_or_else(|| medium.field())
     }
 }

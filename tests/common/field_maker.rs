@@ -7,7 +7,10 @@ use std::str::FromStr;
 use hdf5::types::VarLenUnicode;
 use hdf5::{Dataset, File, H5Type};
 use hdf5_sys::h5::herr_t;
+use hdf5_sys::h5d::H5Dwrite;
 use hdf5_sys::h5i::hid_t;
+use hdf5_sys::h5p::H5P_DEFAULT;
+use hdf5_sys::h5s::{H5S_seloper_t, H5Sselect_hyperslab};
 
 unsafe extern "C" {
     fn H5DSset_scale(dataset: hid_t, name: *const c_char) -> herr_t;
@@ -109,4 +112,36 @@ pub fn number<T: H5Type>(place: &Dataset, name: &str, value: T) {
     // netCDF writes numbers as lists of one
     let attribute = place.new_attr::<T>().shape([1]).create(name).unwrap();
     attribute.write_raw(&[value]).unwrap();
+}
+
+/// Writes whole planes along the first axis of a three-dimensional dataset of single precision.
+pub fn write_planes(dataset: &Dataset, first: usize, count: usize, values: &[f32]) {
+    let shape = dataset.shape();
+    assert!(values.len() == count * shape[1] * shape[2] && first + count <= shape[0]);
+    let lengths = [count, shape[1], shape[2]];
+    let offset = [first as u64, 0, 0];
+    let counts = lengths.map(|length| length as u64);
+    let file_space = dataset.space().unwrap();
+    let memory_space = hdf5::Dataspace::try_new(&lengths[..]).unwrap();
+    let memory_type = hdf5::Datatype::from_type::<f32>().unwrap();
+    // SAFETY: all handles are open, the selection lies inside and has as many elements as `values`.
+    let outcome = hdf5::sync::sync(|| unsafe {
+        H5Sselect_hyperslab(
+            file_space.id(),
+            H5S_seloper_t::H5S_SELECT_SET,
+            offset.as_ptr(),
+            std::ptr::null(),
+            counts.as_ptr(),
+            std::ptr::null(),
+        );
+        H5Dwrite(
+            dataset.id(),
+            memory_type.id(),
+            memory_space.id(),
+            file_space.id(),
+            H5P_DEFAULT,
+            values.as_ptr().cast(),
+        )
+    });
+    assert!(outcome >= 0);
 }

@@ -184,9 +184,9 @@ fn compare(block: &EventBlock, end_fm: impl Fn(&Parton) -> Option<f64>) -> [usiz
         counts[1] += usize::from(row.momentum_gev[3] < 2.0);
         let [px, py, pz, _] = row.momentum_gev;
         let direction = [1.0, px / size(row), py / size(row), pz / size(row)];
-        for axis in 0..4 {
-            let place = f64::from(row.birth_fm[axis]) + direction[axis] * l;
-            let found = f64::from(exit.place_fm[axis]);
+        for ((birth, direction), found) in row.birth_fm.iter().zip(direction).zip(exit.place_fm) {
+            let place = f64::from(*birth) + direction * l;
+            let found = f64::from(found);
             let allowed = 2.0 * CLOSE * l + SINGLE * place.abs();
             assert!(
                 (found - place).abs() <= allowed,

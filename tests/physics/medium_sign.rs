@@ -20,10 +20,11 @@ use spindrift::qcd::Species;
 use spindrift::random::Key;
 use spindrift::shower::ShowerSettings;
 use spindrift::shower::counters::ShowerCounters;
+use spindrift::shower::evolution::Evolution;
+use spindrift::shower::evolution::Tools;
 use spindrift::shower::kinematics::relative_transverse_gev2;
-use spindrift::shower::leg::{AngularOrder, Branching, Entrance, Evolution, Leg, Tally};
+use spindrift::shower::leg::{AngularOrder, Branching, Entrance, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
-use spindrift::shower::tree::Tools;
 
 use super::support::first_branching::weighted_pulls;
 use super::support::reference::{self, number};
@@ -177,7 +178,7 @@ impl Pair {
                 key,
                 largest_t_gev2: largest_t,
                 energy_gev: self.energies_gev[place],
-                ray: &ray,
+                ray,
             };
             leg.enter_medium(self.tools(), &entrance, tally);
         }

@@ -13,8 +13,8 @@ use spindrift::qcd::{CouplingSettings, Loops, ScaleArgument, Species};
 use spindrift::random::Key;
 use spindrift::shower::FlavourOpening;
 use spindrift::shower::counters::ShowerCounters;
+use spindrift::shower::evolution::Tools;
 use spindrift::shower::leg::{AngularOrder, Leg, Tally};
-use spindrift::shower::tree::Tools;
 
 use super::support::setup::{ALPHA_S, Setup, fixed, running, up};
 use super::support::statistics::{LARGEST_PULL, Mean};

@@ -91,11 +91,7 @@ fn vacuum_trial(bencher: Bencher, species: &str) {
         kind: ZRange::Kinematic,
     };
     let flavours = FlavourRule::new(&SETTINGS, QUARK_MASSES_GEV);
-    let rate = VacuumRate {
-        coupling: coupling(Loops::One),
-        range,
-        flavours,
-    };
+    let rate = VacuumRate::new(coupling(Loops::One), range, flavours);
     let stairs = Staircase::new(&rate, &SETTINGS, species == "gluon", 1e4);
     let mut stream = Key::event(1, 2).stream(Purpose::VACUUM);
     let start = stairs.height(1e4).expect("above the cutoff");

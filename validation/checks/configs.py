@@ -4,6 +4,7 @@ import json
 
 import jsonschema
 
+from checks import schema_agreement
 from checks.program import changed
 
 
@@ -73,6 +74,18 @@ def bad_configs(program):
     yield "too-wide-window", changed(base, medium__effects=[{"kind": "collinear-expansion", "phase": "rescattering", "window": 1.25}]), "window", False
     yield "whose-qhat", changed(base, medium__transport__for=None), "for", True
     yield "collinear-medium", changed(base, shower__ordering="collinear"), "collinear", False
+    field = base["medium"]["field"]["file"]
+    radial = {"kind": "radial", "amplitude": 3.0, "q_per_fm": 0.25}
+    yield "radial-without-start", changed(base, medium__field=radial), "start_fm", True
+    yield "two-ways-to-name-files", changed(base, medium__field__files=[field]), "files", True
+    yield "no-file", changed(base, medium__field__file=None), "file", True
+    yield "how-many-events", changed(base, medium__field={"kind": "grid", "files": [field]}), "events_per_field", True
+    yield "events-of-one-field", changed(base, medium__field__events_per_field=5), "events_per_field", True
+    yield "degrees", changed(base, medium__field__rotation_rad=90), "radians", True
+    yield "thermal-for", changed(base, medium__transport={"kind": "thermal", "alpha_s": 0.3, "for": "gluon"}), "for", True
+    yield "nucleus-without-radius", changed(base, medium__origin={"kind": "overlap", "nucleus": "custom", "diffuseness_fm": 0.5, "impact_parameter_fm": 7}), "radius_fm", True
+    yield "enhancement-of-nothing", changed(base, medium__effects=[{"kind": "singular-enhancement"}]), "factor", True
+    yield "no-match", changed(base, medium__field={"kind": "grid", "files": "no-such/*.h5", "events_per_field": 5}), "no-such", False
     yield "absent-field", changed(base, medium__field__file="no-such-field.h5"), "no-such-field.h5", False
 
 
@@ -87,6 +100,18 @@ def check_bad_configs(program):
         assert word in words, f"{name}: the complaint does not say '{word}': {words}"
         assert "panicked" not in words, words
         assert not out.exists(), f"{name}: an output was left"
+
+
+def check_schema_and_checker_agree(program):
+    """The schema refuses what the program refuses, as far as one section goes."""
+    fields = []
+    for place in range(3):
+        fields.append(str(program.work / f"agreement-{place}.h5"))
+        (program.work / fields[-1]).write_text(str(place))
+    places, table = program.work / "agreement-places.csv", program.work / "agreement-qhat.csv"
+    places.write_text("x_fm,y_fm,weight\n0,0,1\n")
+    table.write_text("temperature_GeV,qhat_GeV2_per_fm\n0.1,0.1\n0.5,8\n")
+    schema_agreement.check_schema_and_checker_agree(program, schema(program), (fields, str(places), str(table)))
 
 
 def check_broken_json(program):
@@ -113,7 +138,7 @@ def check_later_keys(program):
     later = {
         "annihilation": {**base, "source": {"kind": "annihilation", "sqrt_s_GeV": 91.1876}},
         "variations": {**base, "variations": [{"name": "stronger", "transport_factor": 1.5}]},
-        "angular": changed(base, shower__ordering="angular"),
+        "massive": changed(base, shower__quark_masses="massive"),
     }
     for name, config in later.items():
         program.run("generate", program.write_config(f"later-{name}", config), "--out", program.work / "never.h5", "--quiet", expect=2)

@@ -1,5 +1,7 @@
 """Temperature fields as people write them with xarray, good and bad, and what the program says to each."""
 
+import xml.etree.ElementTree
+
 import h5py
 import numpy as np
 import xarray as xr
@@ -128,6 +130,32 @@ def check_flow_and_rapidity(program):
         assert share > SAME_SHARE, f"four- and three-velocities: {share:.3f} agree"
         assert same_share(tables["flow", engine], tables["density", engine]) == 1.0
     assert same_share(tables["flow", "h5netcdf"], tables["flow", "netcdf4"]) == 1.0
+
+
+def check_made_field(program):
+    """`field make` writes a file that xarray opens: axes, units, and the radial solution's numbers (arXiv:1006.0006)."""
+    amplitude, q, start = 80.0**0.25, 1.0 / 4.3, 0.6
+    config = changed(program.config("brick.json"), medium__field={"kind": "radial", "amplitude": amplitude, "q_per_fm": q, "start_fm": start})
+    path, out = program.write_config("made", config), program.work / "made-field.h5"
+    program.run("field", "make", path, "--out", out, "--extent-fm", 6, "--spacing-fm", 0.5, "--last-tau-fm", 4.6)
+    with xr.open_dataset(out, engine="h5netcdf") as field:
+        assert field["temperature"].dims == ("tau", "x", "y") and field["temperature"].attrs["units"] == "GeV"
+        assert all(field[axis].attrs["units"] == "fm" for axis in ("tau", "x", "y"))
+        assert field["tau"].values[[0, -1]].tolist() == [start, 4.6] and field["x"].size == 25
+        tau, x, y = xr.broadcast(field["tau"], field["x"], field["y"])
+        a, b = (q * tau) ** 2, q**2 * (x**2 + y**2)
+        spread = 1.0 + 2.0 * (a + b) + (a - b) ** 2
+        temperature = amplitude * HBAR_C_GEV_FM * (4.0 * q**2 / (tau * spread)) ** (1 / 3)
+        np.testing.assert_allclose(field["temperature"], temperature, rtol=2e-7)
+        # the transverse rapidity is artanh of v = 2 q^2 tau r/(1 + a + b)
+        radius = np.sqrt(x**2 + y**2)
+        u = np.sinh(np.arctanh(2.0 * q**2 * tau * radius / (1.0 + a + b)))
+        for name, axis in (("ux", x), ("uy", y)):
+            np.testing.assert_allclose(field[name] * radius, u * axis, rtol=1e-6, atol=1e-6)
+    picture = program.work / "made-field.svg"
+    program.run("field", "check", out, "--picture", picture)
+    root = xml.etree.ElementTree.parse(picture).getroot()
+    assert root.tag.endswith("svg") and "made-field.h5" in root[0].text
 
 
 def bad_fields():

@@ -201,7 +201,8 @@ def multiplicity_checks(program):
         # A pair's start virtuality may not exceed the energy of either parton; the table goes beyond.
         allowed = case["source"].get("sqrt_s_GeV", math.inf) / 2.0
         if "joint" in case["daughters_start_at"] and case["start_virtuality_GeV"] <= allowed:
-            yield f"multiplicity, {case['source']['kind']} {label(case)}", check_multiplicity, program, case
+            ordering = "angular" if "angles" in case["daughters_start_at"] else "virtuality"
+            yield f"multiplicity, {case['source']['kind']} {label(case)} {ordering}", check_multiplicity, program, case
 
 
 def check_multiplicity(program, case):
@@ -212,6 +213,8 @@ def check_multiplicity(program, case):
         partons = ["u", "ubar"] if case["parton"] == "quark" else ["g", "g"]
         sqrt_s, start = case["source"]["sqrt_s_GeV"], case["start_virtuality_GeV"]
         config["source"] = {"kind": "pair", "partons": partons, "sqrt_s_GeV": sqrt_s, "start_virtuality_GeV": start}
+    if "angles" in case["daughters_start_at"]:
+        config["shower"]["ordering"] = "angular"
     partons, _ = jagged(program.generate("physics-multiplicity", config, EVENTS))
     final = partons[partons.status == FINAL]
     x = final.jet_fraction

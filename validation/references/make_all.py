@@ -15,8 +15,8 @@ import quadrature
 
 QUICK = ("coupling", "collinear_moments", "timelike_evolution", "first_branching", "thermal_transport", "thermal")
 # Of these some cases are recomputed; each names them and offers cases(chosen).
-PARTLY = ("rate_effects", "radial_paths", "path_effects", "expanding_scaling")
-SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower", "overlap")
+PARTLY = ("rate_effects", "radial_paths", "path_effects", "expanding_scaling", "energy_loss")
+SLOW = ("no_branching", "longitudinal", "medium", "virtuality_shower", "overlap", "multiple_soft_spectrum", "single_hard_spectrum")
 # Numbers are stored to 12 digits, long columns to 8.
 RELATIVE_TOLERANCE, ABSOLUTE_TOLERANCE = 1e-7, 1e-9
 # Twice what linear interpolation costs in a stored curve.

@@ -41,8 +41,8 @@ from quadrature import gauss
 NODES, WEIGHTS = gauss(12)
 # Below this ratio of the range of d to |b| the two ends of the antiderivative cancel: Gauss in d instead.
 CANCELLING = 0.3
-# The integrand is gone where x/D has a real part beyond half of this.
-GONE = 80.0
+# The integrand is gone where its exponents add up to this.
+GONE = 42.0
 # Beyond this many radians an oscillation is gone from both spectra.
 RINGING = 80.0
 
@@ -54,17 +54,25 @@ def frequency(e):
 
 def time_edges(e, x):
     """Ends of panels in tau. The integrand is analytic below the real axis, where its oscillation decays: the way goes
-    from 0 down to a(1 - i), at which W tau is imaginary, and from there, if anything is left, back to 1."""
-    turn = min(0.5, GONE * e / x)
+    from 0 down to a(1 - i), at most (1 - i)/2, along which W tau is imaginary, and from there, if anything is left, to 1."""
+    fine = 0.5 * np.linspace(0.0, 1.0, 801)[1:] ** 4
+    decay = 2.0 * fine / math.sqrt(2.0 * e)
+    # Along this way -b = e W coth: the exponents at the two ends of the integral over ybar, and 1/sinh^2.
+    bottom = e * frequency(e) / np.tanh(decay)
+    weakest = np.minimum((x / bottom).real, (x / (1.0 - fine * (1.0 - 1.0j) + bottom)).real)
+    # At tau = 1, on the real axis again, little may be damped where e is large.
+    at_end = (1j * x * np.tan(frequency(e)) / (e * frequency(e))).real + 2.0 * decay[-1]
+    over = np.flatnonzero((weakest + 2.0 * decay > GONE) & (at_end > GONE))
+    turn = fine[over[0]] if over.size else 0.5
     smallest = 0.2 * min(e, math.sqrt(e), e / x, turn)
-    fine = np.linspace(0.0, 1.0, 2001) ** 3 * turn
     # One panel a unit of this.
-    measure = 1.5 * np.log1p(fine / smallest) + fine * x / (1.5 * e) + 2.0 * fine * abs(frequency(e))
-    count = int(math.ceil(measure[-1])) + 1
-    down = np.interp(np.linspace(0.0, measure[-1], count + 1), measure, fine) * (1.0 - 1.0j)
-    if turn < 0.5:
+    measure = 1.5 * np.log1p(fine / smallest) + x / (1.5 * e) * math.sqrt(0.5 * e) * np.tanh(decay) + 1.5 * decay + 2.0 * np.minimum(x, 30.0) * fine
+    fine, measure = np.concatenate([[0.0], fine]), np.concatenate([[0.0], measure])
+    last = float(np.interp(turn, fine, measure))
+    down = np.interp(np.linspace(0.0, last, int(math.ceil(last)) + 2), measure, fine) * (1.0 - 1.0j)
+    if over.size:
         return down
-    back = down[-1] + (1.0 - down[-1]) * np.linspace(0.0, 1.0, 3 + int(2.0 * abs(frequency(e)) + 0.5 * x / e))
+    back = down[-1] + (1.0 - down[-1]) * np.linspace(0.0, 1.0, 3 + int(2.0 * abs(frequency(e)) + 0.5 * min(x, 100.0) / min(e, 1.0) ** 0.5))
     return np.concatenate([down, back[1:]])
 
 
@@ -86,15 +94,21 @@ def times_inside(tau, e, x):
     return -((w / sine) ** 2) * inner
 
 
-def multiple_soft(e, x):
-    """h of multiple soft scattering at omega = e omega_c, k^2 = x qhat L."""
-    edges = time_edges(e, x)
+def multiple_soft(e, x, edges=None):
+    """h of multiple soft scattering at omega = e omega_c, k^2 = x qhat L; over these panels in tau, if given."""
+    edges = time_edges(e, x) if edges is None else edges
     half = 0.5 * np.diff(edges)[:, None]
     tau = (edges[:-1, None] + half * (1.0 + NODES)).ravel()
     inside = float(np.sum(times_inside(tau, e, x).reshape(half.size, -1) * WEIGHTS * half).real)
     w = frequency(e)
     behind = np.exp(-1j * x * np.tan(w) / (e * w)).real - 1.0
     return x * inside + float(behind)
+
+
+def multiple_soft_on_real_axis(e, x):
+    """The same with tau real, and panels that know nothing of the integrand but its shortest period and its scales near 0."""
+    near_zero = np.geomspace(1e-9, 1.0, 80) * min(1.0, e)
+    return multiple_soft(e, x, np.unique(np.concatenate([np.linspace(0.0, 1.0, int(x / e) + int(4.0 / math.sqrt(e)) + 40), near_zero])))
 
 
 def multiple_soft_by_two_times(e, x, digits=15):

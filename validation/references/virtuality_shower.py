@@ -6,6 +6,9 @@ checks is what no quadrature gives: the daughters' starting scales and the rule 
 
     daughters start from z t and (1-z) t; while z(1-z) t - (1-z) t1 - z t2 < 0 the daughter with the larger
     t_i/t_i,max resumes its evolution below its present t_i.
+
+With angles ordered as well, a daughter of fraction x branches at t, z only if t/(z(1-z) x^2) lies below the same of the
+branching that made it (the squared angle, up to the jet's energy squared); vetoed inside its evolution.
 """
 
 import math
@@ -19,8 +22,9 @@ from quadrature import write_reference
 C_F, C_A, T_R = qcd.C_F, qcd.C_A, qcd.T_R
 CHARM2, BOTTOM2 = qcd.CHARM_GEV**2, qcd.BOTTOM_GEV**2
 QUARK, GLUON = 0, 1
-AT_T, AT_FRACTION, AT_FRACTION_JOINT = 0, 1, 2
-RULES = {"t": AT_T, "fractions of t": AT_FRACTION, "fractions of t, joint constraint": AT_FRACTION_JOINT}
+AT_T, AT_FRACTION, AT_FRACTION_JOINT, ANGULAR = 0, 1, 2, 3
+ANGLES = "fractions of t, joint constraint, angles ordered"
+RULES = {"t": AT_T, "fractions of t": AT_FRACTION, "fractions of t, joint constraint": AT_FRACTION_JOINT, ANGLES: ANGULAR}
 DEEPEST = 4096
 EVENTS = 1_000_000
 SEED = 7
@@ -40,8 +44,8 @@ def alpha_s(mu2, fixed, at_nodes):
 
 
 @njit(cache=False)
-def evolve(species, t, t0, fixed, at_nodes, always_open):
-    """Next (t, z, kind) below t: kind 0 q-qg, 1 g-gg, 2 g-qq; t = 0 if it ends at the cutoff."""
+def evolve(species, t, t0, fixed, at_nodes, always_open, widest=np.inf):
+    """Next (t, z, kind) below t with t/(z(1-z)) below `widest`: kind 0 q-qg, 1 g-gg, 2 g-qq; t = 0 if it ends at the cutoff."""
     largest = fixed if fixed > 0.0 else alpha_s(1.0, fixed, at_nodes)
     while t > t0:
         s = math.sqrt(1.0 - t0 / t)
@@ -68,7 +72,7 @@ def evolve(species, t, t0, fixed, at_nodes, always_open):
             if not always_open:
                 open_count = 3.0 + (1.0 if t > 4.0 * CHARM2 else 0.0) + (1.0 if t > 4.0 * BOTTOM2 else 0.0)
             ratio, kind = (z * z + (1.0 - z) ** 2) * open_count / 5.0, 2
-        if z * (1.0 - z) * t < 0.25 * t0:
+        if z * (1.0 - z) * t < 0.25 * t0 or t >= widest * z * (1.0 - z):
             continue
         if np.random.random() < ratio * alpha_s(z * (1.0 - z) * t, fixed, at_nodes) / largest:
             return t, z, kind
@@ -106,17 +110,20 @@ def one_event(species, start, t0, fixed, at_nodes, always_open, rule, partner_ma
         max1, max2 = z * t, (1.0 - z) * t
         if rule == AT_T:
             max1, max2 = t, t
-        t1, z1, k1 = evolve(first, max1, t0, fixed, at_nodes, always_open)
-        t2, z2, k2 = evolve(second, max2, t0, fixed, at_nodes, always_open)
+        widest1 = widest2 = np.inf
+        if rule == ANGULAR:
+            widest1, widest2 = t / (z * (1.0 - z)) * z * z, t / (z * (1.0 - z)) * (1.0 - z) ** 2
+        t1, z1, k1 = evolve(first, max1, t0, fixed, at_nodes, always_open, widest1)
+        t2, z2, k2 = evolve(second, max2, t0, fixed, at_nodes, always_open, widest2)
         out[4] += 1.0
-        if rule == AT_FRACTION_JOINT:
+        if rule == AT_FRACTION_JOINT or rule == ANGULAR:
             if z * (1.0 - z) * t - (1.0 - z) * t1 - z * t2 < 0.0:
                 out[5] += 1.0
             while z * (1.0 - z) * t - (1.0 - z) * t1 - z * t2 < 0.0:
                 if t1 / max1 >= t2 / max2:
-                    t1, z1, k1 = evolve(first, t1, t0, fixed, at_nodes, always_open)
+                    t1, z1, k1 = evolve(first, t1, t0, fixed, at_nodes, always_open, widest1)
                 else:
-                    t2, z2, k2 = evolve(second, t2, t0, fixed, at_nodes, always_open)
+                    t2, z2, k2 = evolve(second, t2, t0, fixed, at_nodes, always_open, widest2)
         stack[top, 0], stack[top, 1], stack[top, 2], stack[top, 3], stack[top, 4] = t2, z2, k2, x * (1.0 - z), second
         top += 1
         stack[top, 0], stack[top, 1], stack[top, 2], stack[top, 3], stack[top, 4] = t1, z1, k1, x * z, first
@@ -155,6 +162,10 @@ def setups():
         yield parton, 100.0, 2.0, 0.15, False, joint, 0.0
         yield parton, 91.1876, 1.0, 0.0, False, joint, 91.1876
         yield parton, 45.5938, 1.0, 0.0, False, joint, 91.1876
+    for parton in ("quark", "gluon"):
+        yield parton, 100.0, 1.0, 0.15, True, ANGLES, 0.0
+        yield parton, 100.0, 1.0, 0.0, True, ANGLES, 0.0
+        yield parton, 40.0, 1.0, 0.0, False, ANGLES, 0.0
 
 
 def case_of(parton, start, cutoff, fixed, always_open, rule, sqrt_s, events=EVENTS):
@@ -202,7 +213,7 @@ def main():
         "Multiplicity and fraction moments of virtuality-ordered showers, from a second, bare Monte Carlo",
         ["Bengtsson & Sjostrand 1987, Nucl. Phys. B 289:810 (the family of prescriptions)", "kernels, coupling: as in no_branching.json"],
         "kinematic z range, massless; daughters from z t and (1-z) t; while z(1-z) t - (1-z) t1 - z t2 < 0 the daughter with the larger "
-        "t_i/t_i,max resumes below its t_i; a pair resumes likewise until sqrt(t1) + sqrt(t2) <= sqrt_s; numbers are [mean per event, "
+        "t_i/t_i,max resumes below its t_i; angles ordered: t/(z(1-z) x^2) below that of the branching that made the parton, x its fraction; a pair resumes likewise until sqrt(t1) + sqrt(t2) <= sqrt_s; numbers are [mean per event, "
         "standard error]; multiplicity_histogram[n] = events with n final partons (a pair counts both sides), the last bin of 201 gathers the rest",
         f"statistical, {EVENTS} events a case, seed {SEED}",
         cases=cases,

@@ -129,6 +129,17 @@ fn check_provenance(provenance: &Provenance, report: &mut AuditReport) {
     if serde_json::from_str::<serde::de::IgnoredAny>(&provenance.config).is_err() {
         report.add_to_file("attribute config is no JSON", 0.0);
     }
+    for (index, field) in provenance.fields.iter().enumerate() {
+        if !(field.weight.is_finite() && field.weight >= 0.0) {
+            report.add_to_file(
+                format!(
+                    "/fields/weight[{index}] is {}, must not be negative",
+                    field.weight
+                ),
+                0.0,
+            );
+        }
+    }
     if provenance.program_version.is_empty() {
         report.add_to_file("attribute program_version is empty", 0.0);
     }

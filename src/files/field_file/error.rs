@@ -1,6 +1,6 @@
 //! What can be wrong with a temperature field file.
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
 /// Why a temperature field cannot be used: the file and the problem.
 #[derive(Debug, thiserror::Error)]
@@ -10,6 +10,15 @@ pub struct FieldFileError {
     pub path: PathBuf,
     /// What is wrong.
     pub problem: Box<FieldProblem>,
+}
+
+impl FieldFileError {
+    pub(super) fn new(path: &Path, problem: FieldProblem) -> FieldFileError {
+        FieldFileError {
+            path: path.to_owned(),
+            problem: Box::new(problem),
+        }
+    }
 }
 
 /// What is wrong with a temperature field file.
@@ -68,9 +77,17 @@ pub enum FieldProblem {
         /// The allowed range and the remedy.
         problem: String,
     },
+    /// More grid points than the program looks through.
+    #[error("declares {points} grid points; at most {limit} are allowed; coarsen or crop the grid")]
+    TooManyPoints {
+        /// Number of grid points.
+        points: u128,
+        /// Most that are allowed.
+        limit: u128,
+    },
     /// More numbers than the program takes into memory.
     #[error(
-        "declares {points} grid points, which would take {bytes} bytes of memory; at most {limit} are allowed; coarsen or crop the grid"
+        "has {points} grid points to keep, which would take {bytes} bytes of memory; at most {limit} are allowed; coarsen or crop the grid"
     )]
     TooLarge {
         /// Number of grid points.

@@ -1,26 +1,33 @@
-//! Reading a temperature field: HDF5 as `xarray.Dataset.to_netcdf(engine="h5netcdf")` and netCDF-4 write it.
+//! Reading and writing a temperature field: HDF5 as `xarray.Dataset.to_netcdf(engine="h5netcdf")` and netCDF-4 write it.
+//!
+//! [`read_field`] takes all of a field into memory, to look at it. [`read_grid`] keeps its hot part alone, for use: a
+//! first pass over the temperatures finds where the field is hot, a second reads that part, both in blocks of about 4 MB
+//! (or of a chunk, where that is larger). Peak memory is the kept part, 4 bytes a point (16 with flow), and two blocks.
 
+mod axes;
+mod blocks;
 mod error;
 mod flow;
 pub(super) mod units;
 pub(super) mod variable;
+mod write;
 
 use std::io::Read;
+use std::ops::Range;
 use std::path::Path;
 
 use hdf5::File;
 
 pub use error::{FieldFileError, FieldProblem};
+pub use write::{FieldOutline, FieldWriteError, PlanePoint, write_field};
 
 use crate::files::hdf5_calls::{expect_regular, open_to_read};
-use crate::medium::field::FieldData;
-use units::{AREA_DENSITY, LENGTH, NUMBER, Quantity, TEMPERATURE};
-use variable::Variable;
+use crate::medium::field::{FieldData, Frame, Grid, GridBuilder, HotScan};
+use units::{AREA_DENSITY, Quantity, TEMPERATURE};
+use variable::{Refusal, Variable};
 
-/// Memory that a field may take.
-const MEMORY_LIMIT_BYTES: u128 = 2 << 30;
-/// Arrays of the grid's size that a field with flow needs: temperature and three components.
-const LARGEST_ARRAY_COUNT: u128 = 4;
+/// Memory that the numbers of a field may take.
+const MEMORY_LIMIT_BYTES: u128 = 4 << 30;
 /// Hotter than any collision: the unit must be wrong.
 const LARGEST_TEMPERATURE_GEV: f64 = 5.0;
 /// Hotter than expected: worth a warning.
@@ -31,12 +38,7 @@ pub(super) const HDF5_SIGNATURE: [u8; 8] = *b"\x89HDF\r\n\x1a\n";
 /// First bytes of the classic netCDF formats.
 pub(super) const NETCDF3_SIGNATURE: [u8; 3] = *b"CDF";
 
-/// Axes without space-time rapidity, in the order of [`FieldData`].
-const PLANE_AXES: [&str; 3] = ["tau", "x", "y"];
-/// Axes with space-time rapidity, in the order of [`FieldData`].
-const FULL_AXES: [&str; 4] = ["tau", "x", "y", "eta"];
-
-/// Reads and checks a temperature field.
+/// Reads and checks all of a temperature field.
 ///
 /// Variable `temperature` over dimensions `tau`, `x`, `y` and perhaps `eta` (recognised by dimension name, in any
 /// order), perhaps flow (`ux`, `uy`, `ueta` or `vx`, `vy`, `veta`) and `collision_density`. Packed values are
@@ -46,10 +48,7 @@ const FULL_AXES: [&str; 4] = ["tau", "x", "y", "eta"];
 /// [`FieldFileError`] with the first problem found and its remedy. Memory is taken only after declared sizes are
 /// checked; damaged and foreign files are refused.
 pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
-    read_checked(path).map_err(|problem| FieldFileError {
-        path: path.to_owned(),
-        problem: Box::new(problem),
-    })
+    read_whole(path).map_err(|problem| FieldFileError::new(path, problem))
 }
 
 /// Checks everything about a temperature field but the values of temperature and flow, which are not read and stay empty
@@ -58,74 +57,180 @@ pub fn read_field(path: &Path) -> Result<FieldData, FieldFileError> {
 /// # Errors
 /// As [`read_field`].
 pub fn read_outline(path: &Path) -> Result<FieldData, FieldFileError> {
-    let outline = open(path).and_then(|opened| {
-        flow::check(&opened.file, opened.axes, &opened.lengths)?;
-        outline(&opened)
+    let outline = Opened::new(path).and_then(|opened| {
+        flow::check(&opened.file, opened.axes, &opened.frame.lengths())?;
+        opened.outline()
     });
-    outline.map_err(|problem| FieldFileError {
-        path: path.to_owned(),
-        problem: Box::new(problem),
-    })
+    outline.map_err(|problem| FieldFileError::new(path, problem))
 }
 
-fn read_checked(path: &Path) -> Result<FieldData, FieldProblem> {
-    let opened = open(path)?;
-    let mut data = outline(&opened)?;
-    let Opened {
-        file,
-        temperature,
-        axes,
-        lengths,
-    } = opened;
-    data.temperature_gev = read_temperature(&temperature, axes, &lengths)?;
-    data.flow = flow::read(&file, axes, &lengths)?;
-    warn_about_temperature(&mut data);
+/// A field ready for use, with what places of birth need to know of it.
+#[derive(Clone, Debug)]
+pub struct LoadedGrid {
+    /// The hot part.
+    pub grid: Grid,
+    /// The axes of the whole field, its collision density and warnings; of the temperatures the first slice alone, of the
+    /// flow nothing.
+    pub first_slice: FieldData,
+}
+
+/// Reads the part of a temperature field that is at least as hot as `end_temperature_gev`; with `hold_before_start` its
+/// first slice stands for what was before it.
+///
+/// # Errors
+/// As [`read_field`]; of the flow, the hot part alone is looked at.
+pub fn read_grid(
+    path: &Path,
+    end_temperature_gev: f64,
+    hold_before_start: bool,
+) -> Result<LoadedGrid, FieldFileError> {
+    read_hot(path, end_temperature_gev, hold_before_start)
+        .map_err(|problem| FieldFileError::new(path, problem))
+}
+
+fn read_whole(path: &Path) -> Result<FieldData, FieldProblem> {
+    let opened = Opened::new(path)?;
+    let names = flow::names(&opened.file)?;
+    let lengths = opened.frame.lengths();
+    let points = lengths.iter().product();
+    check_memory(points, names.is_some())?;
+    let mut data = opened.outline()?;
+    data.temperature_gev = vec![0.0; points];
+    let whole = opened.whole();
+    let mut largest = 0.0;
+    opened.read_temperature(&whole, |place, temperature| {
+        data.temperature_gev[place] = temperature;
+        largest = temperature.max(largest);
+    })?;
+    if let Some(names) = names {
+        let mut flow = [0, 1, 2].map(|_| vec![0.0; points]);
+        flow::read(
+            &opened.file,
+            names,
+            opened.axes,
+            &lengths,
+            &whole,
+            &mut flow,
+        )?;
+        data.flow = Some(flow);
+    }
+    data.warnings = temperature_warnings(largest);
     Ok(data)
 }
 
-/// A file whose temperature has the right shape.
+fn read_hot(
+    path: &Path,
+    end_temperature_gev: f64,
+    hold_before_start: bool,
+) -> Result<LoadedGrid, FieldProblem> {
+    let opened = Opened::new(path)?;
+    let names = flow::names(&opened.file)?;
+    let lengths = opened.frame.lengths();
+    let mut scan = HotScan::new(lengths, end_temperature_gev);
+    let mut first_slice = opened.outline()?;
+    first_slice.temperature_gev = vec![0.0; lengths[1..].iter().product()];
+    let mut largest = 0.0;
+    opened.read_temperature(&opened.whole(), |place, temperature| {
+        scan.see(place, temperature);
+        largest = temperature.max(largest);
+        if let Some(slot) = first_slice.temperature_gev.get_mut(place) {
+            *slot = temperature;
+        }
+    })?;
+    first_slice.warnings = temperature_warnings(largest);
+    check_memory(kept_points(&scan, &lengths), names.is_some())?;
+    let mut builder = GridBuilder::new(opened.frame.clone(), scan, names.is_some());
+    if let Some(kept) = builder.kept() {
+        let kept = &kept[..opened.axes.len()];
+        opened.read_temperature(kept, |place, temperature| {
+            builder.set_temperature(place, temperature);
+        })?;
+        if let Some(names) = names {
+            flow::read(
+                &opened.file,
+                names,
+                opened.axes,
+                &lengths,
+                kept,
+                &mut builder,
+            )?;
+        }
+    }
+    Ok(LoadedGrid {
+        grid: builder.finish(hold_before_start),
+        first_slice,
+    })
+}
+
+/// A file whose axes are checked.
 struct Opened {
     file: File,
     temperature: Variable,
     axes: &'static [&'static str],
-    lengths: Vec<usize>,
+    frame: Frame,
 }
 
-fn open(path: &Path) -> Result<Opened, FieldProblem> {
-    expect_regular(path).map_err(FieldProblem::Unreadable)?;
-    check_signature(path)?;
-    let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
-    let temperature = require(&file, "temperature", &TEMPERATURE)?;
-    let axes: &'static [&'static str] = if temperature.axes.iter().any(|axis| axis == "eta") {
-        &FULL_AXES
-    } else {
-        &PLANE_AXES
-    };
-    let lengths = axis_lengths(&temperature, axes)?;
-    check_memory(&lengths)?;
-    Ok(Opened {
-        file,
-        temperature,
-        axes,
-        lengths,
-    })
-}
-
-/// Axes and collision density.
-fn outline(opened: &Opened) -> Result<FieldData, FieldProblem> {
-    let Opened { file, lengths, .. } = opened;
-    let mut data = FieldData {
-        tau_fm: read_axis(file, "tau", lengths[0], &LENGTH)?,
-        x_fm: read_axis(file, "x", lengths[1], &LENGTH)?,
-        y_fm: read_axis(file, "y", lengths[2], &LENGTH)?,
-        ..FieldData::default()
-    };
-    if let Some(length) = lengths.get(3) {
-        data.eta = Some(read_axis(file, "eta", *length, &NUMBER)?);
+impl Opened {
+    fn new(path: &Path) -> Result<Opened, FieldProblem> {
+        expect_regular(path).map_err(FieldProblem::Unreadable)?;
+        check_signature(path)?;
+        let file = open_to_read(path).map_err(FieldProblem::Unreadable)?;
+        let temperature = require(&file, "temperature", &TEMPERATURE)?;
+        let frame = axes::read(&file, &temperature)?;
+        Ok(Opened {
+            axes: axes::names(&temperature),
+            file,
+            temperature,
+            frame,
+        })
     }
-    check_start(data.tau_fm[0])?;
-    data.collision_density_per_fm2 = read_collision_density(file, lengths)?;
-    Ok(data)
+
+    /// Axes and collision density.
+    fn outline(&self) -> Result<FieldData, FieldProblem> {
+        let frame = self.frame.clone();
+        Ok(FieldData {
+            collision_density_per_fm2: read_collision_density(&self.file, &frame)?,
+            tau_fm: frame.tau_fm,
+            x_fm: frame.x_fm,
+            y_fm: frame.y_fm,
+            eta: frame.eta,
+            ..FieldData::default()
+        })
+    }
+
+    fn whole(&self) -> Vec<Range<usize>> {
+        let lengths = &self.frame.lengths()[..self.axes.len()];
+        lengths.iter().map(|length| 0..*length).collect()
+    }
+
+    fn read_temperature(
+        &self,
+        part: &[Range<usize>],
+        mut take: impl FnMut(usize, f32),
+    ) -> Result<(), FieldProblem> {
+        self.temperature.read_part(self.axes, part, |place, value| {
+            if (0.0..=LARGEST_TEMPERATURE_GEV).contains(&value) {
+                take(place, value as f32);
+                return Ok(());
+            }
+            Err(Refusal {
+                value: format!("{value} GeV"),
+                problem: if value < 0.0 {
+                    "a temperature is not negative; write 0 where there is no medium".to_owned()
+                } else {
+                    format!(
+                        "at most {LARGEST_TEMPERATURE_GEV} GeV is believed; are the units right (MeV given as GeV)?"
+                    )
+                },
+            })
+        })
+    }
+}
+
+fn kept_points(scan: &HotScan, lengths: &[usize; 4]) -> usize {
+    let length = |[first, last]: [usize; 2]| last - first + 1;
+    let kept = scan.kept().map(|kept| kept.map(length));
+    kept.map_or(0, |kept| kept.iter().product::<usize>() * lengths[3])
 }
 
 fn check_signature(path: &Path) -> Result<(), FieldProblem> {
@@ -161,36 +266,12 @@ pub(super) fn names_in(file: &File) -> String {
     }
 }
 
-fn axis_lengths(temperature: &Variable, axes: &[&str]) -> Result<Vec<usize>, FieldProblem> {
-    let lengths: Vec<usize> = axes
-        .iter()
-        .map(|axis| temperature.length(axis).unwrap_or(0))
-        .collect();
-    let shape_problem = |problem: String| FieldProblem::Shape {
-        name: temperature.name.clone(),
-        problem,
-    };
-    if temperature.axes.len() != axes.len() || lengths.contains(&0) {
-        return Err(shape_problem(format!(
-            "has dimensions ({}) with lengths {lengths:?} along ({}); must be over tau, x, y and perhaps eta, in any order, none of them empty",
-            temperature.axes.join(", "),
-            axes.join(", "),
-        )));
-    }
-    match axes.iter().zip(&lengths).find(|(_, length)| **length == 1) {
-        Some((axis, _)) => Err(shape_problem(format!(
-            "dimension {axis} has one point, at least two are needed to interpolate; repeat the slice at a second {axis}, or (for eta) drop the dimension: dataset.isel({axis}=0)"
-        ))),
-        None => Ok(lengths),
-    }
-}
-
-fn check_memory(lengths: &[usize]) -> Result<(), FieldProblem> {
-    let points: u128 = lengths.iter().map(|length| *length as u128).product();
-    let bytes = points * LARGEST_ARRAY_COUNT * size_of::<f32>() as u128;
+fn check_memory(points: usize, with_flow: bool) -> Result<(), FieldProblem> {
+    let numbers = if with_flow { 4 } else { 1 };
+    let bytes = points as u128 * numbers * size_of::<f32>() as u128;
     if bytes > MEMORY_LIMIT_BYTES {
         return Err(FieldProblem::TooLarge {
-            points,
+            points: points as u128,
             bytes,
             limit: MEMORY_LIMIT_BYTES,
         });
@@ -198,118 +279,17 @@ fn check_memory(lengths: &[usize]) -> Result<(), FieldProblem> {
     Ok(())
 }
 
-/// Reads one coordinate: as long as its axis, finite, strictly increasing.
-fn read_axis(
-    file: &File,
-    name: &'static str,
-    length: usize,
-    quantity: &Quantity,
-) -> Result<Vec<f64>, FieldProblem> {
-    let shape_problem = |problem: String| FieldProblem::Shape {
-        name: name.to_owned(),
-        problem,
-    };
-    let missing = FieldProblem::Missing {
-        name,
-        found: names_in(file),
-        remedy: format!("give the dimension coordinates: dataset.assign_coords({name}=...)"),
-    };
-    // a dimension that has only a name is stored as a scale without values
-    let bare = file.dataset(name).is_ok_and(|scale| {
-        matches!(crate::files::attributes::get_text(&scale, "NAME"), Ok(Some(text)) if text.starts_with("This is a netCDF dimension but not"))
-    });
-    if bare {
-        return Err(missing);
-    }
-    let coordinate = Variable::find(file, name, quantity)?.ok_or(missing)?;
-    coordinate.expect_axes(&[name], &[length])?;
-    let mut values = vec![0.0; length];
-    coordinate.read(&[name], |place, value| {
-        values[place] = value;
-        Ok(())
-    })?;
-    match values.windows(2).position(|pair| pair[0] >= pair[1]) {
-        Some(place) => Err(shape_problem(format!(
-            "must be strictly increasing, but {name}[{place}] = {} is followed by {}; dataset.sortby(\"{name}\")",
-            values[place],
-            values[place + 1]
-        ))),
-        None => Ok(values),
-    }
-}
-
-fn check_start(tau_fm: f64) -> Result<(), FieldProblem> {
-    if tau_fm >= 0.0 {
-        return Ok(());
-    }
-    Err(FieldProblem::Value {
-        name: "tau".into(),
-        value: format!("{tau_fm} fm"),
-        place: "tau[0]".into(),
-        problem: "proper time is not negative".into(),
-    })
-}
-
-fn read_temperature(
-    variable: &Variable,
-    axes: &[&str],
-    lengths: &[usize],
-) -> Result<Vec<f32>, FieldProblem> {
-    let mut values = vec![0.0; lengths.iter().product()];
-    variable.read(axes, |place, value| {
-        let problem = if value < 0.0 {
-            "a temperature is not negative; write 0 where there is no medium".to_owned()
-        } else if value > LARGEST_TEMPERATURE_GEV {
-            format!(
-                "at most {LARGEST_TEMPERATURE_GEV} GeV is believed; are the units right (MeV given as GeV)?"
-            )
-        } else {
-            values[place] = value as f32;
-            return Ok(());
-        };
-        Err(FieldProblem::Value {
-            name: variable.name.clone(),
-            value: format!("{value} GeV"),
-            place: grid_place(place, axes, lengths),
-            problem,
-        })
-    })?;
-    Ok(values)
-}
-
-/// A place in C order, in words.
-fn grid_place(place: usize, axes: &[&str], lengths: &[usize]) -> String {
-    let mut rest = place;
-    let mut parts: Vec<_> = axes
-        .iter()
-        .zip(lengths)
-        .rev()
-        .map(|(axis, length)| {
-            let index = rest % length;
-            rest /= length;
-            format!("{axis}[{index}]")
-        })
-        .collect();
-    parts.reverse();
-    parts.join(" ")
-}
-
-fn read_collision_density(
-    file: &File,
-    lengths: &[usize],
-) -> Result<Option<Vec<f64>>, FieldProblem> {
+fn read_collision_density(file: &File, frame: &Frame) -> Result<Option<Vec<f64>>, FieldProblem> {
     let Some(variable) = Variable::find(file, "collision_density", &AREA_DENSITY)? else {
         return Ok(None);
     };
-    let (axes, lengths) = (&PLANE_AXES[1..], &lengths[1..3]);
+    let (axes, lengths) = (&axes::PLANE_AXES[1..], &frame.lengths()[1..3]);
     variable.expect_axes(axes, lengths)?;
     let mut values = vec![0.0; lengths.iter().product()];
     variable.read(axes, |place, value| {
         if value < 0.0 {
-            return Err(FieldProblem::Value {
-                name: variable.name.clone(),
+            return Err(Refusal {
                 value: format!("{value} fm^-2"),
-                place: grid_place(place, axes, lengths),
                 problem: "a density is not negative".into(),
             });
         }
@@ -319,15 +299,15 @@ fn read_collision_density(
     Ok(Some(values))
 }
 
-fn warn_about_temperature(data: &mut FieldData) {
-    let largest = data.temperature_gev.iter().copied().fold(0.0, f32::max);
-    if f64::from(largest) > UNUSUAL_TEMPERATURE_GEV {
-        data.warnings.push(format!(
-            "the largest temperature is {largest} GeV, above {UNUSUAL_TEMPERATURE_GEV} GeV; are the units right?"
+fn temperature_warnings(largest_gev: f32) -> Vec<String> {
+    let mut warnings = Vec::new();
+    if f64::from(largest_gev) > UNUSUAL_TEMPERATURE_GEV {
+        warnings.push(format!(
+            "the largest temperature is {largest_gev} GeV, above {UNUSUAL_TEMPERATURE_GEV} GeV; are the units right?"
         ));
     }
-    if largest == 0.0 {
-        data.warnings
-            .push("the temperature is 0 everywhere: there is no medium".into());
+    if largest_gev == 0.0 {
+        warnings.push("the temperature is 0 everywhere: there is no medium".into());
     }
+    warnings
 }

@@ -1,19 +1,20 @@
 //! One variable of a field file: its axes by name, its packing attributes, its values in a settled axis order.
 
-use hdf5::{Dataset, File};
+use std::ops::Range;
 
+use hdf5::types::{FloatSize, TypeDescriptor};
+use hdf5::{Dataset, File, H5Type};
+
+use super::blocks::blocks;
 use super::error::FieldProblem;
 use super::units::Quantity;
 use crate::files::attributes::{element_type, get_number, get_text, is_number};
-use crate::files::hdf5_calls::{attached_scales, read_rows};
+use crate::files::hdf5_calls::{attached_scales, read_box};
 
 /// What netCDF writes where nothing was written (its default fill value for floating-point numbers).
 const NETCDF_DEFAULT_FILL: f64 = 9.969_209_968_386_869e36;
 /// Largest chunk that is unpacked at once, in bytes.
 const LARGEST_CHUNK_BYTES: u128 = 1 << 30;
-
-/// Memory for the part of a variable that is read at once, in bytes.
-const SLAB_BYTES: usize = 64 << 20;
 
 /// A variable that was found and checked, but not read.
 pub(in crate::files) struct Variable {
@@ -26,6 +27,14 @@ pub(in crate::files) struct Variable {
     scale: f64,
     offset: f64,
     fill: Vec<f64>,
+    /// Stored as numbers of single precision.
+    single: bool,
+}
+
+/// A value that is not taken: in words, and why.
+pub(in crate::files) struct Refusal {
+    pub(in crate::files) value: String,
+    pub(in crate::files) problem: String,
 }
 
 impl Variable {
@@ -63,6 +72,8 @@ impl Variable {
             scale: scale * factor,
             offset: offset * factor,
             fill: fill.into_iter().flatten().collect(),
+            single: element_type(&dataset).map_err(shape_problem)?
+                == TypeDescriptor::Float(FloatSize::U4),
             dataset,
         }))
     }
@@ -106,98 +117,129 @@ impl Variable {
         })
     }
 
-    /// Reads all values in C order over `axes` (a permutation of the variable's own) and hands each, unpacked and
-    /// converted, to `take` with its place in that order.
+    /// Reads all values and hands each, unpacked and converted, to `take` with its place in C order over `axes` (a
+    /// permutation of the variable's own).
     pub(in crate::files) fn read(
         &self,
         axes: &[&str],
-        mut take: impl FnMut(usize, f64) -> Result<(), FieldProblem>,
+        take: impl FnMut(usize, f64) -> Result<(), Refusal>,
     ) -> Result<(), FieldProblem> {
-        let strides = self.target_strides(axes);
-        let mut slab: Vec<f64> = Vec::new();
-        let mut index = vec![0; self.shape.len()];
-        let step = self.rows_at_once();
-        for first in (0..self.shape[0]).step_by(step) {
-            let rows = step.min(self.shape[0] - first);
-            read_rows(&self.dataset, first, rows, &mut slab).map_err(|error| {
-                FieldProblem::Shape {
-                    name: self.name.clone(),
-                    problem: format!("cannot be read: {error}"),
-                }
+        let whole = |axis: &&str| 0..self.length(axis).expect("axes were checked");
+        let whole: Vec<_> = axes.iter().map(whole).collect();
+        self.read_part(axes, &whole, take)
+    }
+
+    /// The same of a part, a range along each of `axes`, block by block; places are in C order over the part.
+    pub(in crate::files) fn read_part(
+        &self,
+        axes: &[&str],
+        part: &[Range<usize>],
+        take: impl FnMut(usize, f64) -> Result<(), Refusal>,
+    ) -> Result<(), FieldProblem> {
+        if self.single {
+            self.read_stored::<f32>(axes, part, take)
+        } else {
+            self.read_stored::<f64>(axes, part, take)
+        }
+    }
+
+    fn read_stored<T: H5Type + Copy + Into<f64>>(
+        &self,
+        axes: &[&str],
+        part: &[Range<usize>],
+        mut take: impl FnMut(usize, f64) -> Result<(), Refusal>,
+    ) -> Result<(), FieldProblem> {
+        let own = self.own_ranges(axes, part);
+        let strides = self.strides(axes, part);
+        let chunk = self.dataset.chunk();
+        let mut values: Vec<T> = Vec::new();
+        for block in blocks(&self.shape, chunk.as_deref(), &own) {
+            read_box(&self.dataset, &block, &mut values).map_err(|error| FieldProblem::Shape {
+                name: self.name.clone(),
+                problem: format!("cannot be read: {error}"),
             })?;
-            for stored in &slab {
-                let place = index
-                    .iter()
-                    .zip(&strides)
-                    .map(|(i, stride)| i * stride)
+            let last = block.len() - 1;
+            for (row, stored) in values.chunks(block[last].len().max(1)).enumerate() {
+                let index = self.index_of_row(&block, row);
+                let start: usize = (0..=last)
+                    .map(|axis| (index[axis] - own[axis].start) * strides[axis])
                     .sum();
-                let value = self.unpack(*stored, &index)?;
-                take(place, value)?;
-                advance(&mut index, &self.shape);
+                for (step, stored) in stored.iter().enumerate() {
+                    let refuse = |refusal| self.refuse(&index, step, refusal);
+                    let value = self.unpack((*stored).into()).map_err(refuse)?;
+                    take(start + step * strides[last], value).map_err(refuse)?;
+                }
             }
         }
         Ok(())
     }
 
-    /// Rows of whole chunks, so that none is unpacked twice, as long as they fit into the slab.
-    fn rows_at_once(&self) -> usize {
-        let row_bytes = self.shape[1..].iter().product::<usize>().max(1) * size_of::<f64>();
-        let chunk_rows = self.dataset.chunk().map_or(1, |chunk| chunk[0]);
-        chunk_rows.min(SLAB_BYTES / row_bytes).max(1)
+    /// The part along the variable's own axes.
+    fn own_ranges(&self, axes: &[&str], part: &[Range<usize>]) -> Vec<Range<usize>> {
+        let range = |own: &String| {
+            let place = axes.iter().position(|axis| own == axis);
+            part[place.expect("axes were checked")].clone()
+        };
+        self.axes.iter().map(range).collect()
     }
 
-    /// For each axis of the file, the step it makes in C order over `axes`.
-    fn target_strides(&self, axes: &[&str]) -> Vec<usize> {
-        self.axes
-            .iter()
-            .map(|own| {
-                let later = axes.iter().skip_while(|axis| own != **axis).skip(1);
-                later
-                    .map(|axis| self.length(axis).expect("axes were checked"))
-                    .product()
-            })
-            .collect()
+    /// For each axis of the variable, the step it makes in C order over the part.
+    fn strides(&self, axes: &[&str], part: &[Range<usize>]) -> Vec<usize> {
+        let stride = |own: &String| {
+            let ranges = axes.iter().zip(part);
+            let later = ranges.skip_while(|(axis, _)| own != **axis).skip(1);
+            later.map(|(_, range)| range.len()).product()
+        };
+        self.axes.iter().map(stride).collect()
     }
 
-    fn unpack(&self, stored: f64, index: &[usize]) -> Result<f64, FieldProblem> {
+    /// Index of the first element of a row (along the last axis) of a block.
+    fn index_of_row(&self, block: &[Range<usize>], row: usize) -> Vec<usize> {
+        let mut index: Vec<usize> = block.iter().map(|range| range.start).collect();
+        let mut rest = row;
+        for axis in (0..block.len() - 1).rev() {
+            index[axis] += rest % block[axis].len();
+            rest /= block[axis].len();
+        }
+        index
+    }
+
+    #[inline]
+    fn unpack(&self, stored: f64) -> Result<f64, Refusal> {
         let value = stored * self.scale + self.offset;
         let is_fill = self.fill.contains(&stored) || stored == NETCDF_DEFAULT_FILL;
         if value.is_finite() && !is_fill {
             return Ok(value);
         }
-        Err(FieldProblem::Value {
-            name: self.name.clone(),
+        Err(Refusal {
             value: if is_fill {
                 format!("the fill value {stored}")
             } else {
                 stored.to_string()
             },
-            place: self.place(index),
             problem:
                 "every point needs a number; where there is no medium write 0: dataset.fillna(0)"
                     .into(),
         })
     }
 
-    fn place(&self, index: &[usize]) -> String {
-        let parts: Vec<_> = self
+    fn refuse(&self, row: &[usize], step: usize, refusal: Refusal) -> FieldProblem {
+        let last = row.len() - 1;
+        let place: Vec<_> = self
             .axes
             .iter()
-            .zip(index)
-            .map(|(axis, index)| format!("{axis}[{index}]"))
+            .enumerate()
+            .map(|(axis, name)| {
+                let step = if axis == last { step } else { 0 };
+                format!("{name}[{}]", row[axis] + step)
+            })
             .collect();
-        parts.join(" ")
-    }
-}
-
-/// Steps an index over `shape` in C order.
-fn advance(index: &mut [usize], shape: &[usize]) {
-    for axis in (0..shape.len()).rev() {
-        index[axis] += 1;
-        if index[axis] < shape[axis] {
-            return;
+        FieldProblem::Value {
+            name: self.name.clone(),
+            value: refusal.value,
+            place: place.join(" "),
+            problem: refusal.problem,
         }
-        index[axis] = 0;
     }
 }
 

@@ -383,7 +383,10 @@ impl RateEffect for CollinearExpansion {
             ..
         } = *splitting;
         let formation_fm = 1.0 / wave_number_per_fm(t_gev2, passage.energy_gev);
-        let qhat = passage.trace.path.qhat_gev2_per_fm(place_fm) * passage.share_of_bound(place_fm);
-        qhat * formation_fm > z * (1.0 - z) * t_gev2
+        let bound = passage.trace.path.qhat_gev2_per_fm(place_fm);
+        let kappa2_gev2 = z * (1.0 - z) * t_gev2;
+        // Where even the bound is soft enough the point need not be looked up.
+        bound * formation_fm > kappa2_gev2
+            && bound * passage.share_of_bound(place_fm) * formation_fm > kappa2_gev2
     }
 }

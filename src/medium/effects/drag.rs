@@ -1,10 +1,14 @@
 //! Energy given to the medium: a mean loss dE = int ehat dl with ehat = qhat/(4 T), tied to the diffusion by fluctuation
 //! and dissipation (common practice; the classical relation of a diffusing particle's drag to its diffusion).
 //!
+//! In the rest frame of the fluid a light-like parton shrinks along itself. Its relative loss and dt/E are the same in every
+//! frame: per lab length it loses ehat of the fluid at rest, without the flow factor f = p.u/E that qhat carries, and the
+//! variance of longitudinal diffusion per lab length is qhat/(2 f), qhat at rest.
+//!
 //! The loss scales plus momentum and transverse momentum of the parton alike, at fixed virtuality: a massless parton
 //! keeps its direction. (Scaling the plus momentum alone would turn partons away from the jet axis.) The energy stays
 //! at least max(sqrt(t), `min_energy_GeV`), and a parton below that loses nothing. With fluctuations the loss is
-//! Gaussian about the mean with the variance int qhat/2 dl of longitudinal diffusion, and may be a gain.
+//! Gaussian about the mean with that variance, and may be a gain.
 //! qhat is the parton's own (C_R/C_A of a gluon's).
 //!
 //! Regime: many soft kicks, loss small against the energy.
@@ -64,8 +68,7 @@ impl PathEffect for Drag {
     fn act(&self, journey: &Journey, flight: &mut Flight, stream: &mut Stream) -> bool {
         let mut loss_gev = journey.mean_loss_gev();
         if self.fluctuations {
-            // Half of the transverse diffusion of two dimensions is that of one, the longitudinal.
-            loss_gev += (0.5 * journey.qhat_integral_gev2()).sqrt() * normal(stream);
+            loss_gev += journey.loss_variance_gev2().sqrt() * normal(stream);
         }
         let energy_gev = flight.energy_gev();
         // A parton below the least energy loses nothing; a gain is what it is.

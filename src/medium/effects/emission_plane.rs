@@ -81,9 +81,9 @@ impl EmissionPlane {
         let rows = rows(region);
         let mut ranges = [(0, 0); ROWS];
         let mut total = 0.0;
-        for row in rows[0]..rows[1] {
-            ranges[row] = columns(region, row);
-            total += self.mass(row, ranges[row]);
+        for (row, range) in ranges.iter_mut().enumerate().take(rows[1]).skip(rows[0]) {
+            *range = columns(region, row);
+            total += self.mass(row, *range);
         }
         let mean = factor * CELL_WIDTH * CELL_WIDTH * total;
         let mut gap = exponential(stream);

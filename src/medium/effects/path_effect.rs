@@ -14,6 +14,8 @@ pub struct Journey<'a> {
     /// The gluon's energy loss per length qhat/(4 T) along the same path (units GeV/fm in place of GeV^2/fm); empty
     /// where no effect asks for it.
     pub loss: &'a Path,
+    /// The variance that a gluon's energy gains per length along the same path, GeV^2/fm.
+    pub spread: &'a Path,
     /// How far it flies from birth, fm; infinite for a final parton.
     pub length_fm: f64,
     /// It does not branch any more.
@@ -35,6 +37,11 @@ impl Journey<'_> {
     /// int qhat dl of the parton over its way, GeV^2.
     pub fn qhat_integral_gev2(&self) -> f64 {
         self.colour_ratio() * self.path.integral_to(self.length_fm)
+    }
+
+    /// The variance of the loss over its way, GeV^2.
+    pub fn loss_variance_gev2(&self) -> f64 {
+        self.colour_ratio() * self.spread.integral_to(self.length_fm)
     }
 
     /// int ehat dl of the parton over its way, GeV.

@@ -125,7 +125,7 @@ pub trait RateEffect: Send + Sync {
         1.0
     }
 
-    /// Whether the effect lifts the ordering in angle from a vacuum emission of a parton that was born with an angle
+    /// Whether an effect that thins the vacuum channel lifts the ordering in angle from a vacuum emission of a parton that was born with an angle
     /// squared (t/(z(1-z)E^2) of its parent's branching).
     fn lifts_angular_order(
         &self,

@@ -6,7 +6,9 @@
 //! sqrt(2 omega/qhat) < tau_f < L,   omega = min(z, 1-z) E,   tau_f = 2 E/t,
 //!
 //! qhat being a gluon's at the place of birth and L the rest of the path in the medium: it would form inside, but later
-//! than the medium gives it more transverse momentum than it has. With `angular` ordering, an emission that forms
+//! than the medium gives it more transverse momentum than it has. A parton that is born before its path meets the medium
+//! (before the first proper time of the field, say) is judged too, with the mean that a brick of its path would have,
+//! qhat = 2 int l qhat dl/L^2: else the primary, and most of its early daughters, would never be. With `angular` ordering, an emission that forms
 //! outside (tau_f > L) is not bound by the angle of its parent's branching if that branching lay inside and was wider than
 //! theta_c = 2/sqrt(qhat L^3): the medium has destroyed the coherence of the two.
 //!
@@ -41,11 +43,17 @@ struct ResolvedOnly {
     name: String,
 }
 
-/// qhat at birth (GeV^2/fm) and the rest of the path (fm) of a parton that was born inside.
+/// qhat (GeV^2/fm) and the rest of the path (fm) of a parton whose path meets the medium.
 fn inside(passage: &Passage) -> Option<(f64, f64)> {
     let path = &passage.trace.path;
-    let qhat = path.qhat_gev2_per_fm(0.0);
-    (qhat > 0.0).then(|| (qhat, path.end_fm()))
+    let rest_fm = path.end_fm();
+    let at_birth = path.qhat_gev2_per_fm(0.0);
+    let qhat = if at_birth > 0.0 {
+        at_birth
+    } else {
+        2.0 * path.first_moment_gev2_fm() / (rest_fm * rest_fm)
+    };
+    (qhat > 0.0).then_some((qhat, rest_fm))
 }
 
 fn formation_fm(passage: &Passage, t_gev2: f64) -> f64 {

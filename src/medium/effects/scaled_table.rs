@@ -169,8 +169,75 @@ impl Grid {
 }
 
 #[cfg(test)]
-mod tests {
+pub(super) mod tests {
     use super::*;
+    use crate::random::{Key, Purpose};
+    use rand::RngExt;
+
+    /// Asserts that bounds hold at 10^5 random points of random cells, a third of them on a border in ln x, a fifth in
+    /// ln y. Where the exact spectrum costs microseconds (below `cheap_from` in ln x) one in eight is tried.
+    pub fn assert_that_bounds_hold(spectrum: &impl ScaledSpectrum, cheap_from: f64) {
+        const SIDE: f64 = 0.4;
+        let mut stream = Key::event(11, 1).stream(Purpose::named("test"));
+        for place in 0..100_000 {
+            let mut corner = |low: f64, high: f64| low + (high - low) * stream.random::<f64>();
+            let (x, y) = (corner(-16.0, 14.0), corner(-15.0, 22.0));
+            let cell = Rectangle {
+                ln_x: [x, x + SIDE],
+                ln_y: [y, y + SIDE],
+            };
+            let mut within = |[low, high]: [f64; 2], on_border: bool| {
+                let share: f64 = stream.random();
+                let share = if on_border { share.round() } else { share };
+                (low + share * (high - low)).min(high)
+            };
+            let ln_x = within(cell.ln_x, place % 3 == 0);
+            let ln_y = within(cell.ln_y, place % 5 == 0);
+            if ln_x < cheap_from && place % 8 != 0 {
+                continue;
+            }
+            let (h, bound) = (spectrum.value(ln_x, ln_y), spectrum.bound(cell));
+            assert!(h.is_finite() && bound >= 0.0);
+            assert!(h <= bound, "h({ln_x}, {ln_y}) = {h} above {bound}");
+        }
+    }
+
+    /// A spectrum whose bound is a thousandth too low.
+    struct TooLow<S>(S);
+
+    impl<S: ScaledSpectrum> ScaledSpectrum for TooLow<S> {
+        fn value(&self, ln_x: f64, ln_y: f64) -> f64 {
+            self.0.value(ln_x, ln_y)
+        }
+
+        fn bound(&self, rectangle: Rectangle) -> f64 {
+            0.999 * self.0.bound(rectangle)
+        }
+    }
+
+    /// A ridge that rises and falls with ln y, its bound exact.
+    struct Ridge;
+
+    impl ScaledSpectrum for Ridge {
+        fn value(&self, _: f64, ln_y: f64) -> f64 {
+            1.0 / (1.0 + ln_y * ln_y)
+        }
+
+        fn bound(&self, Rectangle { ln_y, .. }: Rectangle) -> f64 {
+            self.value(0.0, 0f64.clamp(ln_y[0], ln_y[1]))
+        }
+    }
+
+    #[test]
+    fn bounds_of_a_ridge_hold() {
+        assert_that_bounds_hold(&Ridge, f64::NEG_INFINITY);
+    }
+
+    #[test]
+    #[should_panic(expected = "above")]
+    fn a_bound_that_is_too_low_is_found() {
+        assert_that_bounds_hold(&TooLow(Ridge), f64::NEG_INFINITY);
+    }
 
     #[test]
     fn a_grid_is_exact_at_nodes_and_for_bilinear_functions() {

@@ -1,5 +1,6 @@
 //! Temperature fields: temperature and flow along a light-like ray.
 
+mod analytic;
 mod brick;
 mod data;
 mod grid;
@@ -7,6 +8,7 @@ mod longitudinal;
 mod placed;
 mod radial;
 
+pub use analytic::analytic;
 pub use brick::Brick;
 pub use data::FieldData;
 pub use grid::{Frame, Grid, GridBuilder, HotScan};

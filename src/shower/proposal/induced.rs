@@ -20,6 +20,7 @@ use rand_distr::OpenClosed01;
 
 use super::Trial;
 use crate::medium::effects::{PowerLaw, RateBound};
+use crate::medium::field::smaller;
 use crate::numerics::elementary::{exp, ln};
 use crate::qcd::kernels::Splitting;
 use crate::qcd::{C_A, C_F, T_R};
@@ -48,20 +49,37 @@ pub struct Emitter {
     pub angle_limit_energy2_gev2: Option<f64>,
 }
 
-/// The envelope of one effect for one parton.
+/// The envelope of one effect for one parton, and how far the evolution has come down in it.
 #[derive(Clone, Copy, Debug)]
 pub struct InducedEnvelope {
     emitter: Emitter,
     range: FractionRange,
-    /// From the highest t down: the rate in ln t, integrated over z, and where it ends.
+    /// From the highest t down: the rate in ln t, integrated over z.
     pieces: [Piece; 3],
+    /// s(t), the effect's bound of R z(1-z).
+    strength: Broken,
+    /// Integral of the rate in ln t from the cutoff up to the last proposal, and where that lies.
+    height: f64,
+    t_gev2: f64,
+    rate_at_t: f64,
 }
 
 /// A stretch of t in which the rate is a power law.
 #[derive(Clone, Copy, Debug)]
 struct Piece {
     rate: PowerLaw,
+    /// Its lower end, not below the cutoff, and the integral of the rate from the cutoff up to there.
     low_t_gev2: f64,
+    integral_below: f64,
+}
+
+/// A trial of an induced channel.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Proposed {
+    /// The trial.
+    pub trial: Trial,
+    /// The vacuum density over the envelope's.
+    pub density_ratio: f64,
 }
 
 /// A function of t that changes from one power law to another at a break.
@@ -74,13 +92,14 @@ struct Broken {
 
 impl InducedEnvelope {
     /// The envelope for a bound on the relative change; `None` where the bound vanishes.
+    #[inline]
     pub fn new(
         rate: &VacuumRate,
         emitter: Emitter,
         bound: RateBound,
         envelope_factor: f64,
     ) -> Option<InducedEnvelope> {
-        let factor = rate.largest_alpha_s() / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
+        let factor = rate.largest_alpha_s / TAU * envelope_factor * (1.0 + ROUNDING_MARGIN);
         let strength = Broken::strength(bound)?;
         let width = Broken::inverse_smallest(&rate.range, &emitter);
         let over_z = if emitter.is_gluon {
@@ -88,47 +107,128 @@ impl InducedEnvelope {
         } else {
             C_F * (2.0 + exp(-3.0))
         };
-        Some(InducedEnvelope {
+        let mut envelope = InducedEnvelope {
             emitter,
             range: rate.range,
-            pieces: product(strength, width, factor * over_z),
+            pieces: product(
+                &strength,
+                &width,
+                factor * over_z,
+                [rate.range.end_t_gev2, emitter.start_t_gev2],
+            ),
+            strength,
+            height: 0.0,
+            t_gev2: emitter.start_t_gev2,
+            rate_at_t: 0.0,
+        };
+        envelope.height = envelope.integral(emitter.start_t_gev2);
+        Some(envelope)
+    }
+
+    /// Integral of the rate in ln t from the cutoff up to `t_gev2`.
+    #[inline]
+    fn integral(&self, t_gev2: f64) -> f64 {
+        let above = |piece: &&Piece| t_gev2 > piece.low_t_gev2;
+        self.pieces.iter().find(above).map_or(0.0, |piece| {
+            piece.integral_below + piece.rate.integral(piece.low_t_gev2, t_gev2)
         })
     }
 
-    /// The next trial below `t_gev2`, `None` when the cutoff is reached; `trials` counts every proposal.
-    pub fn propose(&self, mut t_gev2: f64, stream: &mut Stream, trials: &mut u64) -> Option<Trial> {
-        loop {
-            *trials += 1;
-            let uniform: f64 = stream.sample(OpenClosed01);
-            let (t, rate) = self.next_t(t_gev2, -ln(uniform))?;
-            let smallest = self.emitter.smallest(t).max(self.range.smallest(t));
-            t_gev2 = t;
-            // Above t = E^2 no emission is at a small angle.
-            if smallest >= LARGEST_SMALLEST {
-                continue;
-            }
-            let shape = Shape::new(self.emitter.is_gluon, smallest);
-            let pairs = self.emitter.pair_strength();
-            let pair_integral = 2.0 * pairs * shape.logarithm();
-            let integral = shape.integral() + pair_integral;
-            let makes_pair = pairs > 0.0 && stream.random::<f64>() * integral < pair_integral;
-            // The density is the rate in ln t times the normalised shape in z, without 1/(2 pi) like all densities.
-            let (splitting, z, value) = if makes_pair {
-                let z = shape.draw_pair(stream);
-                (Splitting::GluonToQuarks, z, pairs / (z * (1.0 - z)))
-            } else {
-                let z = shape.draw(stream);
-                (self.emitter.emission(), z, shape.value(z))
-            };
-            let inverse_envelope = integral / (TAU * rate * value);
-            return Some(Trial {
-                t,
-                z,
-                splitting,
-                uniform: stream.random(),
-                inverse_envelope,
-            });
+    /// Goes down to the next proposal, which spends `budget`, an exponential number of mean 1, of the rate's integral; its
+    /// t, 0 where the cutoff comes first.
+    #[inline]
+    pub fn descend(&mut self, budget: f64) -> f64 {
+        self.height -= budget;
+        let before = std::mem::take(&mut self.t_gev2);
+        if self.height <= 0.0 {
+            return 0.0;
         }
+        for piece in &self.pieces {
+            if self.height > piece.integral_below {
+                let rest = self.height - piece.integral_below;
+                // Rounding must not lead up.
+                self.t_gev2 = smaller(piece.rate.ascend(piece.low_t_gev2, rest), before);
+                self.rate_at_t = piece.rate.at(self.t_gev2);
+                break;
+            }
+        }
+        self.t_gev2
+    }
+
+    /// Makes a trial of the proposal that [`InducedEnvelope::descend`] came to, or of the next one that is not rejected
+    /// whatever the effect says, as long as it lies above `floor_t_gev2`. `None` once one lies below, and its t is where
+    /// the envelope stands; `trials` counts every proposal after the first.
+    pub fn propose(
+        &mut self,
+        vacuum: &VacuumRate,
+        floor_t_gev2: f64,
+        stream: &mut Stream,
+        trials: &mut u64,
+    ) -> Option<Proposed> {
+        while self.t_gev2 > floor_t_gev2 {
+            let proposed = self.draw(vacuum, stream);
+            if proposed.is_some() {
+                return proposed;
+            }
+            *trials += 1;
+            self.descend(draw_budget(stream));
+        }
+        None
+    }
+
+    /// The t where the envelope stands, GeV^2; 0 below the cutoff.
+    #[inline]
+    pub fn t_gev2(&self) -> f64 {
+        self.t_gev2
+    }
+
+    /// Draws the rest of the present proposal; `None` where the effect's bound is enough to reject it. The bound of the
+    /// accept rule's ratio comes down step by step, and the uniform number is compared with each.
+    #[inline]
+    fn draw(&self, vacuum: &VacuumRate, stream: &mut Stream) -> Option<Proposed> {
+        let t = self.t_gev2;
+        let smallest = self.emitter.smallest(t).max(self.range.smallest(t));
+        // Above t = E^2 no emission is at a small angle.
+        if smallest >= LARGEST_SMALLEST {
+            return None;
+        }
+        let uniform: f64 = stream.random();
+        let shape = Shape::new(self.emitter.is_gluon, smallest);
+        let pairs = self.emitter.pair_strength();
+        let pair_integral = if pairs > 0.0 {
+            2.0 * pairs * shape.logarithm()
+        } else {
+            0.0
+        };
+        let integral = shape.integral() + pair_integral;
+        // R z(1-z) is at most the strength.
+        let strength = self.strength.at_or_below(t).at(t);
+        let over_rate = integral / (TAU * self.rate_at_t);
+        if uniform >= vacuum.largest_alpha_s * strength * over_rate {
+            return None;
+        }
+        let makes_pair = pairs > 0.0 && stream.random::<f64>() * integral < pair_integral;
+        // The density is the rate in ln t times the normalised shape in z, without 1/(2 pi) like all densities.
+        let (splitting, z, value) = if makes_pair {
+            let z = shape.draw_pair(stream);
+            (Splitting::GluonToQuarks, z, pairs / (z * (1.0 - z)))
+        } else {
+            let z = shape.draw(stream);
+            (self.emitter.emission(), z, shape.value(z))
+        };
+        let trial = Trial {
+            t,
+            z,
+            splitting,
+            uniform,
+            inverse_envelope: over_rate / value,
+        };
+        let density_ratio = vacuum.density(&trial) * trial.inverse_envelope;
+        let is_open = uniform * z * (1.0 - z) < density_ratio * strength;
+        is_open.then_some(Proposed {
+            trial,
+            density_ratio,
+        })
     }
 
     /// The expected number of branchings at `t_gev2` that the small-angle limit cut away for each that it left, taking
@@ -139,24 +239,13 @@ impl InducedEnvelope {
         let integral = |smallest| Shape::new(self.emitter.is_gluon, smallest).integral();
         integral(whole) / integral(smallest) - 1.0
     }
+}
 
-    /// Spends `budget` of the rate's integral on the way down from `t`: where it ends and the rate there; `None` where
-    /// the cutoff comes first.
-    fn next_t(&self, mut t: f64, mut budget: f64) -> Option<(f64, f64)> {
-        for piece in &self.pieces {
-            if t <= piece.low_t_gev2 {
-                continue;
-            }
-            let landing = piece.rate.descend(t, budget);
-            if landing >= piece.low_t_gev2 {
-                return (landing > self.range.end_t_gev2)
-                    .then(|| (landing, piece.rate.at(landing)));
-            }
-            budget = (budget - piece.rate.integral(piece.low_t_gev2, t)).max(0.0);
-            t = piece.low_t_gev2;
-        }
-        None
-    }
+/// An exponential number of mean 1: what a proposal spends of the rate's integral.
+#[inline]
+pub fn draw_budget(stream: &mut Stream) -> f64 {
+    let uniform: f64 = stream.sample(OpenClosed01);
+    -ln(uniform)
 }
 
 impl Emitter {
@@ -185,6 +274,7 @@ impl Emitter {
 
 impl Broken {
     /// s(t) of a bound.
+    #[inline]
     fn strength(bound: RateBound) -> Option<Broken> {
         let (first, second, least) = match bound {
             RateBound::LeastOf(first, second) => (first, second, true),
@@ -209,6 +299,7 @@ impl Broken {
     }
 
     /// A bound on 1/m, m the smallest fraction.
+    #[inline]
     fn inverse_smallest(range: &FractionRange, emitter: &Emitter) -> Broken {
         let below = match range.kind {
             ZRange::Constant { epsilon } => PowerLaw {
@@ -250,23 +341,38 @@ impl Broken {
     }
 }
 
-/// The product of two broken power laws and a factor, from the highest t down.
-fn product(first: Broken, second: Broken, factor: f64) -> [Piece; 3] {
+/// The product of two broken power laws and a factor, from the highest t down, between the cutoff and the start; pieces
+/// beyond the start stay empty.
+#[inline]
+fn product(
+    first: &Broken,
+    second: &Broken,
+    factor: f64,
+    [end_t_gev2, start_t_gev2]: [f64; 2],
+) -> [Piece; 3] {
     let high = first.break_t_gev2.max(second.break_t_gev2);
     let low = first.break_t_gev2.min(second.break_t_gev2);
-    let between = |top: f64, low_t_gev2: f64| {
+    let mut pieces = [(f64::INFINITY, high), (high, low), (low, 0.0)].map(|(top, low_t_gev2)| {
         let (a, b) = (first.at_or_below(top), second.at_or_below(top));
         let rate = PowerLaw {
             coefficient: factor * a.coefficient * b.coefficient,
             power: a.power + b.power,
         };
-        Piece { rate, low_t_gev2 }
-    };
-    [
-        between(f64::INFINITY, high),
-        between(high, low),
-        between(low, 0.0),
-    ]
+        Piece {
+            rate,
+            low_t_gev2: low_t_gev2.max(end_t_gev2),
+            integral_below: 0.0,
+        }
+    });
+    for place in [1, 0] {
+        let (top, below) = (pieces[place].low_t_gev2, pieces[place + 1]);
+        pieces[place].integral_below = if top >= start_t_gev2 {
+            f64::INFINITY
+        } else {
+            below.integral_below + below.rate.integral(below.low_t_gev2, top)
+        };
+    }
+    pieces
 }
 
 /// Where two power laws of different exponent cross.
@@ -296,14 +402,14 @@ impl PowerLaw {
         }
     }
 
-    /// The t at which the integral over ln t from there to `t` is `budget`; NaN or 0 where there is none.
+    /// The t at which the integral over ln t from `low` to there is `integral`.
     #[inline]
-    fn descend(&self, t: f64, budget: f64) -> f64 {
+    fn ascend(&self, low: f64, integral: f64) -> f64 {
         match self.power {
-            0 => t * exp(-budget / self.coefficient),
+            0 => low * exp(integral / self.coefficient),
             power => {
-                let left = integer_power(t, power) - budget * f64::from(power) / self.coefficient;
-                integer_root(left, power)
+                let rise = integral * f64::from(power) / self.coefficient;
+                integer_root(integer_power(low, power) + rise, power)
             }
         }
     }
@@ -521,10 +627,20 @@ mod tests {
                 Broken::strength(bound).unwrap(),
                 Broken::inverse_smallest(&range(), &emitter),
             );
-            let envelope = InducedEnvelope {
-                emitter,
-                range: range(),
-                pieces: product(strength, width, 0.02),
+            let ends = [range().end_t_gev2, emitter.start_t_gev2];
+            let pieces = product(&strength, &width, 0.02, ends);
+            let envelope = |start: f64| {
+                let mut envelope = InducedEnvelope {
+                    emitter,
+                    range: range(),
+                    pieces,
+                    strength,
+                    height: 0.0,
+                    t_gev2: start,
+                    rate_at_t: 0.0,
+                };
+                envelope.height = envelope.integral(start);
+                envelope
             };
             let rate = |t: f64| 0.02 * strength.at_or_below(t).at(t) * width.at_or_below(t).at(t);
             for (start, end) in [(80.0, 20.0), (80.0, 4.0), (6.0, 2.0_f64)] {
@@ -532,7 +648,8 @@ mod tests {
                 let middle = |step: i32| end * (span * (step as f64 + 0.5) / steps as f64).exp();
                 let budget =
                     (0..steps).map(|step| rate(middle(step))).sum::<f64>() * span / steps as f64;
-                let (found, rate_there) = envelope.next_t(start, budget).unwrap();
+                let mut envelope = envelope(start);
+                let (found, rate_there) = (envelope.descend(budget), envelope.rate_at_t);
                 assert!(
                     (found / end - 1.0).abs() < 1e-6,
                     "{start} to {end}: {found}"

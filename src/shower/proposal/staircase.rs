@@ -85,15 +85,20 @@ pub struct VacuumRate {
     pub range: FractionRange,
     /// Open flavours.
     pub flavours: FlavourRule,
+    /// alpha_s at the smallest scale that a branching can have, its largest value.
+    pub largest_alpha_s: f64,
 }
 
 impl VacuumRate {
-    /// alpha_s at the smallest scale that a branching can have, its largest value.
-    #[inline]
-    pub fn largest_alpha_s(&self) -> f64 {
-        let kappa2 = self.range.smallest_kappa2_gev2();
-        let scale = self.coupling.scale_gev2(kappa2, self.range.end_t_gev2);
-        self.coupling.alpha_s(scale)
+    /// The rate of a coupling, a range and flavours.
+    pub fn new(coupling: Coupling, range: FractionRange, flavours: FlavourRule) -> VacuumRate {
+        let scale = coupling.scale_gev2(range.smallest_kappa2_gev2(), range.end_t_gev2);
+        VacuumRate {
+            largest_alpha_s: coupling.alpha_s(scale),
+            coupling,
+            range,
+            flavours,
+        }
     }
 
     /// The vacuum density of a trial over 2 pi: alpha_s times the kernel.
@@ -458,14 +463,7 @@ mod tests {
                         kind: z_range,
                     };
                     let flavours = FlavourRule::new(&settings, quark_masses_gev);
-                    rates.push((
-                        VacuumRate {
-                            coupling,
-                            range,
-                            flavours,
-                        },
-                        settings,
-                    ));
+                    rates.push((VacuumRate::new(coupling, range, flavours), settings));
                 }
             }
         }

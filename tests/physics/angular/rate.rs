@@ -3,8 +3,8 @@
 use spindrift::qcd::Species;
 use spindrift::random::Key;
 use spindrift::shower::counters::ShowerCounters;
+use spindrift::shower::evolution::Tools;
 use spindrift::shower::leg::{AngularOrder, Leg, Tally};
-use spindrift::shower::tree::Tools;
 
 use super::super::support::rate::{Rate, fraction_of, kernels_below, nothing};
 use super::super::support::setup::{ALPHA_S, Setup, fixed, up};

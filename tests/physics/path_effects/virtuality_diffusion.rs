@@ -14,9 +14,9 @@
 use spindrift::qcd::{C_A, C_F, HBAR_C_GEV_FM, Species};
 use spindrift::random::Key;
 use spindrift::shower::counters::ShowerCounters;
+use spindrift::shower::evolution::Tools;
 use spindrift::shower::leg::{AngularOrder, Branching, Leg, Tally};
 use spindrift::shower::ordering::{Constraint, settle};
-use spindrift::shower::tree::Tools;
 
 use super::super::support::effects::plain;
 use super::super::support::reference::{self, number};

@@ -17,7 +17,8 @@ use spindrift::qcd::{Coupling, CouplingLaw, CouplingSettings, Loops, ScaleArgume
 use spindrift::random::{Key, Purpose};
 use spindrift::run::EventGenerator;
 use spindrift::run::generator::Generator;
-use spindrift::shower::leg::{Branching, Evolution};
+use spindrift::shower::evolution::Evolution;
+use spindrift::shower::leg::Branching;
 use spindrift::shower::proposal::FractionRange;
 use spindrift::shower::proposal::staircase::{FlavourRule, Staircase, VacuumRate};
 use spindrift::shower::{
@@ -180,14 +181,14 @@ impl Setup {
     /// What the legs of this set-up share, for tests that drive them by hand.
     pub fn evolution(&self) -> Evolution {
         let coupling = &self.coupling;
-        let rate = VacuumRate {
-            coupling: Coupling::new(coupling).expect("the coupling of a test stays below 1"),
-            range: FractionRange {
+        let rate = VacuumRate::new(
+            Coupling::new(coupling).expect("the coupling of a test stays below 1"),
+            FractionRange {
                 end_t_gev2: self.shower.virtuality_cutoff_gev.powi(2),
                 kind: self.shower.z_range,
             },
-            flavours: FlavourRule::new(&self.shower, coupling.quark_masses_gev),
-        };
+            FlavourRule::new(&self.shower, coupling.quark_masses_gev),
+        );
         let largest_t = build(&self.source).largest_virtuality_gev().powi(2);
         let stairs =
             [false, true].map(|gluon| Staircase::new(&rate, &self.shower, gluon, largest_t));

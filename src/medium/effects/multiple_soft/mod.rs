@@ -7,7 +7,9 @@
 //! omega_c = int l qhat dl,   qhat L = 2 omega_c/L,   L the rest of the path in the medium,
 //!
 //! which is qhat L^2/2 in a brick and the dynamical scaling law in an expanding medium (Salgado & Wiedemann 2002,
-//! hep-ph/0204221): `validation/references/expanding_scaling.json` has its measured error.
+//! hep-ph/0204221). Against the direct solution for qhat ~ 1/l from .2 or .6 fm to 2 ... 16 fm the law's spectrum is lower by
+//! up to 17 % at omega << omega_c and higher by up to 28 % at omega >> omega_c; the mean loss is exact; 2 omega_c/L lies
+//! between 1/2 and 1.2 of int qhat dl (`validation/references/expanding_scaling.json`).
 //!
 //! It is negative at small kappa for omega above about omega_c/2, and thins the vacuum there.
 //!
@@ -36,7 +38,11 @@ pub static MODEL: Model = Model {
     kind: "multiple-soft",
     about: "induced emission by many soft scatterings",
     keys: &[],
-    describes: &[Physics::InducedEmission, Physics::Broadening],
+    describes: &[
+        Physics::InducedEmission,
+        Physics::UnresolvedEmission,
+        Physics::Broadening,
+    ],
     regime: "soft gluons (below .3 of the energy) below omega_c = qhat L^2/2",
     build,
 };

@@ -81,7 +81,7 @@ impl Row {
     }
 }
 
-/// h(x, y) for x, y > 0 by direct quadrature, without allocating; some ten microseconds, error below 10^-7 max(1, h).
+/// h(x, y) for x, y > 0 by direct quadrature, without allocating; some ten microseconds, error below 10^-6 max(1, |h|).
 pub fn direct(x: f64, y: f64) -> f64 {
     let u = y / x;
     let mut sum = 0.0;
@@ -298,8 +298,8 @@ mod tests {
         }
     }
 
-    /// x -> 0: sqrt(2x) h -> y E1(y), corrections of relative order sqrt(x) at these y. E1(1), E1(0.3), E1(3) from Abramowitz &
-    /// Stegun, table 5.1.
+    /// x -> 0: sqrt(2x) h -> y E1(y), corrections of relative order sqrt(x) ln(1/x) at these y. E1 from Abramowitz &
+    /// Stegun, table 5.1 (from memory; all digits agree with scipy).
     #[test]
     fn a_thick_brick_emits_everywhere_and_broadens() {
         let e1 = [
@@ -311,7 +311,7 @@ mod tests {
             for (y, e1) in e1 {
                 let ratio = direct(x, y) * (2.0 * x).sqrt() / (y * e1);
                 assert!(
-                    (ratio - 1.0).abs() < 60.0 * x.sqrt(),
+                    (ratio - 1.0).abs() < 4.0 * x.sqrt() * libm::log(1.0 / x),
                     "x = {x}, y = {y}: {ratio}"
                 );
             }

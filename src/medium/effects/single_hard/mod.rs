@@ -84,7 +84,7 @@ pub static MODEL: Model = Model {
             Form::Number(Range::from(0.0, LARGEST_DENSITY_PER_FM)),
             "Scatterings of a gluon per length of its path.",
         )
-        .unit("fm^-1")
+        .unit("1/fm")
         .when(GIVEN),
         Key::required(
             "debye_mass_GeV",
@@ -94,7 +94,7 @@ pub static MODEL: Model = Model {
         .unit("GeV")
         .when(GIVEN),
     ],
-    describes: &[Physics::InducedEmission],
+    describes: &[Physics::InducedEmission, Physics::UnresolvedEmission],
     regime: "soft gluons (below .3 of the energy), opacity below 1",
     build,
 };
@@ -103,8 +103,6 @@ pub static MODEL: Model = Model {
 const LARGEST_SOFT_FRACTION: f64 = 0.3;
 /// One scattering describes media up to this opacity.
 const LARGEST_OPACITY: f64 = 1.0;
-/// The loss per length that a trace keeps is qhat/(4 T).
-const TEMPERATURES_PER_LOSS: f64 = 4.0;
 
 /// The spectrum and its envelope, computed once.
 static SPECTRUM: LazyLock<(SingleHardTable, EmissionPlane)> = LazyLock::new(|| {
@@ -152,8 +150,8 @@ impl SingleHard {
         let (opacity, mass_gev) = match self.centres {
             Centres::Transport { alpha_s, flavours } => {
                 let integral_gev2 = path.qhat_integral_gev2();
-                let loss_gev = TEMPERATURES_PER_LOSS * passage.trace.loss.qhat_integral_gev2();
-                let mass_gev = debye_mass_gev(integral_gev2 / loss_gev, alpha_s, flavours);
+                let temperature_gev = integral_gev2 / passage.trace.qhat_over_temperature_gev;
+                let mass_gev = debye_mass_gev(temperature_gev, alpha_s, flavours);
                 (integral_gev2 / (mass_gev * mass_gev), mass_gev)
             }
             Centres::Given {

@@ -196,47 +196,119 @@ pub fn modified_bessel_k0(z: f64) -> f64 {
 mod tests {
     use super::*;
 
-    #[test]
-    fn look() {
+    /// The table of `validation/references/single_hard_spectrum.py`.
+    fn reference() -> serde_json::Value {
         let text = include_str!("../../../../validation/references/single_hard_spectrum.json");
-        let table: serde_json::Value = serde_json::from_str(text).unwrap();
-        for point in table["points"].as_array().unwrap() {
-            let get = |name: &str| point[name].as_f64().unwrap();
-            let (x, y, h) = (get("inverse_gamma"), get("v"), get("h"));
-            println!(
-                "{x:8} {y:8} {h:12.9} direct {:9.1e} relative {:9.1e} tail {:9.1e} no phase {:9.1e}",
-                direct(x, y) - h,
-                direct(x, y) / h - 1.0,
-                tail(x, y) - h,
-                without_phase(x, y) - h
+        serde_json::from_str(text).expect("a committed table")
+    }
+
+    #[test]
+    fn it_is_the_integral_over_the_momentum_transfer() {
+        let table = reference();
+        let points = table["points"].as_array().unwrap();
+        assert!(points.len() >= 40);
+        for point in points {
+            let [x, y, h] = ["inverse_gamma", "v", "h"].map(|name| point[name].as_f64().unwrap());
+            let error = (direct(x, y) - h).abs();
+            assert!(
+                error < 3e-5 && error < 3e-4 * h.abs(),
+                "h({x}, {y}) off by {error}"
             );
         }
-        println!(
-            "{} {} {}",
-            modified_bessel_k0(0.1),
-            modified_bessel_k0(2.0),
-            modified_bessel_k0(5.0)
+    }
+
+    /// int h d ln y against its closed form, by the trapezium rule in ln y and the large-y form above 600.
+    #[test]
+    fn its_integral_over_the_transverse_momentum() {
+        const STEPS: usize = 4000;
+        for entry in reference()["integrals"].as_array().unwrap() {
+            let [x, closed] =
+                ["inverse_gamma", "integral"].map(|name| entry[name].as_f64().unwrap());
+            let (low, top) = (-14.0, 600.0f64);
+            let step = (ln(top) - low) / STEPS as f64;
+            let value = |place: usize| direct(x, exp(low + place as f64 * step));
+            let inside: f64 = (1..STEPS).map(value).sum();
+            let beyond = (ln(top * top / x) + EULER_GAMMA - 1.0) / top;
+            let found = step * (inside + 0.5 * (value(0) + value(STEPS))) + beyond;
+            assert!(
+                (found - closed).abs() < 2e-4,
+                "x = {x}: {found}, not {closed}"
+            );
+        }
+    }
+
+    /// x -> 0: the closed form, corrections of order x^3 once the pole's exp(-2 gamma sqrt(y)) is gone.
+    #[test]
+    fn a_thick_brick_has_no_phases() {
+        for x in [0.03f64, 0.01, 0.003] {
+            for y in [0.01, 0.3, 1.0, 4.0, 30.0] {
+                let difference = direct(x, y) - without_phase(x, y);
+                assert!(
+                    difference.abs() < 30.0 * x.powi(3) + 3e-5,
+                    "x = {x}, y = {y}: {difference}"
+                );
+            }
+        }
+    }
+
+    /// x -> infinity, which is L -> 0: x h at a given u becomes straight in ln x, so h vanishes like ln x/x.
+    #[test]
+    fn a_thin_brick_is_linear_in_the_logarithm() {
+        for u in [0.03, 1.0, 4.0, 12.0, 25.0] {
+            let scaled = |x: f64| x * direct(x, x * u);
+            let (one, two, three) = (scaled(1e5), scaled(1e6), scaled(1e7));
+            let (first, second) = (two - one, three - two);
+            assert!(
+                (first - second).abs() < 0.01 * first.abs() + 1e-3,
+                "u = {u}: {one} {two} {three}"
+            );
+            assert!(first.abs() > 1e-3, "u = {u}");
+        }
+    }
+
+    #[test]
+    fn it_vanishes_linearly_at_small_momentum() {
+        for x in [1e-3, 0.1, 1.0, 30.0] {
+            let ratio = direct(x, 1e-4) / direct(x, 5e-5);
+            assert!((ratio - 2.0).abs() < 1e-3, "x = {x}: {ratio}");
+        }
+        assert!(direct(0.3, 1e-3) > 0.0 && direct(1.0, 1e-3) < 0.0);
+    }
+
+    #[test]
+    fn its_large_momentum_form() {
+        for x in [0.1f64, 1.0, 3.0, 30.0, 1e3] {
+            for u in [30.0, 33.3, 50.0, 100.0] {
+                let y = (u * x).max(u);
+                let (found, expected) = (tail(x, y), direct(x, y));
+                assert!(
+                    (found - expected).abs() < 4e-3 / x.max(10.0),
+                    "x = {x}, y = {y}: {found}, {expected}"
+                );
+                assert!(found <= tail_bound([x, x], [y, y]));
+            }
+        }
+    }
+
+    /// Abramowitz & Stegun, table 9.8 (from memory; all digits agree with scipy).
+    #[test]
+    fn modified_bessel_function() {
+        for (z, k0) in [
+            (0.1, 2.427_069_024_7),
+            (1.0, 0.421_024_438_2),
+            (2.0, 0.113_893_872_8),
+            (5.0, 0.003_691_098_3),
+        ] {
+            assert!((modified_bessel_k0(z) / k0 - 1.0).abs() < 1e-6, "K0({z})");
+        }
+    }
+
+    #[test]
+    fn the_series_and_the_closed_form_of_the_slope_meet() {
+        let (below, above) = (
+            slope(SMALL_PHASE * (1.0 - 1e-12), true),
+            slope(SMALL_PHASE, true),
         );
-        for x in [1.0, 3.0, 30.0, 1e3, 1e4f64] {
-            for u in [20.0f64, 30.3, 50.0] {
-                let y = u * x;
-                println!(
-                    "x {x} u {u} xh {} tail {}",
-                    x * direct(x, y),
-                    x * tail(x, y)
-                );
-            }
-        }
-        let start = std::time::Instant::now();
-        let mut sum = 0.0;
-        for i in 0..100 {
-            for j in 0..100 {
-                sum += direct(
-                    exp(0.1 * i as f64),
-                    exp(0.1 * i as f64 + 0.13 * j as f64 - 10.0),
-                );
-            }
-        }
-        println!("{:.2} us {sum}", start.elapsed().as_secs_f64() * 1e2);
+        assert!((below - above).abs() < 1e-9, "{below} {above}");
     }
 }

@@ -137,6 +137,7 @@ impl GridBuilder {
         Grid {
             first_tau_fm,
             hold,
+            is_hot_at_an_end: self.scan.is_hot_at_an_end(),
             hot,
         }
     }

@@ -27,7 +27,7 @@ use super::values::Values;
 use crate::medium::field::{Ceiling, Ray, Stretch};
 
 /// Most segments of a stretch.
-const MOST_SEGMENTS: usize = 12;
+const MOST_SEGMENTS: usize = 11;
 /// A segment's reach over a segment of the longest stretch: slack for rays along which tau does not grow evenly, and for
 /// the segments of a stretch that are a whole number.
 const SLACK: f64 = 1.1;
@@ -45,7 +45,7 @@ const WIDENING: f64 = 1.0 + 1e-3;
 /// roundings, and as many of the ray's own numbers.
 const COORDINATE_ROUNDING: f64 = 16.0 * f32::EPSILON as f64;
 /// Ends of segments, filled up to whole vectors.
-const LANES: usize = 16;
+const LANES: usize = 12;
 
 /// Extremes over the points of some cells. `most`: T, u^x, u^y, tau u^eta; `least`: -(u^tau)^2, then the same three.
 #[derive(Clone, Copy, Debug)]

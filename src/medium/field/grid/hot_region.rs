@@ -54,12 +54,24 @@ impl HotScan {
         let hot = |plane: &HotPlane| *plane != COLD;
         let first = self.planes.iter().position(hot)?;
         let last = self.planes.iter().rposition(hot)?;
-        let [columns, rows] = [0, 1].map(|axis| self.from_plane_on(0, axis));
+        let [columns, rows] = [0, 1].map(|axis| self.extent_from(0, axis));
         Some([widen([first, last], self.lengths[0]), columns, rows])
     }
 
+    /// Whether the field is hot at the last tau, or at an end of x or y: a path can then leave it hot.
+    pub(super) fn is_hot_at_an_end(&self) -> bool {
+        let [_, columns, rows, _] = self.lengths;
+        let hot = |plane: &&HotPlane| **plane != COLD;
+        let reaches = |plane: &HotPlane| {
+            let [x, y] = plane;
+            x[0] == 0 || x[1] + 1 == columns || y[0] == 0 || y[1] + 1 == rows
+        };
+        self.planes.iter().filter(hot).any(reaches)
+            || self.planes.last().is_some_and(|plane| *plane != COLD)
+    }
+
     /// First and last plane to keep of x (axis 0) or y (axis 1) from a plane of tau on.
-    fn from_plane_on(&self, from: usize, axis: usize) -> [usize; 2] {
+    fn extent_from(&self, from: usize, axis: usize) -> [usize; 2] {
         let planes = &self.planes[from..];
         let low = planes.iter().map(|plane| plane[axis][0]).min().unwrap_or(0);
         let high = planes.iter().map(|plane| plane[axis][1]).max().unwrap_or(0);
@@ -107,8 +119,8 @@ impl HotRegion {
                 .partition_point(|tau| *tau <= slab_start_fm)
                 .saturating_sub(1)
                 .min(last_hot);
-            let x = scan.from_plane_on(from, 0).map(|plane| frame.x_fm[plane]);
-            let y = scan.from_plane_on(from, 1).map(|plane| frame.y_fm[plane]);
+            let x = scan.extent_from(from, 0).map(|plane| frame.x_fm[plane]);
+            let y = scan.extent_from(from, 1).map(|plane| frame.y_fm[plane]);
             [x, y]
         };
         let boxes: [[[f64; 2]; 2]; SLABS] = std::array::from_fn(slab);

@@ -42,6 +42,7 @@ const EDGE: f64 = 1e-9;
 pub struct Grid {
     first_tau_fm: f64,
     hold: bool,
+    is_hot_at_an_end: bool,
     hot: Option<Hot>,
 }
 
@@ -130,7 +131,7 @@ impl TemperatureField for Grid {
     }
 
     fn has_artificial_edge(&self) -> bool {
-        true
+        self.is_hot_at_an_end
     }
 }
 

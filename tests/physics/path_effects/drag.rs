@@ -3,20 +3,17 @@
 //! Deterministic, for every parton of 2 x 2000 events (quark and gluon jets): the energy lost is the mean to what f32
 //! leaves of the times, unless the floor max(sqrt(t (1 + q^2/p+^2)), minimum energy) stops it, to which it is then
 //! brought; virtuality and q/p+ stay, so massless partons keep their direction; a parton below the floor loses
-//! nothing; a gain is never booked. In a field whose temperature falls the loss is that of the table.
+//! nothing; a gain is never booked. For a field whose temperature falls see `expanding`.
 //!
 //! Statistical: with fluctuations the loss of partons that the floor cannot reach is Gaussian with the variance
 //! int qhat/2 dl (Kolmogorov-Smirnov, mean and mean square, for quarks and gluons; 6 checks), and the mean loss and its
 //! square are those of path_effects.json (5 x 2 without, 5 x 4 with fluctuations; 30 checks); slow partons, 1 check; 10^-6 each.
 //! Smallest visible bias: 2 % of the variance.
 
-use spindrift::event::Status;
-use spindrift::medium::{FieldKind, TransportKind};
 use spindrift::parameters::Setting;
 use spindrift::qcd::Species;
-use spindrift::source::{Direction, SourceSettings};
 
-use super::super::support::effects::{effect, plain};
+use super::super::support::effects::effect;
 use super::super::support::reference::{self, number};
 use super::super::support::setup::{Setup, up};
 use super::super::support::statistics::{LARGEST_DISTANCE, LARGEST_PULL, Mean, distance};
@@ -272,66 +269,6 @@ fn primaries_lose_what_the_table_says() {
             }
             println!("case {place}, {with} fluctuations: pulls {pulls:.2?}");
             assert!(pulls.iter().all(|pull| pull.abs() < LARGEST_PULL));
-        }
-    }
-}
-
-/// Across the beam in longitudinal expansion, where the temperature falls along the way: unbranched primaries lose what
-/// the table says (to the accuracy of the path's cells), in their direction.
-#[test]
-fn losses_follow_the_temperature_along_the_way() {
-    let table = reference::load("path_effects");
-    let field = &table["longitudinal"]["setup"];
-    for (parton, name) in [(up(), "quark"), (Species::GLUON, "gluon")] {
-        let paths = table["longitudinal"]["paths"].as_array().expect("a list");
-        // The whole way, 40 fm, from the hard vertex.
-        let path = paths.iter().find(|path| {
-            path["parton"] == name && path["time_fm"] == 40.0 && path["birth_t_fm"] == 0.0
-        });
-        let path = path.expect("the table has this path");
-        for (kind, key) in [
-            ("drag", "mean_loss_GeV"),
-            ("broadening", "mean_kt_squared_GeV2"),
-        ] {
-            let mut setup = along_z(parton, 100.0, 1.2, 1.0, 1.0, vec![plain(kind)]);
-            let SourceSettings::Single(single) = &mut setup.source else {
-                panic!("a single parton")
-            };
-            single.direction = Direction::Along([1.0, 0.0, 0.0]);
-            let medium = setup.medium.as_mut().expect("a medium");
-            medium.field.kind = FieldKind::Longitudinal {
-                temperature_gev: number(field, "temperature_GeV"),
-                start_fm: number(field, "start_fm"),
-            };
-            medium.field.end_temperature_gev = number(field, "end_temperature_GeV");
-            medium.transport.kind = TransportKind::Cubic {
-                coefficient: number(field, "gluon_cubic_coefficient"),
-            };
-            let mut found = Mean::default();
-            setup.events(0..5000, |_, rows| {
-                let [_, primary, exchange] = rows else { return };
-                assert_eq!(primary.status, Status::Final);
-                let [x, y, z, energy] = exchange.momentum_gev;
-                found.add(if kind == "drag" {
-                    assert_eq!(exchange.status, Status::GivenToMedium);
-                    assert!((x - energy).abs() < 1e-9 && y.hypot(z) < 1e-9, "along x");
-                    energy
-                } else {
-                    y * y + z * z
-                });
-            });
-            let expected = number(path, key);
-            println!(
-                "{name}, {kind}: {} of 5000 primaries, {:.6} against {expected:.6}",
-                found.count,
-                found.value()
-            );
-            assert!(found.count > 4000);
-            if kind == "drag" {
-                assert!((found.value() / expected - 1.0).abs() < 1e-4);
-            } else {
-                assert!(found.pull(expected).abs() < LARGEST_PULL);
-            }
         }
     }
 }

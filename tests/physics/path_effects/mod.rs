@@ -5,11 +5,12 @@
 //! at birth and the path inside the medium are known for each parton, and with them what is expected of it. Jets fly
 //! along z: q is (px, py), plus momentum E + pz.
 //!
-//! See `broadening`, `drag`, `virtuality_diffusion` for the laws, `exchanges` for order, rows and conservation.
+//! See `broadening`, `drag`, `virtuality_diffusion` and `expanding` for the laws, `exchanges` for order, rows and conservation.
 
 mod broadening;
 mod drag;
 mod exchanges;
+mod expanding;
 mod virtuality_diffusion;
 
 /// Channel number of the first effect.

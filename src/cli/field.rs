@@ -6,6 +6,7 @@ use std::process::ExitCode;
 use anyhow::{Context, bail};
 
 use super::field_make::{self, MakeArgs};
+use super::output::is_same;
 use super::words::{print_data, say};
 use crate::files::field_file::read_field;
 use crate::medium::field::FieldData;
@@ -62,6 +63,16 @@ fn check(args: &CheckArgs) -> anyhow::Result<ExitCode> {
     {
         bail!(
             "{} exists; give another name, or --overwrite",
+            picture.display()
+        );
+    }
+    if let Some(picture) = args
+        .picture
+        .as_deref()
+        .filter(|picture| is_same(&args.file, picture))
+    {
+        bail!(
+            "{} is the field itself; give another name",
             picture.display()
         );
     }

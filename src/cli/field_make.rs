@@ -5,6 +5,7 @@ use std::process::ExitCode;
 
 use anyhow::{Context, bail};
 
+use super::output::is_same;
 use super::words::{bytes, say};
 use crate::config::load;
 use crate::files::field_file::{FieldOutline, PlanePoint, write_field};
@@ -57,6 +58,12 @@ pub(super) fn run(args: &MakeArgs) -> anyhow::Result<ExitCode> {
     let settings = &medium.field;
     let field = flow(settings)?;
     check_output(&args.out, args.overwrite)?;
+    if is_same(&args.config, &args.out) {
+        bail!(
+            "{} is the config itself; give another --out",
+            args.out.display()
+        );
+    }
     let side_fm = args.extent_fm;
     let [x_fm, y_fm] = [(); 2].map(|()| steps(-side_fm, side_fm, args.spacing_fm, "--spacing-fm"));
     let mut frame = Frame {

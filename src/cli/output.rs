@@ -68,7 +68,7 @@ pub(super) fn check(
     Ok(())
 }
 
-fn is_same(one: &Path, other: &Path) -> bool {
+pub(super) fn is_same(one: &Path, other: &Path) -> bool {
     // Device and inode see through links of both kinds.
     match (one.metadata(), other.metadata()) {
         (Ok(one), Ok(other)) => (one.dev(), one.ino()) == (other.dev(), other.ino()),

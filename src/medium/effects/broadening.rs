@@ -5,6 +5,9 @@
 //! It shifts the parton's transverse momentum q in its jet's light-cone frame at fixed plus momentum and virtuality.
 //! qhat is the parton's own (C_R/C_A of a gluon's).
 //!
+//! At fixed plus momentum a kick k raises the energy by (q.k + k^2/2)/p+. A parton that does not move forwards along its
+//! jet any more (p+ < E) has no small angle to it, and is not kicked: it counts as outside the regime.
+//!
 //! Regime: many soft kicks at small angles, k_T much below the energy; the tail of single hard kicks is not in it.
 
 use rand::RngExt;
@@ -48,6 +51,9 @@ impl PathEffect for Broadening {
 
     fn act(&self, journey: &Journey, flight: &mut Flight, stream: &mut Stream) -> bool {
         let energy_gev = flight.energy_gev();
+        if flight.plus_gev < energy_gev {
+            return false;
+        }
         let kick_gev = kick(journey.qhat_integral_gev2(), stream);
         for (component, kick) in flight.transverse_gev.iter_mut().zip(kick_gev) {
             *component += kick;

@@ -7,7 +7,7 @@
 //!
 //! The loss scales plus momentum and transverse momentum of the parton alike, at fixed virtuality: a massless parton
 //! keeps its direction. (Scaling the plus momentum alone would turn partons away from the jet axis.) The energy stays
-//! at least max(sqrt(t), `min_energy_GeV`), and a parton below that loses nothing. With fluctuations the loss is
+//! at least max(sqrt(t), `min_energy_GeV`) and a thousandth of what it was, and a parton below that loses nothing. With fluctuations the loss is
 //! Gaussian about the mean with that variance, and may be a gain.
 //! qhat is the parton's own (C_R/C_A of a gluon's).
 //!
@@ -39,6 +39,8 @@ pub static MODEL: Model = Model {
     build,
 };
 
+/// A parton that has lost all but this share has stopped: a light-like one without any energy has no direction.
+const STOPPED_SHARE: f64 = 1e-3;
 /// Losses above this share of the energy are not small.
 const LARGEST_SHARE: f64 = 0.5;
 
@@ -83,7 +85,9 @@ impl PathEffect for Drag {
 
 /// What the energy may not fall below, GeV.
 fn least_energy_gev(flight: &Flight, min_energy_gev: f64) -> f64 {
-    at_rest_gev(flight).max(min_energy_gev)
+    at_rest_gev(flight)
+        .max(min_energy_gev)
+        .max(STOPPED_SHARE * flight.energy_gev())
 }
 
 /// The least energy that a common factor on plus and transverse momentum can reach: sqrt(t) for a parton along the axis.

@@ -5,8 +5,8 @@
 //! It shifts the parton's transverse momentum q in its jet's light-cone frame at fixed plus momentum and virtuality.
 //! qhat is the parton's own (C_R/C_A of a gluon's).
 //!
-//! At fixed plus momentum a kick k raises the energy by (q.k + k^2/2)/p+. A parton that does not move forwards along its
-//! jet any more (p+ < E) has no small angle to it, and is not kicked: it counts as outside the regime.
+//! At fixed plus momentum a kick k raises the energy by (q.k + k^2/2)/p+. A parton that flies straight back along its jet
+//! (p+ below a millionth of E, less than vacuum branchings leave) would gain without bound: it is not kicked, and counts as outside the regime.
 //!
 //! Regime: many soft kicks at small angles, k_T much below the energy; the tail of single hard kicks is not in it.
 
@@ -31,6 +31,8 @@ pub static MODEL: Model = Model {
     build,
 };
 
+/// Plus momentum over energy below which a parton flies back along its jet.
+const BACKWARDS_SHARE: f64 = 1e-6;
 /// Kicks above this share of the energy are no small angles.
 const LARGEST_SHARE: f64 = 0.5;
 
@@ -51,7 +53,7 @@ impl PathEffect for Broadening {
 
     fn act(&self, journey: &Journey, flight: &mut Flight, stream: &mut Stream) -> bool {
         let energy_gev = flight.energy_gev();
-        if flight.plus_gev < energy_gev {
+        if flight.plus_gev < BACKWARDS_SHARE * energy_gev {
             return false;
         }
         let kick_gev = kick(journey.qhat_integral_gev2(), stream);
